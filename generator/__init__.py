@@ -1,0 +1,1 @@
+"""Generator of the solvent datasheet handbook: tables in, checked and worked-out pages out."""

@@ -1,0 +1,58 @@
+"""What is wrong with the tables: every problem with its place, all of them at once."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import asdict, dataclass
+
+
+@dataclass(frozen=True, slots=True, order=True)
+class Problem:
+    """One thing wrong in one place, and what to type instead.
+
+    ``file`` is the name inside the data folder, ``line`` the physical line (the header is line 1,
+    0 stands for the whole file), ``column`` the column's name ("" for the whole line).
+    ``kind`` is a slug such as ``cas-check-digit``. ``severity`` is ``error`` (nothing is built)
+    or ``suspect`` (published with a flag).
+    """
+
+    file: str
+    line: int
+    column: str
+    kind: str
+    found: str
+    expected: str
+    hint: str
+    severity: str = "error"
+
+    @property
+    def place(self) -> str:
+        """File, line and column in one phrase."""
+        parts = [self.file]
+        if self.line:
+            parts.append(f"line {self.line}")
+        if self.column:
+            parts.append(f"column {self.column}")
+        return ", ".join(parts)
+
+    def as_dict(self) -> dict[str, str | int]:
+        """The fields by name, for machine-readable output."""
+        return asdict(self)
+
+    def __str__(self) -> str:
+        return (
+            f"{self.severity}: {self.place} [{self.kind}]\n"
+            f"    found:    {self.found}\n"
+            f"    expected: {self.expected}\n"
+            f"    instead:  {self.hint}"
+        )
+
+
+class DatasetError(Exception):
+    """The tables cannot be used. ``problems`` holds every problem found, in order of place."""
+
+    def __init__(self, problems: Iterable[Problem]) -> None:
+        self.problems = tuple(sorted(problems))
+        count = len(self.problems)
+        head = f"{count} problem{'' if count == 1 else 's'} in the tables"
+        super().__init__("\n".join([head, *map(str, self.problems)]))
