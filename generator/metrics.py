@@ -1,0 +1,267 @@
+"""Every derived number, for all substances and temperatures at once.
+
+Inputs are chosen a substance at a time (``reconcile``); the metrics are then worked out on arrays
+of shape (substances, temperatures), and their uncertainties by sampling the inputs, which the
+metrics share, so that correlated inputs stay correlated.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from generator import polarity, uncertainty
+from generator.dataset import Dataset, Source
+from generator.inputs import (
+    INPUTS,
+    STRUCTURE,
+    STRUCTURE_SOURCE,
+    Row,
+    Trend,
+    choose_inputs,
+    has_no_moment,
+    union,
+)
+from generator.quantities import QUANTITIES
+from generator.reconcile import ASSOCIATED, LOWER_BOUND, LiquidRange, Value
+from generator.structures import Molecule, molecule
+from generator.units import ZERO_CELSIUS
+
+Array = NDArray[np.float64]
+
+# Orientation polarizability above which a liquid counts as polar, and below which as unpolar.
+POLAR_ABOVE = 0.10
+UNPOLAR_BELOW = 0.03
+# Without a refractive index the permittivity alone decides only where it leaves no doubt.
+SURELY_POLAR = 5.0
+_CHUNK = 100
+_EPS, _N, _RHO, _MU, _KAPPA, _ALPHA, _M = INPUTS
+DEPENDS: Mapping[str, tuple[str, ...]] = {
+    "kirkwood_function": (_EPS,),
+    "clausius_mossotti_function": (_EPS,),
+    "molar_volume": (_M, _RHO),
+    "molar_polarization": (_EPS, _M, _RHO),
+    "molar_refraction": (_N, _M, _RHO),
+    "orientation_polarization": (_EPS, _N, _M, _RHO),
+    "debye_dipole_moment": (_EPS, _N, _M, _RHO),
+    "onsager_dipole_moment": (_EPS, _N, _M, _RHO),
+    "kirkwood_correlation_factor": (_EPS, _N, _M, _RHO, _MU),
+    "lippert_mataga_polarizability": (_EPS, _N),
+    "expected_temperature_coefficient": (_EPS, _N, _ALPHA),
+    "bjerrum_length": (_EPS,),
+    "born_solvation_energy": (_EPS,),
+    "debye_length_01": (_EPS,),
+    "debye_length_001": (_EPS,),
+    "charge_relaxation_time": (_EPS, _KAPPA),
+}
+
+
+@dataclass(frozen=True)
+class Settings:
+    """What a laboratory sets: temperatures [°C], its name and its paper."""
+
+    laboratory: str = "Solvent handbook"
+    reference_temperature_c: float = 25.0
+    temperatures_c: tuple[float, ...] = (0.0, 10.0, 20.0, 25.0, 30.0, 40.0, 50.0, 60.0, 80.0)
+    paper: str = "A4"
+
+
+@dataclass(frozen=True)
+class Handbook:
+    """Every number of the handbook, measured and derived alike.
+
+    ``reference`` and ``temperatures`` are in kelvin. The arrays in ``_results`` have the shape
+    (substances, temperatures + 1); the last column is each substance's own reference.
+    """
+
+    dataset: Dataset
+    settings: Settings
+    molecules: Mapping[str, Molecule]
+    reference: float
+    temperatures: tuple[float, ...]
+    _rows: Mapping[str, Row]
+    _results: Mapping[str, tuple[Array, Array]]
+    _index: Mapping[str, int] = field(repr=False)
+
+    @cached_property
+    def sources(self) -> Mapping[str, Source]:
+        """Every source a number may name: those of the tables, and the structure itself."""
+        return {STRUCTURE: STRUCTURE_SOURCE, **self.dataset.sources}
+
+    def own_reference(self, solvent: str) -> float:
+        """The reference temperature [K], or the nearest usable one where it is not liquid."""
+        return self._rows[solvent].reference
+
+    def liquid_range(self, solvent: str) -> LiquidRange:
+        """Melting and boiling point [K] of a substance."""
+        return self._rows[solvent].liquid
+
+    def at(self, solvent: str, key: str, temperature: float | None = None) -> Value | None:
+        """One number at a listed temperature [K], or at the substance's own reference."""
+        row = self._rows[solvent]
+        if key in row.constants:
+            return row.constants[key]
+        if temperature is None:
+            return self._cell(solvent, key, len(self.temperatures))
+        return self._cell(solvent, key, self.temperatures.index(temperature))
+
+    def series(self, solvent: str, key: str) -> tuple[Value | None, ...]:
+        """One quantity over the listed temperatures."""
+        constant = self._rows[solvent].constants.get(key)
+        if constant is not None:
+            return tuple(constant for _ in self.temperatures)
+        return tuple(self._cell(solvent, key, k) for k in range(len(self.temperatures)))
+
+    def trend(self, solvent: str) -> Trend:
+        """Observed slope of the permittivity at the substance's own reference."""
+        return self._rows[solvent].slopes[-1]
+
+    def expected_trend(self, solvent: str) -> Value | None:
+        """Slope that expansion and thermal agitation alone would give, at its own reference."""
+        return self.at(solvent, "expected_temperature_coefficient")
+
+    def is_polar(self, solvent: str) -> str:
+        """``polar``, ``borderline``, ``unpolar`` or ``not known``, by the orientation part."""
+        orientation = self.at(solvent, "lippert_mataga_polarizability")
+        if orientation is not None:
+            if orientation.value >= POLAR_ABOVE:
+                return "polar"
+            return "unpolar" if orientation.value <= UNPOLAR_BELOW else "borderline"
+        permittivity = self.at(solvent, _EPS)
+        if permittivity is not None and permittivity.value >= SURELY_POLAR:
+            return "polar"
+        return "not known"
+
+    def _cell(self, solvent: str, key: str, column: int) -> Value | None:
+        row = self._rows[solvent]
+        if key in row.chosen:
+            return row.chosen[key][column]
+        if key == "temperature_coefficient":
+            return _trend_value(row.slopes[column])
+        if key not in self._results:
+            return None
+        values, spreads = self._results[key]
+        index = self._index[solvent]
+        value = float(values[index, column])
+        if not math.isfinite(value):
+            return None
+        inputs = [row.constants.get(k) or row.chosen[k][column] for k in self._used(solvent, key)]
+        known = [v for v in inputs if v is not None]
+        marks = list(union(v.marks for v in known))
+        if key == "debye_dipole_moment" and self.molecules[solvent].is_associated:
+            marks.append(ASSOCIATED)
+        basis = "estimated" if any(v.basis == "estimated" for v in known) else "computed"
+        return Value(
+            key,
+            value,
+            float(spreads[index, column]),
+            row.temperatures[column],
+            basis,
+            union(v.sources for v in known),
+            tuple(marks),
+        )
+
+    def _used(self, solvent: str, key: str) -> tuple[str, ...]:
+        """The inputs a number was made from; the unpolar slope does without n."""
+        if key == "expected_temperature_coefficient" and has_no_moment(self._rows[solvent]):
+            return (_EPS, _ALPHA)
+        return DEPENDS[key]
+
+
+def compute(dataset: Dataset, settings: Settings) -> Handbook:
+    """Choose every input and work out every metric. Structures must be readable (see checks)."""
+    reference = settings.reference_temperature_c + ZERO_CELSIUS
+    temperatures = tuple(t + ZERO_CELSIUS for t in settings.temperatures_c)
+    molecules = {slug: molecule(s.smiles) for slug, s in dataset.solvents.items()}
+    rows = {
+        slug: choose_inputs(dataset, slug, molecules[slug], reference, temperatures)
+        for slug in dataset.solvents
+    }
+    ordered = list(rows.values())
+    chunks = [_work_out(ordered[i : i + _CHUNK]) for i in range(0, len(ordered), _CHUNK)]
+    results = {
+        key: (
+            np.concatenate([chunk[key][0] for chunk in chunks]),
+            np.concatenate([chunk[key][1] for chunk in chunks]),
+        )
+        for key in DEPENDS
+    }
+    index = {slug: i for i, slug in enumerate(rows)}
+    return Handbook(
+        dataset, settings, molecules, reference, temperatures, rows, results, index
+    )
+
+
+def _trend_value(trend: Trend) -> Value | None:
+    if not math.isfinite(trend.value):
+        return None
+    return Value(
+        "temperature_coefficient",
+        trend.value,
+        trend.uncertainty,
+        trend.temperature,
+        "computed",
+        trend.sources,
+        (LOWER_BOUND,),
+    )
+
+
+def _work_out(rows: Sequence[Row]) -> dict[str, tuple[Array, Array]]:
+    """Every metric for some substances: values and uncertainties, (substances, temperatures)."""
+    temperature = np.array([row.temperatures for row in rows])
+    bare = np.array([[has_no_moment(row)] for row in rows])
+    centre, spread = {}, {}
+    for key in INPUTS:
+        cells = [row.chosen.get(key) or (row.constants.get(key),) for row in rows]
+        centre[key] = np.array([[v.value if v else np.nan for v in cell] for cell in cells])
+        spread[key] = np.array([[v.uncertainty if v else np.nan for v in cell] for cell in cells])
+    samples = {
+        key: uncertainty.draw(centre[key], spread[key], index, *_bounds(key))
+        for index, key in enumerate(INPUTS)
+    }
+    values = _metrics(centre, temperature, bare)
+    sampled = _metrics(samples, temperature[..., np.newaxis], bare[..., np.newaxis])
+    return {key: (values[key], uncertainty.spread(sampled[key])) for key in DEPENDS}
+
+
+def _bounds(key: str) -> tuple[float, float]:
+    quantity = QUANTITIES[key]
+    return quantity.low, quantity.high
+
+
+def _metrics(x: Mapping[str, Array], t: Array, no_moment: NDArray[np.bool_]) -> dict[str, Array]:
+    """The metrics of DESIGN's table from arrays of inputs; the one place that wires them."""
+    eps, n, mu = x[_EPS], x[_N], x[_MU]
+    volume = polarity.molar_volume(x[_M], x[_RHO])
+    total = polarity.molar_polarization(eps, volume)
+    refraction = polarity.molar_refraction(n, volume)
+    orientation = polarity.orientation_polarization(total, refraction)
+    onsager = polarity.onsager_dipole_moment(eps, n, volume, t)
+    g = polarity.kirkwood_correlation_factor(onsager, mu)
+    dipolar_slope = polarity.expected_temperature_coefficient(eps, n, x[_ALPHA], t)
+    unpolar_slope = polarity.clausius_mossotti_slope(eps, x[_ALPHA])
+    return {
+        "kirkwood_function": polarity.kirkwood_function(eps),
+        "clausius_mossotti_function": polarity.clausius_mossotti_function(eps),
+        "molar_volume": volume,
+        "molar_polarization": total,
+        "molar_refraction": refraction,
+        "orientation_polarization": orientation,
+        "debye_dipole_moment": polarity.debye_dipole_moment(orientation, t),
+        "onsager_dipole_moment": onsager,
+        "kirkwood_correlation_factor": np.where(no_moment, np.nan, g),
+        "lippert_mataga_polarizability": polarity.lippert_mataga_polarizability(eps, n),
+        "expected_temperature_coefficient": np.where(no_moment, unpolar_slope, dipolar_slope),
+        "bjerrum_length": polarity.bjerrum_length(eps, t),
+        "born_solvation_energy": polarity.born_solvation_energy(eps),
+        "debye_length_01": polarity.debye_length(eps, t, 0.1),
+        "debye_length_001": polarity.debye_length(eps, t, 0.01),
+        "charge_relaxation_time": polarity.charge_relaxation_time(eps, x[_KAPPA]),
+    }
+
+
