@@ -1,0 +1,127 @@
+"""What several tests share: the shipped handbook, built once, and a browser that stays at home."""
+
+from __future__ import annotations
+
+import functools
+import http.server
+import os
+import shutil
+import subprocess
+import sys
+import threading
+from collections.abc import Iterator
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import pytest
+
+if TYPE_CHECKING:
+    from playwright.sync_api import Browser, Page, Route
+
+ROOT = Path(__file__).resolve().parent.parent
+IN_CI = os.environ.get("CI", "").lower() in {"1", "true"}
+BROWSER_NAMES = ("chromium", "chromium-browser", "google-chrome")
+# A browser that asks nobody for updates, and runs as root inside a container.
+BROWSER_ARGUMENTS = (
+    "--headless",
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+)
+
+
+@pytest.fixture(scope="session")
+def project() -> Path:
+    """The folder of the project."""
+    return ROOT
+
+
+def datasheets(*arguments: str | Path, folder: Path = ROOT) -> subprocess.CompletedProcess[str]:
+    """Run the command as a user does: the whole process, nothing imported here."""
+    command = shutil.which("datasheets", path=str(Path(sys.executable).parent))
+    assert command, "the project is not installed beside this Python: see README.md"
+    return subprocess.run(
+        [command, *map(str, arguments)],
+        cwd=folder,
+        capture_output=True,
+        text=True,
+        check=False,
+        env={**os.environ, "NO_MKDOCS_2_WARNING": "1"},
+    )
+
+
+@pytest.fixture(scope="session")
+def built_site(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The shipped handbook, built by the command into a folder of its own."""
+    site = tmp_path_factory.mktemp("handbook") / "site"
+    done = datasheets("build", "--site", site)
+    assert done.returncode == 0, done.stdout + done.stderr
+    return site
+
+
+class _Quiet(http.server.SimpleHTTPRequestHandler):
+    def log_message(self, format: str, *args: object) -> None:  # noqa: A002
+        pass
+
+
+@pytest.fixture(scope="session")
+def site_url(built_site: Path) -> Iterator[str]:
+    """Address of the built handbook on a server that only this machine reaches."""
+    handler = functools.partial(_Quiet, directory=str(built_site))
+    with http.server.ThreadingHTTPServer(("127.0.0.1", 0), handler) as server:
+        thread = threading.Thread(target=server.serve_forever, daemon=True)
+        thread.start()
+        yield f"http://127.0.0.1:{server.server_port}/"
+        server.shutdown()
+        thread.join()
+
+
+@pytest.fixture(scope="session")
+def chromium() -> Iterator[Browser]:
+    """A running browser. Without one: skipped on a desk, failed in CI."""
+    found = (shutil.which(name) for name in BROWSER_NAMES)
+    path = os.environ.get("CHROMIUM") or next(filter(None, found), None)
+    if path is None:
+        message = "no Chromium found: install one or set CHROMIUM to its path (see README.md)"
+        pytest.fail(message) if IN_CI else pytest.skip(message)
+    from playwright.sync_api import sync_playwright
+
+    with sync_playwright() as playwright:
+        browser = playwright.chromium.launch(executable_path=path, args=list(BROWSER_ARGUMENTS))
+        yield browser
+        browser.close()
+
+
+@pytest.fixture
+def browser_page(chromium: Browser, site_url: str, built_site: Path) -> Iterator[Page]:
+    """A fresh page at the site's address; relative addresses work in ``page.goto``.
+
+    A request to anywhere else is stopped, and fails the test, as does an error on the console.
+    """
+    allowed = (site_url, built_site.as_uri(), "data:", "blob:")
+    strangers: list[str] = []
+    errors: list[str] = []
+
+    def guard(route: Route) -> None:
+        if route.request.url.startswith(allowed):
+            route.continue_()
+        else:
+            strangers.append(route.request.url)
+            route.abort()
+
+    context = chromium.new_context(base_url=site_url)
+    context.route("**/*", guard)
+    page = context.new_page()
+    page.on("console", lambda m: errors.append(m.text) if m.type == "error" else None)
+    page.on("pageerror", lambda error: errors.append(str(error)))
+    page.set_default_timeout(10_000)
+    yield page
+    # Let anything still on its way be seen before judging.
+    page.wait_for_load_state("networkidle")
+    context.close()
+    assert not strangers, f"requests that leave the site: {strangers}"
+    assert not errors, f"errors on the console: {errors}"
