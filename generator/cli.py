@@ -1,0 +1,119 @@
+"""The command ``datasheets``: add substances, check the tables, build the handbook."""
+
+from __future__ import annotations
+
+import json
+import sys
+import time
+from collections.abc import Iterable
+from pathlib import Path
+
+import click
+
+from generator.errors import DatasetError, Problem
+
+_DATA = click.option(
+    "--data",
+    type=click.Path(path_type=Path, file_okay=False),
+    default=Path("data"),
+    show_default=True,
+    help="Folder of the tables.",
+)
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+def main() -> None:
+    """Check the solvent tables, let them grow, and build the handbook from them."""
+
+
+@main.command()
+@_DATA
+@click.option("--json", "as_json", is_flag=True, help="Findings as JSON, for machines.")
+def check(data: Path, as_json: bool) -> None:
+    """Report everything wrong or doubtful in the tables, all at once.
+
+    Exit status: 0 without errors, 1 with errors, 2 when the command was misused.
+    """
+    from generator.build import review
+    from generator.metrics import Settings
+
+    findings: tuple[Problem, ...]
+    try:
+        findings = review(data, Settings())[1]
+    except DatasetError as error:
+        findings = error.problems
+    errors = sum(f.severity == "error" for f in findings)
+    if as_json:
+        click.echo(json.dumps([f.as_dict() for f in findings], ensure_ascii=False, indent=1))
+    else:
+        _report(findings)
+        click.echo(f"{errors} errors, {len(findings) - errors} suspect values")
+    sys.exit(1 if errors else 0)
+
+
+def _report(findings: Iterable[Problem]) -> None:
+    for finding in findings:
+        click.echo(f"{finding}\n")
+
+
+@main.command()
+@click.argument("names", metavar="NAME-OR-CAS...", nargs=-1)
+@_DATA
+@click.option("--dry-run", is_flag=True, help="Show the rows, write nothing.")
+@click.option(
+    "--all-liquids",
+    is_flag=True,
+    help="Every substance with a published permittivity and a usable structure.",
+)
+def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) -> None:
+    """Add substances from the open reference tables: identity, quantities, sources.
+
+    A substance that is already there is left alone; rows typed by the laboratory are never
+    touched. A name that fits several substances is refused with the candidates.
+    """
+    from generator import additions
+
+    if bool(names) == all_liquids:
+        raise click.UsageError("give names or CAS numbers, or --all-liquids")
+    try:
+        plan = additions.plan(data, names, all_liquids=all_liquids)
+    except DatasetError as error:
+        _report(error.problems)
+        sys.exit(1)
+    click.echo(plan.summary(rows=dry_run))
+    if plan.refusals:
+        sys.exit(1)
+    if not dry_run:
+        additions.apply(plan)
+
+
+@main.command()
+@click.option(
+    "--config",
+    type=click.Path(path_type=Path, exists=True, dir_okay=False),
+    default=Path("mkdocs.yml"),
+    show_default=True,
+    help="Settings of the handbook.",
+)
+@click.option(
+    "--site",
+    type=click.Path(path_type=Path, file_okay=False),
+    default=Path("site"),
+    show_default=True,
+    help="Folder the finished handbook is put in.",
+)
+def build(config: Path, site: Path) -> None:
+    """Check the tables and build the handbook; the last good one stays if anything fails."""
+    from mkdocs.exceptions import MkDocsException
+
+    from generator.publish import publish
+    from generator.ready import run_mkdocs
+
+    start = time.monotonic()
+    try:
+        publish(site, lambda folder: run_mkdocs(config, folder))
+    except (MkDocsException, click.Abort) as error:
+        click.echo(str(error), err=True)
+        click.echo(f"Nothing was published; {site} is as it was.", err=True)
+        sys.exit(1)
+    click.echo(f"{site}: built in {time.monotonic() - start:.1f} s")

@@ -1,0 +1,87 @@
+"""The MkDocs plugin: settings in, finished pages out. It holds no logic of its own."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from mkdocs.config import config_options as option
+from mkdocs.config.base import Config, ValidationError
+from mkdocs.config.defaults import MkDocsConfig
+from mkdocs.exceptions import PluginError
+from mkdocs.livereload import LiveReloadServer
+from mkdocs.plugins import BasePlugin, event_priority
+from mkdocs.structure.files import File, Files
+
+from generator import ready
+from generator.build import Site, build_site
+from generator.errors import DatasetError
+from generator.metrics import Settings
+from generator.units import ZERO_CELSIUS
+
+
+class _Temperature(option.OptionallyRequired[float]):
+    """A number in °C above absolute zero."""
+
+    def run_validation(self, value: object) -> float:
+        if isinstance(value, bool) or not isinstance(value, (int, float)):
+            raise ValidationError(f"expected a temperature in °C, a plain number, found {value!r}")
+        if value <= -ZERO_CELSIUS:
+            raise ValidationError(f"{value} °C is below absolute zero")
+        return float(value)
+
+
+class DatasheetsConfig(Config):
+    """The settings of ``plugins: - datasheets:`` in mkdocs.yml."""
+
+    data = option.Type(str, default="data")
+    laboratory = option.Type(str, default=Settings.laboratory)
+    reference_temperature_c = _Temperature(default=Settings.reference_temperature_c)
+    temperatures_c = option.ListOfItems(_Temperature(), default=list(Settings.temperatures_c))
+    paper = option.Choice(("A4", "Letter"), default=Settings.paper)
+
+
+def settings_of(config: DatasheetsConfig) -> Settings:
+    """The generator's settings from the plugin's."""
+    return Settings(
+        laboratory=config.laboratory,
+        reference_temperature_c=config.reference_temperature_c,
+        temperatures_c=tuple(sorted(set(config.temperatures_c))),
+        paper=config.paper,
+    )
+
+
+class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
+    """Hands the generated pages and files to MkDocs."""
+
+    _site: Site
+
+    def _folder(self, config: MkDocsConfig) -> Path:
+        return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data
+
+    def on_pre_build(self, *, config: MkDocsConfig) -> None:
+        """Make everything before MkDocs empties the site, so that bad data leave it untouched."""
+        folder = self._folder(config)
+        try:
+            self._site = build_site(folder, settings_of(self.config), folder.parent / ".cache")
+        except DatasetError as error:
+            raise PluginError(str(error)) from error
+
+    def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
+        """Add the generated pages and files."""
+        for page in self._site.pages:
+            ready.add_page(page, config, files)
+        for path, content in self._site.files.items():
+            files.append(File.generated(config, path, content=content))
+        return files
+
+    @event_priority(100)
+    def on_post_build(self, *, config: MkDocsConfig) -> None:
+        """Write the search entries before the theme writes its index."""
+        ready.add_search_entries(self._site.pages, config)
+
+    def on_serve(
+        self, server: LiveReloadServer, *, config: MkDocsConfig, builder: object
+    ) -> LiveReloadServer:
+        """Watch the tables in the preview."""
+        server.watch(str(self._folder(config)))
+        return server
