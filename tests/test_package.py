@@ -192,7 +192,8 @@ def test_links_between_our_own_files_lead_somewhere(page: str) -> None:
 
 FOREIGN_PLACES = re.compile(
     # a path of one machine; the address of a package registry
-    r"(?:^|[^a-z.\w])/(?:work|tmp|root|home|Users)/|https?://[^ ]*(?:pypi|pythonhosted|npmjs|debian)",
+    r"(?:^|[^a-z.\w])/(?:work|tmp|root|home|Users)/"
+    r"|https?://[^ ]*(?:pypi|pythonhosted|npmjs|debian)",
     re.IGNORECASE | re.MULTILINE,
 )
 
