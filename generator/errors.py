@@ -13,7 +13,8 @@ class Problem:
     ``file`` is the name inside the data folder, ``line`` the physical line (the header is line 1,
     0 stands for the whole file), ``column`` the column's name ("" for the whole line).
     ``kind`` is a slug such as ``cas-check-digit``. ``severity`` is ``error`` (nothing is built)
-    or ``suspect`` (published with a flag).
+    or ``suspect`` (published with a flag). A cross-check adds its ``evidence`` in numbers and
+    its ``strength``, by which the review list is ordered (how many times the usual spread).
     """
 
     file: str
@@ -24,6 +25,8 @@ class Problem:
     expected: str
     hint: str
     severity: str = "error"
+    evidence: str = ""
+    strength: float = 0.0
 
     @property
     def place(self) -> str:
@@ -35,17 +38,19 @@ class Problem:
             parts.append(f"column {self.column}")
         return ", ".join(parts)
 
-    def as_dict(self) -> dict[str, str | int]:
+    def as_dict(self) -> dict[str, str | int | float]:
         """The fields by name, for machine-readable output."""
         return asdict(self)
 
     def __str__(self) -> str:
-        return (
-            f"{self.severity}: {self.place} [{self.kind}]\n"
-            f"    found:    {self.found}\n"
-            f"    expected: {self.expected}\n"
-            f"    instead:  {self.hint}"
-        )
+        lines = [
+            f"{self.severity}: {self.place} [{self.kind}]",
+            f"    found:    {self.found}",
+            f"    expected: {self.expected}",
+            f"    evidence: {self.evidence}" if self.evidence else "",
+            f"    {'instead: ' if self.severity == 'error' else 'settle by:'} {self.hint}",
+        ]
+        return "\n".join(line for line in lines if line)
 
 
 class DatasetError(Exception):
