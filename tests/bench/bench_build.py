@@ -31,6 +31,7 @@ BOUND = 2.0
 BARE_SETTINGS = """\
 site_name: Bare
 docs_dir: pages
+use_directory_urls: false
 theme: {name: material, font: false}
 plugins: [search]
 markdown_extensions: [tables]
@@ -167,10 +168,7 @@ def _bare(folder: Path, site: Path) -> int:
     """The Markdown twin of every page of ``site``; how many there are."""
     pages = [path for path in sorted(site.rglob("*.html")) if path.name != "404.html"]
     for path in pages:
-        where = path.relative_to(site)
-        if where.name == "index.html" and where.parent != Path():
-            where = where.parent  # an address without the file's name
-        target = folder / "pages" / f"{where.as_posix().removesuffix('.html')}.md"
+        target = folder / "pages" / path.relative_to(site).with_suffix(".md")
         target.parent.mkdir(parents=True, exist_ok=True)
         target.write_text(_twin_of(path.read_text(encoding="utf-8")), encoding="utf-8")
     (folder / "mkdocs.yml").write_text(BARE_SETTINGS, encoding="utf-8")

@@ -91,9 +91,9 @@ def _kinds_of_page(site: Path) -> list[str]:
     pages = [p for p in site.rglob("*.html") if p.name != "404.html"]
     folders: dict[Path, list[Path]] = {}
     for path in pages:
-        folders.setdefault(path.parent.parent, []).append(path)
+        folders.setdefault(path.parent, []).append(path)
     datasheets = max(folders.values(), key=len)
-    longest = max(datasheets, key=lambda p: len(p.parent.name))
+    longest = max(datasheets, key=lambda p: len(p.name))
     assert len(datasheets) >= 100
     kept = [p for p in pages if p not in datasheets] + [longest]
     return sorted(p.relative_to(site).as_posix() for p in kept)
