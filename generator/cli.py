@@ -104,15 +104,13 @@ def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) ->
 )
 def build(config: Path, site: Path) -> None:
     """Check the tables and build the handbook; the last good one stays if anything fails."""
-    from mkdocs.exceptions import MkDocsException
-
     from generator.publish import publish
-    from generator.ready import run_mkdocs
+    from generator.ready import Refused, run_mkdocs
 
     start = time.monotonic()
     try:
         publish(site, lambda folder: run_mkdocs(config, folder))
-    except (MkDocsException, click.Abort) as error:
+    except (Refused, click.Abort) as error:
         click.echo(str(error), err=True)
         click.echo(f"Nothing was published; {site} is as it was.", err=True)
         sys.exit(1)

@@ -33,7 +33,8 @@ class _Temperature(option.OptionallyRequired[float]):
 class DatasheetsConfig(Config):
     """The settings of ``plugins: - datasheets:`` in mkdocs.yml."""
 
-    data = option.Type(str, default="data")
+    # MkDocs drops the underscore: a bare `data` would hide the dictionary its Config stands on.
+    data_ = option.Type(str, default="data")
     laboratory = option.Type(str, default=Settings.laboratory)
     reference_temperature_c = _Temperature(default=Settings.reference_temperature_c)
     temperatures_c = option.ListOfItems(_Temperature(), default=list(Settings.temperatures_c))
@@ -56,7 +57,7 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
     _site: Site
 
     def _folder(self, config: MkDocsConfig) -> Path:
-        return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data
+        return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data_
 
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Make everything before MkDocs empties the site, so that bad data leave it untouched."""

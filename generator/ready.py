@@ -10,10 +10,13 @@ from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from mkdocs.exceptions import PluginError
+from mkdocs.exceptions import MkDocsException, PluginError
 from mkdocs.structure.files import File, InclusionLevel
 from mkdocs.structure.pages import Page
 from mkdocs.structure.toc import AnchorLink, TableOfContents
+
+# What `run_mkdocs` raises when MkDocs refuses.
+Refused = MkDocsException
 
 if TYPE_CHECKING:
     from mkdocs.config.defaults import MkDocsConfig
@@ -59,9 +62,7 @@ def add_page(finished: FinishedPage, config: MkDocsConfig, files: Files) -> None
     existing = files.get_file_from_path(finished.path)
     if existing is not None:
         raise PluginError(f"{finished.path} is generated and must not stand among the sources too")
-    file = File.generated(
-        config, finished.path, content="", inclusion=InclusionLevel.NOT_IN_NAV
-    )
+    file = File.generated(config, finished.path, content="", inclusion=InclusionLevel.NOT_IN_NAV)
     files.append(file)
     ReadyPage(finished, file, config)
 
@@ -92,7 +93,7 @@ def _search_entries(config: MkDocsConfig) -> list[dict[str, Any]] | None:
 def run_mkdocs(config_file: Path, site: Path) -> None:
     """Build the handbook described by ``config_file`` into the folder ``site``.
 
-    Raises ``mkdocs.exceptions.MkDocsException`` or ``Abort`` when MkDocs refuses.
+    Raises ``Refused`` when MkDocs refuses.
     """
     from mkdocs.commands.build import build
     from mkdocs.config import load_config
