@@ -249,8 +249,8 @@ def _conductivity(records: Records) -> Iterator[Row]:
 
 
 def _below(kelvin: str) -> str:
-    """The upper end of a curve that stops existing at its critical temperature."""
-    celsius = Decimal(kelvin) - ZERO_CELSIUS
+    """The upper end of a curve, kept below the critical temperature where it stops existing."""
+    celsius = Decimal(kelvin) - ZERO_CELSIUS - Decimal("0.01")
     return plain(celsius.quantize(Decimal("0.1"), rounding=ROUND_FLOOR))
 
 
@@ -294,6 +294,7 @@ def _viscosity_curves(records: Records) -> Iterator[Row]:
         coefficients = (record["A"], record["B"], repr(-float(record["C"])))
         ends = range_c(record["Tmin"]), range_c(record["Tmax"])
         yield _curve("viscosity", "antoine", "mPa s", coefficients, ends, "viswanath-viscosity")
+        return
     record = _full(records, VISWANATH_2, "A", "B", "Tmin", "Tmax")
     if record:
         # log10(η / Pa s) = A + B/T, likewise
