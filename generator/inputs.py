@@ -7,13 +7,13 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from generator import polarity, thermal
-from generator.dataset import Dataset, Measurement, Source
+from generator.dataset import Dataset, Source
 from generator.quantities import MEASURED, QUANTITIES
 from generator.reconcile import (
     CARRIED,
-    EDGE,
-    LOWER_BOUND,
     OUTSIDE_LIQUID_RANGE,
+    REACH,
+    SHORTEST_SPAN,
     LiquidRange,
     Value,
     choose,
@@ -21,8 +21,8 @@ from generator.reconcile import (
     curve_slope,
     curve_uncertainty,
     curve_values,
+    line_through,
     liquid_range,
-    point_uncertainty,
     rank_curves,
     within,
 )
@@ -42,8 +42,14 @@ STRUCTURE_SOURCE = Source(
 
 # A moment below this is no moment that the permittivity could show (alkanes, [D]).
 NO_MOMENT = 0.1
-# A slope needs temperatures this far apart [K].
-SHORTEST_SPAN = 4.0
+# Where no density curve is known: α = 0.31/(1.6 t_b − T), the shape of the Rackett equation with
+# the critical temperature taken as 1.6 boiling points; the spread is what it misses measured
+# expansivities by on the handbook's own liquids (a test holds both numbers against the data).
+_EXPANSION_FACTOR = 0.31
+_CRITICAL_TO_BOILING = 1.6
+EXPANSION_SPREAD = 0.20
+# Density curves of one liquid differ by some 3 % in slope.
+_CURVE_EXPANSION_SPREAD = 0.03
 # Share of a temperature shift of n that constant molar refraction gets wrong.
 _REFRACTION_SHARE = 0.1
 
@@ -105,7 +111,7 @@ def choose_inputs(
     if not liquid.holds(own):
         _fill_outside(dataset, slug, chosen, own)
     chosen[_N] = _refractive_index(dataset, slug, constants[_M], chosen, temperatures, liquid)
-    chosen[_ALPHA] = [_expansivity(dataset, slug, v) for v in chosen[_RHO]]
+    chosen[_ALPHA] = [_expansivity(dataset, slug, v, liquid) for v in chosen[_RHO]]
     fixed = {key: tuple(values) for key, values in chosen.items()}
     slopes = tuple(
         _trend(dataset, slug, v, t) for v, t in zip(fixed[_EPS], temperatures, strict=True)
@@ -145,17 +151,21 @@ def _fill_outside(
 
 def _constants(dataset: Dataset, slug: str, structure: Molecule) -> dict[str, Value]:
     constants = {
-        key: value
-        for key in CONSTANT
-        if (value := choose_constant(dataset, slug, key)) is not None
+        key: value for key in CONSTANT if (value := choose_constant(dataset, slug, key)) is not None
     }
     mass = structure.molar_mass
     # Standard atomic weights carry about five digits.
     constants[_M] = Value(_M, mass, 2e-5 * mass, None, "computed", (STRUCTURE,))
-    moment = constants.get(_MU)
-    if structure.zero_dipole and (moment is None or moment.basis == "estimated"):
-        constants[_MU] = Value(_MU, 0.0, 0.0, None, "computed", (STRUCTURE,))
+    if structure.zero_dipole:
+        constants[_MU] = _no_moment(constants.get(_MU))
     return constants
+
+
+def _no_moment(measured: Value | None) -> Value:
+    """Zero by symmetry, which is exact; sources that say the same are named beside it."""
+    agreeing = measured is not None and measured.value <= NO_MOMENT
+    sources = (STRUCTURE, *measured.sources) if agreeing and measured is not None else (STRUCTURE,)
+    return Value(_MU, 0.0, 0.0, None, "computed", sources)
 
 
 def _refractive_index(
@@ -182,9 +192,7 @@ def _refractive_index(
         if anchor is None or known is None:
             continue
         refraction = polarity.molar_refraction(anchor.value, mass.value / known.value)
-        n = float(
-            polarity.refractive_index_from_refraction(refraction, mass.value / density.value)
-        )
+        n = float(polarity.refractive_index_from_refraction(refraction, mass.value / density.value))
         spread = math.hypot(anchor.uncertainty, _REFRACTION_SHARE * (n - anchor.value))
         inputs = (anchor, known, density)
         result[k] = Value(
@@ -199,56 +207,57 @@ def _refractive_index(
     return result
 
 
-def _expansivity(dataset: Dataset, slug: str, density: Value | None) -> Value | None:
-    """Thermal expansivity at the temperature of a density, from a curve or from points."""
+def _expansivity(
+    dataset: Dataset, slug: str, density: Value | None, liquid: LiquidRange
+) -> Value | None:
+    """Thermal expansivity at the temperature of a density: curve, points, or an estimate."""
     if density is None or density.temperature is None:
         return None
     temperature = density.temperature
     for curve in rank_curves(dataset, slug, _RHO):
         if within(curve, temperature):
-            slope = curve_slope(curve, temperature, _RHO)
             (rho,) = curve_values(curve, [temperature], _RHO)
-            # Density curves of one liquid differ by some 3 % in slope.
-            return _alpha(-slope / rho, 0.03 * abs(slope / rho), temperature, (curve.source,))
+            alpha = -curve_slope(curve, temperature, _RHO) / rho
+            spread = _CURVE_EXPANSION_SPREAD * abs(alpha)
+            return Value(_ALPHA, alpha, spread, temperature, "computed", (curve.source,))
     points = [p for p in dataset.measurements_of(slug, _RHO) if p.temperature is not None]
-    line = _line(points, temperature)
-    if line is None:
+    line = line_through(dataset, points, temperature)
+    if line is not None:
+        alpha, spread = -line.slope / density.value, line.slope_uncertainty / density.value
+        sources = tuple(dict.fromkeys(p.source for p in points))
+        return Value(_ALPHA, alpha, spread, temperature, "computed", sources)
+    boiling = choose_constant(dataset, slug, "boiling_point")
+    if liquid.high is None or boiling is None:
         return None
-    sources = tuple(dict.fromkeys(p.source for p in points))
-    return _alpha(
-        -line.slope / density.value, line.slope_uncertainty / density.value, temperature, sources
-    )
+    alpha = estimated_expansivity(liquid.high, temperature)
+    spread = EXPANSION_SPREAD * alpha
+    return Value(_ALPHA, alpha, spread, temperature, "estimated", boiling.sources)
 
 
-def _alpha(value: float, spread: float, temperature: float, sources: tuple[str, ...]) -> Value:
-    return Value(_ALPHA, value, spread, temperature, "computed", sources, (LOWER_BOUND,))
+def estimated_expansivity(boiling: float, temperature: float) -> float:
+    """Thermal expansivity [1/K] of a liquid of which only the boiling point is known.
 
-
-def _line(points: Sequence[Measurement], temperature: float) -> thermal.LineFit | None:
-    """A straight line through points whose temperatures reach around ``temperature`` [K]."""
-    timed = [p for p in points if p.temperature is not None]
-    at = [p.temperature for p in timed if p.temperature is not None]
-    if not at or max(at) - min(at) < SHORTEST_SPAN:
-        return None
-    if not min(at) - EDGE <= temperature <= max(at) + EDGE:
-        return None
-    return thermal.fit_line(at, [p.value for p in timed], [point_uncertainty(p) for p in timed])
+    ``boiling`` [K], ``temperature`` [K].
+    """
+    return _EXPANSION_FACTOR / (_CRITICAL_TO_BOILING * boiling - temperature)
 
 
 def _trend(dataset: Dataset, slug: str, value: Value | None, temperature: float) -> Trend:
-    """Slope of ε at ``temperature`` [K], where there is an ε to have a slope."""
+    """Slope of ε at ``temperature`` [K], or at the end of its curve's range where that is near."""
     if value is None:
         return _UNKNOWN_TREND
     for curve in rank_curves(dataset, slug, _EPS):
         width = curve.t_max - curve.t_min
-        if within(curve, temperature) and width >= SHORTEST_SPAN:
-            slope = curve_slope(curve, temperature, _EPS)
+        if within(curve, temperature, REACH) and width >= SHORTEST_SPAN:
+            place = min(max(temperature, curve.t_min), curve.t_max)
+            slope = curve_slope(curve, place, _EPS)
+            (at,) = curve_values(curve, [place], _EPS)
             # The slope of a straight line through evenly spread points of uncertainty u.
-            spread = math.sqrt(12) * curve_uncertainty(dataset, curve)[0] / width
+            spread = math.sqrt(12) * curve_uncertainty(dataset, curve, at)[0] / width
             sign = thermal.sign_of(slope, spread)
-            return Trend(slope, spread, sign, temperature, "curve", (curve.source,))
+            return Trend(slope, spread, sign, place, "curve", (curve.source,))
     points = dataset.measurements_of(slug, _EPS)
-    line = _line(points, temperature)
+    line = line_through(dataset, points, temperature)
     if line is None:
         return _UNKNOWN_TREND
     sources = tuple(dict.fromkeys(p.source for p in points))
@@ -265,5 +274,3 @@ def has_no_moment(row: Row) -> bool:
 def union(groups: Iterable[Iterable[str]]) -> tuple[str, ...]:
     """The distinct items of all groups, in order of appearance."""
     return tuple(dict.fromkeys(item for group in groups for item in group))
-
-

@@ -28,7 +28,7 @@ from generator.inputs import (
     union,
 )
 from generator.quantities import QUANTITIES
-from generator.reconcile import ASSOCIATED, LOWER_BOUND, LiquidRange, Value
+from generator.reconcile import ASSOCIATED, LiquidRange, Value
 from generator.structures import Molecule, molecule
 from generator.units import ZERO_CELSIUS
 
@@ -142,7 +142,8 @@ class Handbook:
         if key in row.chosen:
             return row.chosen[key][column]
         if key == "temperature_coefficient":
-            return _trend_value(row.slopes[column])
+            own = column == len(self.temperatures)
+            return _trend_value(row.slopes[column], None if own else row.temperatures[column])
         if key not in self._results:
             return None
         values, spreads = self._results[key]
@@ -192,13 +193,12 @@ def compute(dataset: Dataset, settings: Settings) -> Handbook:
         for key in DEPENDS
     }
     index = {slug: i for i, slug in enumerate(rows)}
-    return Handbook(
-        dataset, settings, molecules, reference, temperatures, rows, results, index
-    )
+    return Handbook(dataset, settings, molecules, reference, temperatures, rows, results, index)
 
 
-def _trend_value(trend: Trend) -> Value | None:
-    if not math.isfinite(trend.value):
+def _trend_value(trend: Trend, temperature: float | None) -> Value | None:
+    """The slope as a number; None where it is not known at ``temperature`` [K] itself."""
+    if trend.temperature is None or temperature not in (None, trend.temperature):
         return None
     return Value(
         "temperature_coefficient",
@@ -207,7 +207,6 @@ def _trend_value(trend: Trend) -> Value | None:
         trend.temperature,
         "computed",
         trend.sources,
-        (LOWER_BOUND,),
     )
 
 
@@ -263,5 +262,3 @@ def _metrics(x: Mapping[str, Array], t: Array, no_moment: NDArray[np.bool_]) -> 
         "debye_length_001": polarity.debye_length(eps, t, 0.01),
         "charge_relaxation_time": polarity.charge_relaxation_time(eps, x[_KAPPA]),
     }
-
-

@@ -1,10 +1,13 @@
-"""Several sources for one quantity → one chosen value, with where it came from.
+"""Several sources for one quantity → one chosen value, with the whole trail of how.
 
-The rule, in order. At a temperature: a curve inside its range; points within half a kelvin;
-a curve at most ``REACH`` outside its range, marked ``extrapolated``; the nearest point at most
-``REACH`` away, taken unchanged with an uncertainty that grows by the usual slope, marked
-``carried``; else nothing. Outside the liquid range: nothing. Several points stand in by their
-median, which one wrong entry cannot move far. Measured comes before calculated.
+The rule. Points of the tables are brought to the temperature asked for with the slope of a curve
+of the same quantity, of a line through the points themselves, or (marked ``carried``) unchanged
+with an uncertainty that grows by the usual slope; never over more than ``REACH``. A curve counts
+inside its range; at most ``REACH`` outside it, marked ``extrapolated``, where nothing else is
+there. Values that lie further from the others than their uncertainties and the common spread
+allow are set aside and named. What is left gives a mean with weights 1/u², whose uncertainty
+grows by the Birge ratio. Measured comes before calculated, and nothing is given outside the
+liquid range.
 """
 
 from __future__ import annotations
@@ -19,11 +22,13 @@ import numpy as np
 from generator import thermal
 from generator.dataset import Correlation, Dataset, Measurement
 from generator.quantities import QUANTITIES
+from generator.uncertainty import weighted_mean
 from generator.units import ZERO_CELSIUS, convert, convert_difference
 
 EXTRAPOLATED = "extrapolated"
 OUTSIDE_LIQUID_RANGE = "outside-liquid-range"
 LOWER_BOUND = "lower-bound"
+USUAL = "usual"
 CARRIED = "carried"
 ASSOCIATED = "associated"
 CORRECTED = "corrected"
@@ -32,6 +37,7 @@ MARKS = {
     EXTRAPOLATED: "outside the stated range of its curve",
     OUTSIDE_LIQUID_RANGE: "outside the liquid range",
     LOWER_BOUND: "no uncertainty stated: rounding of the printed value only, a lower bound",
+    USUAL: "no uncertainty stated: the one customary for this kind of source stands in",
     CARRIED: "measured at another temperature and taken unchanged, uncertainty widened",
     ASSOCIATED: "the formula is not valid for associated liquids",
     CORRECTED: "a published value was set aside or replaced, see the corrections",
@@ -40,7 +46,10 @@ MARKS = {
 SAME_TEMPERATURE = 0.6  # K: 293 K, 20 °C and 293.2 K are one temperature
 REACH = 10.0  # K
 EDGE = 0.051  # K: printed ends of ranges are rounded
-# Usual relative slope by kelvin, to widen a value that is taken to another temperature.
+SHORTEST_SPAN = 4.0  # K: temperatures closer together give no slope
+# A value of less weight than this does not hand its marks on.
+_SAYS_SOMETHING = 0.05
+# Usual relative slope by kelvin, to widen a value that is taken to another temperature unchanged.
 _USUAL_SLOPE = {
     "relative_permittivity": 0.005,
     "refractive_index": 0.0004,
@@ -49,9 +58,11 @@ _USUAL_SLOPE = {
     "vapour_pressure": 0.05,
     "conductivity": 0.03,
 }
+# A slope used to bring a point over is itself wrong by about this share.
+_SLOPE_SHARE = 0.1
 _CALCULATED = "calculated"
-# A calculated moment misses measured ones by about this much.
-_CALCULATED_SHARE = 0.10
+# Further out than this many times its own and the common spread, a value is set aside.
+_OUTLIER = 3.5
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,14 +104,65 @@ def liquid_range(dataset: Dataset, solvent: str) -> LiquidRange:
     return LiquidRange(low, high)
 
 
-def point_uncertainty(point: Measurement) -> float:
-    """Standard uncertainty of a point [its quantity's unit]: stated, or the rounding half-width."""
-    return point.half_width if point.uncertainty is None else point.uncertainty
+@dataclass(frozen=True, slots=True)
+class Candidate:
+    """One value that took part in a decision, brought to the temperature asked for.
+
+    ``weight`` is its share of the mean (0 when it was set aside); ``remark`` says what happened
+    to it. ``file`` and ``line`` are its place in the tables.
+    """
+
+    source: str
+    file: str
+    line: int
+    printed: str
+    value: float
+    uncertainty: float
+    weight: float
+    remark: str
 
 
-def curve_values(
-    curve: Correlation, temperatures: Sequence[float], key: str
-) -> tuple[float, ...]:
+@dataclass(frozen=True, slots=True)
+class Decision:
+    """A chosen value and the trail that led to it; ``value`` is None where nothing could be."""
+
+    value: Value | None
+    candidates: tuple[Candidate, ...]
+    birge_ratio: float
+
+
+@dataclass(frozen=True, slots=True)
+class _Entry:
+    """A point or a curve at one temperature, on its way into the mean."""
+
+    origin: Measurement | Correlation
+    value: float
+    uncertainty: float
+    remark: str
+    marks: tuple[str, ...]
+
+
+_NOTHING = Decision(None, (), 0.0)
+
+
+def stated_or_usual(
+    dataset: Dataset, source: str, key: str, stated: float | None, value: float, floor: float
+) -> tuple[float, str | None]:
+    """Standard uncertainty [unit of ``key``] of a table entry, and its mark.
+
+    The stated one; else what is customary for the kind of source (table ``uncertainties``); else
+    the rounding half-width ``floor`` as a marked lower bound. Never below the rounding.
+    """
+    if stated is not None:
+        return stated, None
+    kind = dataset.sources[source].kind if source in dataset.sources else ""
+    usual = dataset.usual_uncertainty(kind, key, value)
+    if usual is None:
+        return floor, LOWER_BOUND
+    return max(usual, floor), USUAL
+
+
+def curve_values(curve: Correlation, temperatures: Sequence[float], key: str) -> tuple[float, ...]:
     """A curve at ``temperatures`` [K], in the unit of quantity ``key``."""
     raw = thermal.evaluate(curve.form, curve.coefficients, np.asarray(temperatures))
     unit = QUANTITIES[key].unit
@@ -113,16 +175,20 @@ def curve_slope(curve: Correlation, temperature: float, key: str) -> float:
     return convert_difference(raw, curve.unit, QUANTITIES[key].unit)
 
 
-def curve_uncertainty(dataset: Dataset, curve: Correlation) -> tuple[float, bool]:
-    """Standard uncertainty of a curve [the quantity's unit], and whether it is a lower bound.
+def curve_uncertainty(
+    dataset: Dataset, curve: Correlation, value: float
+) -> tuple[float, str | None]:
+    """Standard uncertainty [the quantity's unit] of a curve where it gives ``value``, and its mark.
 
-    Where none is stated: the distance from the points of the same quantity inside its range, or
-    the rounding of those points, whichever is larger.
+    Where none is stated, the distance from the points of the same quantity inside its range
+    counts as well, if it is larger than what is usual for the kind of source.
     """
     quantity = QUANTITIES[curve.quantity]
     if curve.uncertainty is not None:
-        return convert_difference(curve.uncertainty, curve.unit, quantity.unit), False
-    floor = 0.5 * 10.0**-quantity.decimals
+        return convert_difference(curve.uncertainty, curve.unit, quantity.unit), None
+    own, mark = stated_or_usual(
+        dataset, curve.source, curve.quantity, None, value, 0.5 * 10.0**-quantity.decimals
+    )
     points = [
         p
         for p in dataset.measurements_of(curve.solvent, curve.quantity)
@@ -130,9 +196,8 @@ def curve_uncertainty(dataset: Dataset, curve: Correlation) -> tuple[float, bool
     ]
     if points:
         at = curve_values(curve, [_kelvin(p) for p in points], curve.quantity)
-        misses = [abs(p.value - y) for p, y in zip(points, at, strict=True)]
-        floor = max(median(misses), median([p.half_width for p in points]))
-    return floor, True
+        own = max(own, median(abs(p.value - y) for p, y in zip(points, at, strict=True)))
+    return own, mark
 
 
 def within(curve: Correlation, temperature: float, reach: float = EDGE) -> bool:
@@ -153,15 +218,7 @@ def rank_curves(dataset: Dataset, solvent: str, key: str) -> tuple[Correlation, 
 
 def choose_constant(dataset: Dataset, solvent: str, key: str) -> Value | None:
     """The chosen value of a quantity that has no temperature, or None."""
-    points = dataset.measurements_of(solvent, key)
-    measured = [p for p in points if not _is_calculated(dataset, p)]
-    if measured:
-        return _combined(measured, None, "measured")
-    if not points:
-        return None
-    value = _combined(points, None, "estimated")
-    spread = max(value.uncertainty, _CALCULATED_SHARE * abs(value.value))
-    return Value(key, value.value, spread, None, "estimated", value.sources, _drop(value.marks))
+    return decide(dataset, solvent, key, None, LiquidRange(None, None)).value
 
 
 def choose(
@@ -172,86 +229,212 @@ def choose(
     liquid: LiquidRange,
 ) -> tuple[Value | None, ...]:
     """The chosen value at each of ``temperatures`` [K]; None where there is none to stand for."""
-    points = [p for p in dataset.measurements_of(solvent, key) if p.temperature is not None]
-    curves = rank_curves(dataset, solvent, key)
-    result: list[Value | None] = []
-    for temperature in temperatures:
-        chosen = None
-        if liquid.holds(temperature):
-            chosen = (
-                _from_curve(dataset, curves, key, temperature, EDGE)
-                or _from_points(points, temperature)
-                or _from_curve(dataset, curves, key, temperature, REACH)
-                or _carried(points, key, temperature)
-            )
-        result.append(chosen)
-    return tuple(result)
+    return tuple(decide(dataset, solvent, key, t, liquid).value for t in temperatures)
 
 
-def _from_curve(
-    dataset: Dataset, curves: Iterable[Correlation], key: str, temperature: float, reach: float
-) -> Value | None:
-    bounds = QUANTITIES[key]
+def decide(
+    dataset: Dataset,
+    solvent: str,
+    key: str,
+    temperature: float | None,
+    liquid: LiquidRange,
+) -> Decision:
+    """Choose one value [unit of ``key``] at ``temperature`` [K], and say how it came about."""
+    if temperature is not None and not liquid.holds(temperature):
+        return _NOTHING
+    points = [
+        p
+        for p in dataset.measurements_of(solvent, key)
+        if (p.temperature is None) == (temperature is None)
+    ]
+    measured = [p for p in points if not _is_calculated(dataset, p)]
+    if temperature is None:
+        entries = [_at_rest(dataset, p) for p in measured or points]
+    else:
+        curves = rank_curves(dataset, solvent, key)
+        entries = _around(dataset, curves, measured or points, key, temperature)
+    if not entries:
+        return _NOTHING
+    return _merge(entries, key, temperature, estimated=not measured and bool(points))
+
+
+def _around(
+    dataset: Dataset,
+    curves: Sequence[Correlation],
+    points: Sequence[Measurement],
+    key: str,
+    temperature: float,
+) -> list[_Entry]:
+    """Everything that can speak for ``temperature`` [K], the best curve first."""
+    near = [p for p in points if abs(_kelvin(p) - temperature) <= REACH]
+    same = [p for p in near if abs(_kelvin(p) - temperature) <= SAME_TEMPERATURE]
+    inside = _first(_of_curve(dataset, c, key, temperature, EDGE) for c in curves)
+    brought = [_brought(dataset, p, curves, points, temperature) for p in near]
+    sloped = [e for e in brought if CARRIED not in e.marks]
+    if inside is not None:
+        return [inside, *sloped]
+    if same or sloped:
+        return [e for e in brought if e in sloped or e.origin in same]
+    beyond = _first(_of_curve(dataset, c, key, temperature, REACH) for c in curves)
+    if beyond is not None:
+        return [beyond]
+    nearest = min((abs(_kelvin(p) - temperature) for p in near), default=0.0)
+    return [
+        e
+        for p, e in zip(near, brought, strict=True)
+        if abs(_kelvin(p) - temperature) <= nearest + SAME_TEMPERATURE
+    ]
+
+
+def _at_rest(dataset: Dataset, point: Measurement) -> _Entry:
+    own, mark = stated_or_usual(
+        dataset,
+        point.source,
+        point.quantity,
+        point.uncertainty,
+        point.value,
+        point.half_width,
+    )
+    marks = [m for m in (mark, CORRECTED if point.correction is not None else None) if m]
+    return _Entry(point, point.value, own, "as published", tuple(marks))
+
+
+def _brought(
+    dataset: Dataset,
+    point: Measurement,
+    curves: Sequence[Correlation],
+    points: Sequence[Measurement],
+    temperature: float,
+) -> _Entry:
+    """A point brought to ``temperature`` [K] by the best slope that is known."""
+    entry = _at_rest(dataset, point)
+    start = _kelvin(point)
+    away = temperature - start
+    if abs(away) <= SAME_TEMPERATURE:
+        return entry
+    key = point.quantity
     for curve in curves:
-        if not within(curve, temperature, reach):
-            continue
-        (value,) = curve_values(curve, [temperature], key)
-        if not (math.isfinite(value) and bounds.low <= value <= bounds.high):
-            continue
-        uncertainty, lower_bound = curve_uncertainty(dataset, curve)
-        marks = [LOWER_BOUND] if lower_bound else []
-        if reach > EDGE:
-            beyond = max(curve.t_min - temperature, temperature - curve.t_max)
-            slope = abs(curve_slope(curve, temperature, key))
-            uncertainty = math.hypot(uncertainty, 0.2 * slope * beyond)
-            marks.append(EXTRAPOLATED)
-        return Value(key, value, uncertainty, temperature, "curve", (curve.source,), tuple(marks))
-    return None
-
-
-def _from_points(points: Sequence[Measurement], temperature: float) -> Value | None:
-    near = [p for p in points if abs(_kelvin(p) - temperature) <= SAME_TEMPERATURE]
-    return _combined(near, temperature, "measured") if near else None
-
-
-def _carried(points: Sequence[Measurement], key: str, temperature: float) -> Value | None:
-    if not points:
-        return None
-    nearest = min(abs(_kelvin(p) - temperature) for p in points)
-    if nearest > REACH:
-        return None
-    near = [p for p in points if abs(_kelvin(p) - temperature) <= nearest + SAME_TEMPERATURE]
-    value = _combined(near, temperature, "measured")
+        if within(curve, start) and within(curve, temperature):
+            here, there = curve_values(curve, [start, temperature], key)
+            # A curve that is off as a whole still has the right shape.
+            value = entry.value * there / here if here > 0 else entry.value + there - here
+            remark = f"brought over {away:+.1f} K by the curve of {curve.source}"
+            return _moved(entry, value, _SLOPE_SHARE * abs(value - entry.value), remark, ())
+    line = line_through(dataset, points, temperature)
+    if line is not None:
+        value = entry.value + line.slope * away
+        remark = f"brought over {away:+.1f} K by a line through the points"
+        return _moved(entry, value, line.slope_uncertainty * abs(away), remark, ())
     # The unpolar part of ε and n does not move: 1 is what vacuum keeps.
     offset = 1.0 if key in ("relative_permittivity", "refractive_index") else 0.0
-    drift = _USUAL_SLOPE[key] * (value.value - offset) * nearest
-    return Value(
+    drift = _USUAL_SLOPE[key] * abs((entry.value - offset) * away)
+    remark = f"taken unchanged over {away:+.1f} K, no slope is known"
+    return _moved(entry, entry.value, drift, remark, (CARRIED,))
+
+
+def _moved(
+    entry: _Entry, value: float, added: float, remark: str, marks: tuple[str, ...]
+) -> _Entry:
+    uncertainty = math.hypot(entry.uncertainty, added)
+    return _Entry(entry.origin, value, uncertainty, remark, (*entry.marks, *marks))
+
+
+def line_through(
+    dataset: Dataset, points: Sequence[Measurement], temperature: float
+) -> thermal.LineFit | None:
+    """A straight line through points whose temperatures reach around ``temperature`` [K]."""
+    timed = [p for p in points if p.temperature is not None]
+    at = [_kelvin(p) for p in timed]
+    if not at or max(at) - min(at) < SHORTEST_SPAN:
+        return None
+    if not min(at) - EDGE <= temperature <= max(at) + EDGE:
+        return None
+    own = [_at_rest(dataset, p).uncertainty for p in timed]
+    return thermal.fit_line(at, [p.value for p in timed], own)
+
+
+def _of_curve(
+    dataset: Dataset, curve: Correlation, key: str, temperature: float, reach: float
+) -> _Entry | None:
+    if not within(curve, temperature, reach):
+        return None
+    bounds = QUANTITIES[key]
+    (value,) = curve_values(curve, [temperature], key)
+    if not (math.isfinite(value) and bounds.low <= value <= bounds.high):
+        return None
+    uncertainty, mark = curve_uncertainty(dataset, curve, value)
+    marks = [mark] if mark else []
+    remark = "the curve, inside its range"
+    if not within(curve, temperature):
+        beyond = max(curve.t_min - temperature, temperature - curve.t_max)
+        slope = abs(curve_slope(curve, temperature, key))
+        uncertainty = math.hypot(uncertainty, 2 * _SLOPE_SHARE * slope * beyond)
+        marks.append(EXTRAPOLATED)
+        remark = f"the curve, {beyond:.1f} K outside its range"
+    return _Entry(curve, value, uncertainty, remark, tuple(marks))
+
+
+def _merge(
+    entries: Sequence[_Entry], key: str, temperature: float | None, *, estimated: bool
+) -> Decision:
+    """Set outliers aside, then the mean with weights 1/u² and its Birge ratio."""
+    kept = _without_outliers(entries)
+    # Values exactly zero (a moment that symmetry forbids) carry no weight problem of their own.
+    spreads = [max(e.uncertainty, 1e-12 * max(abs(e.value), 1e-300)) for e in kept]
+    mean, own, birge = weighted_mean([e.value for e in kept], spreads)
+    # Published tables copy each other: agreeing with others makes no value better than the best.
+    own = max(own, min(spreads))
+    total = sum(1 / u**2 for u in spreads)
+    weights = {id(e): 1 / u**2 / total for e, u in zip(kept, spreads, strict=True)}
+    leading = max(kept, key=lambda e: weights[id(e)])
+    basis = "curve" if isinstance(leading.origin, Correlation) else "measured"
+    marks = dict.fromkeys(m for e in kept for m in e.marks if weights[id(e)] >= _SAYS_SOMETHING)
+    value = Value(
         key,
-        value.value,
-        math.hypot(value.uncertainty, drift),
+        mean,
+        own,
         temperature,
-        "measured",
-        value.sources,
-        (*value.marks, CARRIED),
+        "estimated" if estimated else basis,
+        tuple(dict.fromkeys(e.origin.source for e in kept)),
+        tuple(marks),
+    )
+    trail = tuple(_candidate(e, weights.get(id(e))) for e in entries)
+    return Decision(value, trail, birge)
+
+
+def _without_outliers(entries: Sequence[_Entry]) -> list[_Entry]:
+    """Entries within ``_OUTLIER`` times their own and the common spread of the median."""
+    if len(entries) < 3:
+        return list(entries)
+    middle = median(e.value for e in entries)
+    common = 1.4826 * median(abs(e.value - middle) for e in entries)
+    kept = [
+        e for e in entries if abs(e.value - middle) <= _OUTLIER * math.hypot(common, e.uncertainty)
+    ]
+    return kept or list(entries)
+
+
+def _candidate(entry: _Entry, weight: float | None) -> Candidate:
+    origin = entry.origin
+    if isinstance(origin, Correlation):
+        file, printed = "correlations.csv", f"curve {origin.form}"
+    else:
+        file, printed = "measurements.csv", f"{origin.printed} {origin.printed_unit}".strip()
+    aside = "" if weight is not None else "; set aside, too far from the others"
+    return Candidate(
+        origin.source,
+        file,
+        origin.line,
+        printed,
+        entry.value,
+        entry.uncertainty,
+        weight or 0.0,
+        entry.remark + aside,
     )
 
 
-def _combined(points: Sequence[Measurement], temperature: float | None, basis: str) -> Value:
-    """Median of the points; its uncertainty from their scatter, at least that of the best."""
-    values = [p.value for p in points]
-    middle = median(values)
-    own = min(point_uncertainty(p) for p in points)
-    if len(points) > 1:
-        # 1.4826 MAD estimates σ of a normal spread; the median of n has √(π/2)/√n of it.
-        mad = median(abs(v - middle) for v in values)
-        own = max(own, 1.4826 * mad * math.sqrt(math.pi / 2 / len(points)))
-    marks = []
-    if all(p.uncertainty is None for p in points):
-        marks.append(LOWER_BOUND)
-    if any(p.correction is not None for p in points):
-        marks.append(CORRECTED)
-    sources = tuple(dict.fromkeys(p.source for p in points))
-    return Value(points[0].quantity, middle, own, temperature, basis, sources, tuple(marks))
+def _first(entries: Iterable[_Entry | None]) -> _Entry | None:
+    return next((e for e in entries if e is not None), None)
 
 
 def _is_calculated(dataset: Dataset, point: Measurement) -> bool:
@@ -259,11 +442,5 @@ def _is_calculated(dataset: Dataset, point: Measurement) -> bool:
     return source is not None and source.kind == _CALCULATED
 
 
-def _drop(marks: Iterable[str]) -> tuple[str, ...]:
-    return tuple(m for m in marks if m != LOWER_BOUND)
-
-
 def _kelvin(point: Measurement) -> float:
     return math.nan if point.temperature is None else point.temperature
-
-
