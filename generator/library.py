@@ -28,15 +28,15 @@ _LARGE = "Identifiers/chemical identifiers pubchem large.tsv"
 _REFERENCE = Path(__file__).parent / "reference"
 _CAS = re.compile(r"(\d{2,7})-?(\d\d)-?(\d)")
 # Registry codes, catalogue numbers, formulae with brackets: found in synonym lists, of no use.
-_NOT_A_NAME = re.compile(r"\d{4}|\d-\d\d-\d|^[A-Z]{2,}[- ]?\d|[;{}\[\]=~_@#]|, |-$|inchi|^ghl|^unii", re.I)
+_NOT_A_NAME = re.compile(
+    r"\d{4}|\d-\d\d-\d|^[A-Z]{2,}[- ]?\d|[;{}\[\]=~_@#]|, |-$|inchi|^ghl|^unii", re.IGNORECASE
+)
 _SYNONYMS = 4
 _LONGEST_SYNONYM = 45
-# More tables of Python objects than this are faster made once than searched one by one.
-_FEW = 8
 TABLES = ("solvents", "measurements", "correlations", "sources")
 
 
-class UnknownSubstance(LookupError):
+class UnknownSubstanceError(LookupError):
     """No substance of the open tables answers to this name or number."""
 
 
@@ -146,17 +146,14 @@ def _identity(cas: str) -> _Identity | None:
 
 
 def _from_large(cas: str) -> _Identity | None:
-    # A single number is searched in the bytes; the index pays from a handful of numbers on.
-    _from_large_calls.append(cas)
     data = _large_bytes()
-    if len(_from_large_calls) > _FEW:
+    # Searching the bytes for one number takes a tenth of the time of the index; once somebody
+    # has asked for many and the index is there, it is used.
+    if _large_index.cache_info().currsize:
         position = _large_index().get(cas, -1)
     else:
         position = _column_position(data, cas.encode(), 1)
     return _parsed(_line_around(data, position)) if position >= 0 else None
-
-
-_from_large_calls: list[str] = []
 
 
 def _column_position(data: bytes, wanted: bytes, column: int) -> int:
@@ -200,11 +197,11 @@ def cas_for_inchikey(inchikey: str) -> str | None:
 
 @lru_cache(maxsize=4096)
 def entry(cas: str) -> Entry:
-    """Everything known about who this CAS number is. Raises ``UnknownSubstance``."""
+    """Everything known about who this CAS number is. Raises ``UnknownSubstanceError``."""
     own = _own_table("names.csv").get(cas)
     identity = _identity(cas)
     if identity is None:
-        raise UnknownSubstance(f"the reference library has no structure for CAS number {cas}")
+        raise UnknownSubstanceError(f"the reference library has no structure for CAS number {cas}")
     name = own["name"] if own else _published_name(cas) or identity.names[1]
     customary = own["synonyms"].split("; ") if own and own["synonyms"] else []
     return Entry(
@@ -249,6 +246,8 @@ def find(text: str) -> tuple[Entry, ...]:
     if cas is not None:
         return (entry(cas),) if _identity(cas) else ()
     wanted = " ".join(text.split()).casefold()
+    if not wanted:
+        return ()
     for search in (_customary, _in_handbooks, _in_identities):
         entries = tuple(entry(number) for number in search(wanted) if _identity(number))
         if entries:
@@ -282,7 +281,8 @@ def _in_identities(wanted: str) -> list[str]:
     hits = re.finditer(rb"\t" + needle + rb"(?=[\t\n])", data)
     lines = dict.fromkeys(_line_around(_large_bytes(), hit.start()) for hit in hits)
     known += [identity for line in lines if (identity := _parsed(line))]
-    main, others = {}, {}
+    main: dict[str, None] = {}
+    others: dict[str, None] = {}
     for identity in known:
         names = [name.casefold() for name in identity.names]
         if wanted in names[:2]:
@@ -297,6 +297,7 @@ def _in_identities(wanted: str) -> list[str]:
 
 def with_permittivity() -> tuple[str, ...]:
     """CAS numbers of all substances with a published permittivity and a known structure."""
+    _large_index()
     racemates = {row["listed_as"]: cas for cas, row in _own_table("names.csv").items()}
     listed = (racemates.get(cas, cas) for cas in _table(tablerows.PERMITTIVITY)[1])
     return tuple(cas for cas in dict.fromkeys(listed) if _identity(cas))

@@ -20,6 +20,7 @@ from generator.published import (
     split_superscript,
     temperature_c,
 )
+from generator.units import AVOGADRO, BOLTZMANN
 
 Record = Mapping[str, str]
 Row = dict[str, str]
@@ -46,6 +47,9 @@ PERRY_VAPOUR = "Vapor Pressure/Table 2-8 Vapor Pressure of Inorganic and Organic
 VDI_VAPOUR = "Vapor Pressure/VDI PPDS Boiling temperatures at different pressures.tsv"
 POLING_ANTOINE = "Vapor Pressure/Antoine Collection Poling.tsv"
 POLING_WAGNER = "Vapor Pressure/Wagner Collection Poling.tsv"
+CRITICAL_IUPAC = "Critical Properties/IUPACOrganicCriticalProps.tsv"
+CRITICAL_CRC = "Critical Properties/CRCCriticalOrganics.tsv"
+CRITICAL_YAWS = "Critical Properties/Yaws Collection.tsv"
 CONDUCTIVITY = "Electrolytes/Lange Pure Species Conductivity.tsv"
 IEC_FLASH = "Safety/IS IEC 60079-20-1 2010.tsv"
 NFPA_FLASH = "Safety/NFPA 497 2008.tsv"
@@ -79,6 +83,10 @@ _FLASH = (
     (WIKIDATA, "wikidata"),
 )
 _CURVE_DIGITS = 7
+# Standard deviation of a one-point Rackett density from the published curves of 174 liquids at
+# 40 K from the point, as a share of the density.
+_RACKETT_SHARE = 0.005
+_RACKETT_POWER = 2 / 7
 # Kelvin a density may lie below the melting point and still be one of the liquid.
 _SUPERCOOLED = Decimal(2)
 
@@ -101,10 +109,12 @@ def correlation_rows(records: Records, molar_mass: float) -> list[Row]:
     """Every published curve of one substance, at most two a quantity.
 
     ``molar_mass`` [g/mol] turns the molar densities of Perry's handbook into mass densities.
+    Where no density curve is published, one is worked out from the published point.
     """
+    densities = list(_density_curves(records, molar_mass))
     return [
         *_permittivity_curve(records),
-        *_density_curves(records, molar_mass),
+        *(densities or _worked_out_density_curve(records, molar_mass)),
         *_first(2, _viscosity_curves(records)),
         *_first(2, _vapour_pressure_curves(records)),
     ]
@@ -161,9 +171,7 @@ def _permittivity(records: Records) -> Iterator[Row]:
     record = _full(records, PERMITTIVITY, "T", "Permittivity")
     if record:
         value = Printed(record["Permittivity"], "1")
-        yield _point(
-            "relative_permittivity", value, "crc-permittivity", temperature_c(record["T"])
-        )
+        yield _point("relative_permittivity", value, "crc-permittivity", temperature_c(record["T"]))
 
 
 def _permittivity_curve(records: Records) -> Iterator[Row]:
@@ -273,14 +281,46 @@ def _density_curves(records: Records, molar_mass: float) -> Iterator[Row]:
         )  # fmt: skip
 
 
+def _worked_out_density_curve(records: Records, molar_mass: float) -> Iterator[Row]:
+    """The Rackett equation through the published density, with the critical constants.
+
+    ρ = A / Z^(1 + (1 − T/Tc)^(2/7)) with A = pc M/(R Tc); Z makes it pass through the point
+    (Rackett, J. Chem. Eng. Data 15, 514, 1970; Spencer and Danner, ibid. 17, 236, 1972).
+    """
+    critical = next(
+        (
+            record
+            for table in (CRITICAL_IUPAC, CRITICAL_CRC, CRITICAL_YAWS)
+            if (record := _full(records, table, "Tc", "Pc"))
+        ),
+        None,
+    )
+    point = next(_density(records), None)
+    melting, boiling = (
+        _cell(records, ORGANIC, c) or _cell(records, COMMON_CHEMISTRY, c) for c in ("Tm", "Tb")
+    )
+    if not (critical and point and melting and boiling):
+        return
+    t_critical = float(critical["Tc"])
+    first = float(critical["Pc"]) * molar_mass / 1000 / (AVOGADRO * BOLTZMANN * t_critical)
+    density = float(point["value"]) * 1000
+    reduced = (float(point["temperature_c"]) + float(ZERO_CELSIUS)) / t_critical
+    if reduced >= 1:
+        return
+    z = (first / density) ** (1 / (1 + (1 - reduced) ** _RACKETT_POWER))
+    row = _curve(
+        "density", "rackett", "kg/m3", (first, z, critical["Tc"], _RACKETT_POWER),
+        (range_c(melting), range_c(boiling)), "rackett-one-point",
+    )  # fmt: skip
+    yield {**row, "uncertainty": significant(_RACKETT_SHARE * density, 2)}
+
+
 def _viscosity_curves(records: Records) -> Iterator[Row]:
     record = _full(records, PERRY_VISCOSITY, "C1", "C2", "C3", "C4", "C5", "Tmin", "Tmax")
     if record:
         coefficients = tuple(repr(float(record[f"C{i}"])) for i in range(1, 6))
         ends = range_c(record["Tmin"]), range_c(record["Tmax"])
-        yield _curve(
-            "viscosity", "extended_antoine", "Pa s", coefficients, ends, "perry-viscosity"
-        )
+        yield _curve("viscosity", "extended_antoine", "Pa s", coefficients, ends, "perry-viscosity")
     record = _full(records, VDI_VISCOSITY, "A", "B", "C", "D", "E")
     melting = _cell(records, VDI_VAPOUR, "Tm")
     boiling = _cell(records, ORGANIC, "Tb") or _cell(records, INORGANIC, "Tb")
