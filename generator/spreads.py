@@ -1,0 +1,147 @@
+"""How far apart the two sides of a cross-check usually lie: learnt from the data themselves.
+
+The robust spread (median, 1.4826 MAD) of each check over the handbook at hand, never below what
+was learnt once from the open liquids and is shipped in ``reference/spreads.csv``. A handbook with
+few substances leans on the shipped numbers, a large one on its own.
+"""
+
+from __future__ import annotations
+
+import csv
+import math
+from collections import defaultdict
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from functools import lru_cache
+from pathlib import Path
+
+import numpy as np
+
+from generator.expectations import CHECKS, Outcome
+
+_TABLE = Path(__file__).parent / "reference" / "spreads.csv"
+# A residual counts as a clash beyond this many spreads. Residuals of real liquids have longer
+# tails than a normal distribution, for which 4 would already be one in 16,000.
+LIMIT = 4.0
+# The shipped spread weighs as much as this many comparisons of the handbook's own.
+PRIOR_COUNT = 60
+# A group with fewer comparisons than this has no spread of its own.
+FEWEST = 12
+ALL = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Spread:
+    """Median and robust spread of a check's residuals, over how many."""
+
+    median: float
+    spread: float
+    count: int
+
+
+@dataclass(frozen=True, slots=True)
+class Threshold:
+    """One check as the review page shows it.
+
+    ``spread`` and ``limit`` are shares of one for checks by ratio, else in ``unit``.
+    """
+
+    check: str
+    title: str
+    group: str
+    unit: str
+    relative: bool
+    median: float
+    spread: float
+    limit: float
+    count: int
+
+
+def robust(residuals: Iterable[float]) -> Spread:
+    """Median and 1.4826 × median absolute deviation [as residuals]."""
+    values = np.array([r for r in residuals if math.isfinite(r)])
+    if not values.size:
+        return Spread(0.0, 0.0, 0)
+    middle = float(np.median(values))
+    return Spread(middle, float(1.4826 * np.median(np.abs(values - middle))), values.size)
+
+
+@lru_cache(maxsize=1)
+def shipped() -> Mapping[tuple[str, str], Spread]:
+    """What the open liquids taught, by check and group; the group "" stands for all."""
+    with _TABLE.open(encoding="utf-8", newline="") as file:
+        return {
+            (row["check"], row["group"]): Spread(
+                float(row["median"]), float(row["spread"]), int(row["count"])
+            )
+            for row in csv.DictReader(file)
+        }
+
+
+@dataclass(frozen=True)
+class Spreads:
+    """The spreads in force for one handbook."""
+
+    table: Mapping[tuple[str, str], Spread]
+
+    def of(self, check: str, group: str) -> Spread:
+        """Spread of a group, or of the whole check where the group has too few comparisons."""
+        found = self.table.get((check, group)) or self.table.get((check, ALL))
+        return found or Spread(0.0, math.inf, 0)
+
+    def deviation(self, outcome: Outcome) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
+        """Residual in spreads; NaN where there is nothing to compare."""
+        usual = self.of(outcome.check, outcome.group)
+        scale = math.hypot(usual.spread * outcome.weight, outcome.own)
+        centre = usual.median * (outcome.weight if CHECKS[outcome.check].relative else 1.0)
+        return np.asarray((outcome.residual - centre) / scale)
+
+
+def learn(outcomes: Iterable[Outcome]) -> dict[tuple[str, str], Spread]:
+    """Spread of every check and of every group that is large enough, from outcomes alone."""
+    residuals: dict[tuple[str, str], list[float]] = defaultdict(list)
+    for outcome in outcomes:
+        residual = float(outcome.residual) / outcome.weight
+        residuals[outcome.check, outcome.group].append(residual)
+        residuals[outcome.check, ALL].append(residual)
+    return {
+        key: robust(values)
+        for key, values in sorted(residuals.items())
+        if len(values) >= FEWEST or key[1] == ALL
+    }
+
+
+def spreads_for(outcomes: Iterable[Outcome]) -> Spreads:
+    """The handbook's own spreads joined with the shipped ones."""
+    own, floor = learn(outcomes), shipped()
+    table = {}
+    for key in sorted({*own, *floor}):
+        mine, base = own.get(key), floor.get(key) or floor.get((key[0], ALL))
+        table[key] = base if mine is None else mine if base is None else _joined(mine, base)
+    return Spreads({key: value for key, value in table.items() if value is not None})
+
+
+def _joined(mine: Spread, base: Spread) -> Spread:
+    share = mine.count / (mine.count + PRIOR_COUNT)
+    pooled = math.sqrt(share * mine.spread**2 + (1 - share) * base.spread**2)
+    middle = share * mine.median + (1 - share) * base.median
+    return Spread(middle, max(pooled, base.spread), mine.count)
+
+
+def thresholds(spreads: Spreads) -> tuple[Threshold, ...]:
+    """Every limit in force, in order of check and group."""
+    return tuple(
+        Threshold(
+            check,
+            CHECKS[check].title,
+            group,
+            CHECKS[check].unit,
+            CHECKS[check].relative,
+            usual.median,
+            usual.spread,
+            LIMIT * usual.spread,
+            usual.count,
+        )
+        for (check, group), usual in spreads.table.items()
+        if check in CHECKS
+    )
