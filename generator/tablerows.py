@@ -87,6 +87,9 @@ _CURVE_DIGITS = 7
 # 40 K from the point, as a share of the density.
 _RACKETT_SHARE = 0.005
 _RACKETT_POWER = 2 / 7
+_USUAL_TEMPERATURES = (10, *range(15, 31))  # °C
+# Liquids share a table with minerals, whose densities carry no temperature.
+_LOWEST_DENSITY, _HIGHEST_DENSITY = Decimal("0.3"), Decimal(4)
 # Kelvin a density may lie below the melting point and still be one of the liquid.
 _SUPERCOOLED = Decimal(2)
 
@@ -154,14 +157,16 @@ def _curve(
     ends: tuple[str, str],
     source: str,
 ) -> Row:
+    # One published range has its ends the wrong way round.
+    low, high = sorted(ends, key=float)
     texts = (c if isinstance(c, str) else significant(c, _CURVE_DIGITS) for c in coefficients)
     return {
         "quantity": quantity,
         "form": form,
         "unit": unit,
         "coefficients": " ".join(texts),
-        "t_min_c": ends[0],
-        "t_max_c": ends[1],
+        "t_min_c": low,
+        "t_max_c": high,
         "uncertainty": "",
         "source": source,
     }
@@ -211,19 +216,14 @@ def _density(records: Records) -> Iterator[Row]:
         if record is None:
             continue
         number = plain(Decimal(record["rho"]) / 1000)
-        melting = _cell(records, table, "Tm")
-        for digits, at in split_superscript(number):
-            liquid = not melting or ZERO_CELSIUS + at >= Decimal(melting) - _SUPERCOOLED
-            if liquid and _plausible_density(digits, at, table):
-                yield _point("density", Printed(digits, "g/cm3"), source, str(at))
-                return
-            break
-
-
-def _plausible_density(digits: str, celsius: int, table: str) -> bool:
-    # Inorganic liquids share their table with minerals whose densities carry no temperature.
-    usual = celsius in (0, 15, 20, 25, 30) if table == INORGANIC else celsius <= 99
-    return usual and Decimal("0.3") < Decimal(digits) < 4
+        digits, at = next(split_superscript(number), ("", 0))
+        # With six digits the last two can only be the temperature; with fewer, trust usual ones.
+        certain = len(number.partition(".")[2]) == 6 or at in _USUAL_TEMPERATURES
+        melting = Decimal(_cell(records, table, "Tm") or 0)
+        liquid = ZERO_CELSIUS + at >= melting - _SUPERCOOLED
+        if digits and certain and liquid and _LOWEST_DENSITY < Decimal(digits) < _HIGHEST_DENSITY:
+            yield _point("density", Printed(digits, "g/cm3"), source, str(at))
+            return
 
 
 def _dipole_moment(records: Records) -> Iterator[Row]:
@@ -305,7 +305,7 @@ def _worked_out_density_curve(records: Records, molar_mass: float) -> Iterator[R
     first = float(critical["Pc"]) * molar_mass / 1000 / (AVOGADRO * BOLTZMANN * t_critical)
     density = float(point["value"]) * 1000
     reduced = (float(point["temperature_c"]) + float(ZERO_CELSIUS)) / t_critical
-    if reduced >= 1:
+    if reduced >= 1 or float(melting) >= float(boiling):
         return
     z = (first / density) ** (1 / (1 + (1 - reduced) ** _RACKETT_POWER))
     row = _curve(

@@ -258,6 +258,30 @@ def test_a_density_curve_is_worked_out_only_where_none_is_published() -> None:
     assert 1.2e-3 < np.log(ratio) / 20 < 1.5e-3
 
 
+def test_decoded_densities_agree_with_published_curves() -> None:
+    """The temperature read out of the digits is right where a published curve can tell."""
+    deviations = []
+    for cas in library.with_permittivity():
+        rows = library.rows(library.entry(cas), "x")
+        points = [r for r in rows["measurements"] if r["quantity"] == "density"]
+        curves = [
+            r for r in rows["correlations"] if r["source"] in ("perry-density", "vdi-density")
+        ]
+        for point in points:
+            at = float(point["temperature_c"])
+            inside = [c for c in curves if float(c["t_min_c"]) <= at <= float(c["t_max_c"])]
+            deviations += [_at(c, at, "g/cm3") / float(point["value"]) - 1 for c in inside]
+    assert len(deviations) > 300
+    assert np.mean(np.abs(deviations) < 0.01) > 0.96  # the rest are faults of the tables
+    assert abs(np.median(deviations)) < 0.001
+
+
+def test_a_range_printed_backwards_is_turned_round() -> None:
+    # oxirane: the packaged table has 293 K as the lower and 243 K as the upper end
+    curve = _curve("oxirane", "relative_permittivity", "crc-permittivity")
+    assert (curve["t_min_c"], curve["t_max_c"]) == ("-30", "20")
+
+
 def test_worked_out_slopes_agree_with_published_curves() -> None:
     """Where both exist: what the citation of the worked-out curves says about their slope."""
     deviations = []
