@@ -87,7 +87,7 @@ _CURVE_DIGITS = 7
 # 40 K from the point, as a share of the density.
 _RACKETT_SHARE = 0.005
 _RACKETT_POWER = 2 / 7
-_USUAL_TEMPERATURES = (10, *range(15, 31))  # °C
+_USUAL_TEMPERATURES = (10, *range(14, 31))  # °C
 # Liquids share a table with minerals, whose densities carry no temperature.
 _LOWEST_DENSITY, _HIGHEST_DENSITY = Decimal("0.3"), Decimal(4)
 # Kelvin a density may lie below the melting point and still be one of the liquid.
