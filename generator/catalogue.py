@@ -1,0 +1,225 @@
+"""The handbook as a whole: who is whose isomer, which finding is whose, what is where."""
+
+from __future__ import annotations
+
+import re
+from collections import defaultdict
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Protocol, TypeVar
+
+from markupsafe import Markup
+
+from generator.dataset import Container, Correction, Correlation, Handling, Measurement
+from generator.errors import Problem
+from generator.metrics import Handbook
+
+
+@dataclass(frozen=True, slots=True)
+class Links:
+    """Addresses inside the site, relative to a page that stands ``root`` away from the top."""
+
+    root: str
+
+    def solvent(self, slug: str) -> str:
+        """The datasheet of a substance."""
+        return f"{self.root}solvents/{slug}.html"
+
+    def method(self, quantity: str) -> str:
+        """A quantity on the methods page."""
+        return f"{self.root}methods.html#{anchor(quantity)}"
+
+    def form(self, form: str) -> str:
+        """A form of curve on the methods page."""
+        return f"{self.root}methods.html#form-{anchor(form)}"
+
+    def source(self, source: str) -> str:
+        """A source on the page of sources."""
+        return f"{self.root}sources.html#{anchor(source)}"
+
+    def family(self, family: str) -> str:
+        """A family in the list of all substances."""
+        return f"{self.root}index.html#family-{anchor(family)}"
+
+    def isomers(self, members: Sequence[str]) -> str:
+        """A set of isomers side by side; without one, the list by formula."""
+        place = f"isomers-{members[0]}" if members else "same-formula"
+        return f"{self.root}tables/isomers.html#{place}"
+
+
+def anchor(key: str) -> str:
+    """A key as it may stand behind ``#``."""
+    return re.sub(r"[^a-z0-9]+", "-", key.lower()).strip("-")
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """A problem with its place in the review list and the substance whose row it concerns."""
+
+    problem: Problem
+    anchor: str
+    slug: str
+
+
+@dataclass(frozen=True, slots=True)
+class Rows:
+    """The rows of the tables that concern one substance, as the laboratory typed them."""
+
+    measurements: tuple[Measurement, ...] = ()
+    correlations: tuple[Correlation, ...] = ()
+    corrections: tuple[Correction, ...] = ()
+    stock: tuple[Container, ...] = ()
+    handling: tuple[Handling, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Catalogue:
+    """Look-ups over all substances, made once for all pages."""
+
+    handbook: Handbook
+    findings: tuple[Finding, ...]
+    in_order: tuple[str, ...]
+    families: Mapping[str, tuple[str, ...]]
+    family_labels: Mapping[str, str]
+    formulas: Mapping[str, tuple[str, ...]]
+    isomer_sets: tuple[tuple[str, ...], ...]
+    rows: Mapping[str, Rows]
+    _by_slug: Mapping[str, tuple[Finding, ...]]
+
+    def findings_of(self, slug: str) -> tuple[Finding, ...]:
+        """What the checks have to say about one substance."""
+        return self._by_slug.get(slug, ())
+
+    def isomers_of(self, slug: str) -> tuple[str, ...]:
+        """The other substances with the same formula."""
+        formula = self.handbook.molecules[slug].formula
+        return tuple(other for other in self.formulas[formula] if other != slug)
+
+    def set_of(self, slug: str) -> tuple[str, ...]:
+        """Its set of positional and stereoisomers, itself included; empty where it has none."""
+        return next((members for members in self.isomer_sets if slug in members), ())
+
+    def nearest(self, slug: str, others: Sequence[str], count: int) -> tuple[str, ...]:
+        """Those of ``others`` whose permittivity comes nearest, nearest first."""
+        own = self._kirkwood(slug)
+
+        def distance(other: str) -> tuple[float, str]:
+            theirs = self._kirkwood(other)
+            known = own is not None and theirs is not None
+            return (abs(theirs - own) if known else 1.0, self._name(other))  # type: ignore[operator]
+
+        ranked = sorted((s for s in others if s != slug), key=distance)
+        return tuple(ranked[:count])
+
+    def picture(self, figures: Mapping[str, str], slug: str, kind: str) -> Markup:
+        """One of the small pictures of a substance, empty where there is none."""
+        return Markup(figures.get(f"{slug}:{kind}", ""))
+
+    def _kirkwood(self, slug: str) -> float | None:
+        value = self.handbook.at(slug, "kirkwood_function")
+        return None if value is None else value.value
+
+    def _name(self, slug: str) -> str:
+        return self.handbook.dataset.solvents[slug].name.casefold()
+
+
+def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
+    """The look-ups for a computed handbook and its findings."""
+    solvents = handbook.dataset.solvents
+    in_order = sorted(solvents, key=lambda slug: (sorting_name(solvents[slug].name), slug))
+    families: dict[str, list[str]] = defaultdict(list)
+    formulas: dict[str, list[str]] = defaultdict(list)
+    positions: dict[str, list[str]] = defaultdict(list)
+    labels: dict[str, str] = {}
+    for slug in in_order:
+        molecule = handbook.molecules[slug]
+        families[molecule.family].append(slug)
+        formulas[molecule.formula].append(slug)
+        positions[molecule.position_key].append(slug)
+        labels[molecule.family] = molecule.family_label
+    owners = _owners(handbook)
+    placed = tuple(
+        Finding(problem, f"finding-{i}", _owner(problem, owners, solvents))
+        for i, problem in enumerate(findings, start=1)
+    )
+    by_slug: dict[str, list[Finding]] = defaultdict(list)
+    for finding in placed:
+        by_slug[finding.slug].append(finding)
+    return Catalogue(
+        handbook=handbook,
+        findings=placed,
+        in_order=tuple(in_order),
+        families={key: tuple(families[key]) for key in sorted(families, key=labels.__getitem__)},
+        family_labels=labels,
+        formulas={key: tuple(members) for key, members in formulas.items()},
+        isomer_sets=tuple(tuple(members) for members in positions.values() if len(members) > 1),
+        rows=_rows(handbook),
+        _by_slug={slug: tuple(found) for slug, found in by_slug.items()},
+    )
+
+
+_PREFIXES = re.compile(
+    r"^(?:(?:cis|trans|tert|sec|alpha|beta|gamma|delta|DL|[nompNOSEZRSDLαβγδε]|\d+'?|[(),'±+])+-)+"
+)
+
+
+def sorting_name(name: str) -> str:
+    """A chemical name without the locants and prefixes that a dictionary passes over."""
+    bare = _PREFIXES.sub("", name)
+    return (bare or name).casefold()
+
+
+def _rows(handbook: Handbook) -> dict[str, Rows]:
+    dataset = handbook.dataset
+    return {
+        slug: Rows(*parts)
+        for slug, *parts in zip(
+            dataset.solvents,
+            _shared_out(dataset.solvents, dataset.measurements),
+            _shared_out(dataset.solvents, dataset.correlations),
+            _shared_out(dataset.solvents, dataset.corrections),
+            _shared_out(dataset.solvents, dataset.stock),
+            _shared_out(dataset.solvents, dataset.handling),
+            strict=True,
+        )
+    }
+
+
+class _HasSolvent(Protocol):
+    @property
+    def solvent(self) -> str: ...
+
+
+_Row = TypeVar("_Row", bound=_HasSolvent)
+
+
+def _shared_out(slugs: Iterable[str], rows: Iterable[_Row]) -> list[tuple[_Row, ...]]:
+    """The rows of one table, dealt out to the substances in their order."""
+    shares: dict[str, list[_Row]] = {slug: [] for slug in slugs}
+    for row in rows:
+        if row.solvent in shares:
+            shares[row.solvent].append(row)
+    return [tuple(share) for share in shares.values()]
+
+
+def _owners(handbook: Handbook) -> dict[tuple[str, int], str]:
+    """Which substance a row of a table belongs to."""
+    dataset = handbook.dataset
+    owners = {("solvents.csv", s.line): slug for slug, s in dataset.solvents.items()}
+    tables = {
+        "measurements.csv": dataset.measurements,
+        "correlations.csv": dataset.correlations,
+        "corrections.csv": dataset.corrections,
+        "stock.csv": dataset.stock,
+        "handling.csv": dataset.handling,
+    }
+    for file, rows in tables.items():
+        owners.update({(file, row.line): row.solvent for row in rows})
+    return owners
+
+
+def _owner(
+    problem: Problem, owners: Mapping[tuple[str, int], str], solvents: Mapping[str, object]
+) -> str:
+    slug = owners.get((problem.file, problem.line), "")
+    return slug if slug in solvents else ""

@@ -1,0 +1,295 @@
+"""The comparison tables: all substances in one table each, and isomers side by side."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
+
+from markupsafe import Markup
+
+from generator.catalogue import Catalogue, Links, anchor
+from generator.contexts import Link, Number
+from generator.datasheet import POLAR, TREND, trend_line
+from generator.listings import Cell, Column, Group, IsomerRow, IsomerSet, Table, TableRow
+from generator.quantities import QUANTITIES
+from generator.structures import drawing
+from generator.wording import (
+    aligned,
+    celsius,
+    celsius_label,
+    formula_markup,
+    marks_of,
+    number,
+    range_label,
+    symbol_markup,
+    unit_label,
+)
+
+ROOT = "../"  # the tables stand one folder down
+TITLES = {
+    "reference": "At the reference temperature",
+    "permittivity": "Permittivity by temperature",
+    "temperature-coefficients": "Temperature coefficients",
+    "association": "Association",
+    "isomers": "Isomers side by side",
+}
+AT_REFERENCE = (
+    "relative_permittivity", "kirkwood_function", "lippert_mataga_polarizability",
+    "dipole_moment", "refractive_index", "density", "molar_volume", "molar_polarization",
+    "molar_refraction", "viscosity", "vapour_pressure", "bjerrum_length",
+    "born_solvation_energy", "melting_point", "boiling_point", "flash_point",
+)  # fmt: skip
+SIDE_BY_SIDE = (
+    "relative_permittivity", "kirkwood_function", "lippert_mataga_polarizability",
+    "dipole_moment", "onsager_dipole_moment", "kirkwood_correlation_factor",
+    "temperature_coefficient", "expected_temperature_coefficient", "refractive_index", "density",
+    "molar_volume", "molar_refraction", "viscosity", "vapour_pressure", "melting_point",
+    "boiling_point", "flash_point",
+)  # fmt: skip
+ASSOCIATION = (
+    "dipole_moment", "debye_dipole_moment", "onsager_dipole_moment",
+    "kirkwood_correlation_factor", "relative_permittivity", "orientation_polarization",
+)  # fmt: skip
+
+
+def tables(catalogue: Catalogue, figures: Mapping[str, str]) -> tuple[Table, ...]:
+    """Every table with a row a substance."""
+    return (
+        _at_reference(catalogue, figures),
+        _permittivity(catalogue, figures),
+        _coefficients(catalogue, figures),
+        _association(catalogue, figures),
+    )
+
+
+def _quantity_column(key: str, links: Links) -> Column:
+    quantity = QUANTITIES[key]
+    return Column(
+        anchor(key), quantity.name, symbol_markup(quantity.symbol), unit_label(quantity.unit),
+        "number", links.method(key),
+    )  # fmt: skip
+
+
+def _text_column(key: str, title: str) -> Column:
+    return Column(key, title, Markup(""), "", "text", "")
+
+
+def _picture_column(key: str, title: str) -> Column:
+    return Column(key, title, Markup(""), "", "picture", "")
+
+
+def _table(
+    catalogue: Catalogue,
+    key: str,
+    lead: str,
+    columns: Sequence[Column],
+    content: Sequence[tuple[str, Sequence[Cell]]],
+) -> Table:
+    """Rows in the order of names, decimal points of each number column in line."""
+    lined_up = [list(cells) for _, cells in content]
+    for position, column in enumerate(columns):
+        if column.kind == "number":
+            numbers = aligned([cells[position].number for cells in lined_up])
+            for cells, made in zip(lined_up, numbers, strict=True):
+                cells[position] = replace(cells[position], number=made)
+    solvents = catalogue.handbook.dataset.solvents
+    molecules = catalogue.handbook.molecules
+    links = Links(ROOT)
+    rows = tuple(
+        TableRow(
+            Link(solvents[slug].name, links.solvent(slug)),
+            solvents[slug].cas,
+            molecules[slug].family_label,
+            tuple(cells),
+        )
+        for (slug, _), cells in zip(content, lined_up, strict=True)
+    )
+    present = marks_of(*(cell.number for row in rows for cell in row.cells))
+    return Table(key, TITLES[key], lead, tuple(columns), rows, present)
+
+
+def _temperature_cell(catalogue: Catalogue, slug: str) -> Cell:
+    return Cell(celsius(catalogue.handbook.own_reference(slug)))
+
+
+def _at_reference(catalogue: Catalogue, figures: Mapping[str, str]) -> Table:
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    columns = [
+        _text_column("polar", "Polar?"),
+        _picture_column("scale", "Polarity scale"),
+        _text_column("at", "At / °C"),
+        *(_quantity_column(key, links) for key in AT_REFERENCE),
+        _text_column("trend", "ε on warming"),
+    ]
+    content = []
+    for slug in catalogue.in_order:
+        cells = [
+            Cell(POLAR[handbook.is_polar(slug)]),
+            Cell(picture=catalogue.picture(figures, slug, "scale")),
+            _temperature_cell(catalogue, slug),
+            *(Cell(number=number(handbook.at(slug, key), {})) for key in AT_REFERENCE),
+            Cell(handbook.trend(slug).sign),
+        ]
+        content.append((slug, cells))
+    lead = (
+        f"Every substance at {celsius_label(handbook.reference)}, or at the nearest temperature "
+        "at which it is liquid and known; the column “At” says which."
+    )
+    return _table(catalogue, "reference", lead, columns, content)
+
+
+def _permittivity(catalogue: Catalogue, figures: Mapping[str, str]) -> Table:
+    handbook = catalogue.handbook
+    columns = [
+        _picture_column("ribbon", "ε(T)"),
+        *(
+            Column(
+                f"t{i}", f"{celsius(t)} °C", Markup(""), "", "number", "",
+                abs(t - handbook.reference) < 1e-6,
+            )
+            for i, t in enumerate(handbook.temperatures)
+        ),
+        _text_column("liquid", "Liquid range"),
+    ]  # fmt: skip
+    content = []
+    for slug in catalogue.in_order:
+        liquid = handbook.liquid_range(slug)
+        cells = [
+            Cell(picture=catalogue.picture(figures, slug, "ribbon")),
+            *(Cell(number=number(v, {})) for v in handbook.series(slug, "relative_permittivity")),
+            Cell(range_label(liquid.low, liquid.high)),
+        ]
+        content.append((slug, cells))
+    lead = (
+        "Relative permittivity ε of the liquid at the laboratory's temperatures. An empty place "
+        "means not liquid there, or no value near enough to stand for it."
+    )
+    return _table(catalogue, "permittivity", lead, columns, content)
+
+
+def _coefficients(catalogue: Catalogue, figures: Mapping[str, str]) -> Table:
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    left_over = Column(
+        "left-over", "Left over: change of association", Markup(""), "K⁻¹", "number", ""
+    )
+    columns = [
+        _text_column("sign", "On warming"),
+        _picture_column("ribbon", "ε(T)"),
+        _text_column("at", "At / °C"),
+        _quantity_column("temperature_coefficient", links),
+        _text_column("basis", "From"),
+        _quantity_column("expected_temperature_coefficient", links),
+        left_over,
+    ]
+    content = []
+    for slug in catalogue.in_order:
+        trend = trend_line(handbook, slug, {})
+        cells = [
+            Cell(TREND[handbook.trend(slug).sign]),
+            Cell(picture=catalogue.picture(figures, slug, "ribbon")),
+            _temperature_cell(catalogue, slug),
+            Cell(number=trend.observed),
+            Cell(trend.observed.basis if trend.observed else ""),
+            Cell(number=trend.expected),
+            Cell(number=trend.left_over),
+        ]
+        content.append((slug, cells))
+    lead = (
+        "Slope of the permittivity by temperature, observed, and as thermal expansion and thermal "
+        "agitation alone would make it. What is left over is change of association. The sign "
+        "holds with 95 % confidence; “no trend” means that the slope is smaller than its "
+        "uncertainty."
+    )
+    return _table(catalogue, "temperature-coefficients", lead, columns, content)
+
+
+def _association(catalogue: Catalogue, figures: Mapping[str, str]) -> Table:
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    columns = [
+        _text_column("bonding", "Hydrogen bonds"),
+        _text_column("at", "At / °C"),
+        *(_quantity_column(key, links) for key in ASSOCIATION),
+    ]
+    content = []
+    for slug in catalogue.in_order:
+        cells = [
+            Cell("donor" if handbook.molecules[slug].is_associated else "no donor"),
+            _temperature_cell(catalogue, slug),
+            *(Cell(number=_value(catalogue, slug, key)) for key in ASSOCIATION),
+        ]
+        content.append((slug, cells))
+    lead = (
+        "How the dipoles of neighbours stand to each other. A Kirkwood factor g well above 1: "
+        "parallel, as in chains of alcohols; near 1: independent; below 1: opposed, as in pairs. "
+        "No factor is given where the gas-phase moment is zero within its uncertainty."
+    )
+    return _table(catalogue, "association", lead, columns, content)
+
+
+def _value(catalogue: Catalogue, slug: str, key: str) -> Number | None:
+    return number(catalogue.handbook.at(slug, key), {})
+
+
+def isomer_sets(catalogue: Catalogue) -> tuple[IsomerSet, ...]:
+    """Every set of isomers with its quantities in rows and its members in columns."""
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    sets = []
+    for members in catalogue.isomer_sets:
+        molecules = [handbook.molecules[slug] for slug in members]
+        rows = [
+            IsomerRow("Is it polar?", Markup(""), "", "", _words(catalogue, members)),
+            IsomerRow(
+                "On warming", symbol_markup("ε"), "", "",
+                tuple(Cell(TREND[handbook.trend(slug).sign]) for slug in members),
+            ),
+        ]  # fmt: skip
+        for key in SIDE_BY_SIDE:
+            quantity = QUANTITIES[key]
+            cells = tuple(Cell(number=_value(catalogue, slug, key)) for slug in members)
+            if any(cell.number for cell in cells):
+                rows.append(
+                    IsomerRow(
+                        quantity.name,
+                        symbol_markup(quantity.symbol),
+                        unit_label(quantity.unit),
+                        links.method(key),
+                        cells,
+                    )
+                )
+        sets.append(
+            IsomerSet(
+                f"isomers-{members[0]}",
+                formula_markup(molecules[0].formula),
+                molecules[0].formula,
+                tuple(
+                    Link(handbook.dataset.solvents[slug].name, links.solvent(slug))
+                    for slug in members
+                ),
+                tuple(Markup(drawing(m.smiles, 130, 90)) for m in molecules),
+                tuple(rows),
+            )
+        )
+    return tuple(sorted(sets, key=lambda s: (s.formula_plain, s.anchor)))
+
+
+def _words(catalogue: Catalogue, members: Sequence[str]) -> tuple[Cell, ...]:
+    return tuple(Cell(POLAR[catalogue.handbook.is_polar(slug)]) for slug in members)
+
+
+def same_formula(catalogue: Catalogue) -> tuple[Group, ...]:
+    """Substances that share a formula, whatever their functions."""
+    solvents = catalogue.handbook.dataset.solvents
+    links = Links(ROOT)
+    return tuple(
+        Group(
+            anchor(formula),
+            formula_markup(formula),
+            tuple(Link(solvents[slug].name, links.solvent(slug)) for slug in members),
+        )
+        for formula, members in sorted(catalogue.formulas.items())
+        if len(members) > 1
+    )

@@ -1,0 +1,361 @@
+"""One substance → everything its datasheet says, in the order in which it says it."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+
+from markupsafe import Markup
+
+from generator.catalogue import Catalogue, Finding, Links, Rows
+from generator.contexts import (
+    ContainerRow,
+    Datasheet,
+    Foot,
+    HandlingLines,
+    Link,
+    MetricGroup,
+    MetricRow,
+    Notice,
+    QuantityRow,
+    Related,
+    TrendLine,
+)
+from generator.metrics import POLAR_ABOVE, UNPOLAR_BELOW, Handbook
+from generator.provenance import KEY_VALUES, citations, curves, measured, numbering, trail
+from generator.quantities import QUANTITIES
+from generator.reconcile import Value
+from generator.structures import Molecule, drawing
+from generator.wording import (
+    celsius,
+    celsius_label,
+    formula_markup,
+    marks_of,
+    number,
+    range_label,
+    split_value,
+    symbol_markup,
+    unit_label,
+)
+
+ROOT = "../"  # datasheets stand one folder down
+
+# Metrics by temperature, grouped as they are read. What is not named here comes last of its own.
+GROUPS: tuple[tuple[str, tuple[str, ...]], ...] = (
+    (
+        "The liquid",
+        (
+            "relative_permittivity",
+            "density",
+            "refractive_index",
+            "viscosity",
+            "vapour_pressure",
+            "conductivity",
+        ),
+    ),
+    (
+        "Polarity functions",
+        ("kirkwood_function", "clausius_mossotti_function", "lippert_mataga_polarizability"),
+    ),
+    (
+        "By mole",
+        (
+            "molar_volume",
+            "molar_polarization",
+            "molar_refraction",
+            "orientation_polarization",
+        ),
+    ),
+    (
+        "Dipole moment and association",
+        ("debye_dipole_moment", "onsager_dipole_moment", "kirkwood_correlation_factor"),
+    ),
+    (
+        "By temperature",
+        ("temperature_coefficient", "expected_temperature_coefficient", "thermal_expansivity"),
+    ),
+    (
+        "Ions and charge",
+        (
+            "bjerrum_length",
+            "born_solvation_energy",
+            "debye_length_01",
+            "debye_length_001",
+            "charge_relaxation_time",
+        ),
+    ),
+)
+SWAPS_SHOWN = 12
+
+
+POLAR = {
+    "polar": "Polar",
+    "unpolar": "Unpolar",
+    "borderline": "Borderline",
+    "not known": "Not known",
+}
+TREND = {
+    "falls": "Falls on warming",
+    "rises": "Rises on warming",
+    "no trend": "No trend",
+    "not known": "Not known",
+}
+
+
+def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot: Foot) -> Datasheet:
+    """The datasheet of one substance. ``figures`` holds SVG text by ``slug``, ``slug:scale``
+    (polarity scale) and ``slug:ribbon`` (temperature ribbon); a missing one is left out."""
+    handbook = catalogue.handbook
+    solvent = handbook.dataset.solvents[slug]
+    molecule = handbook.molecules[slug]
+    links = Links(ROOT)
+    rows = catalogue.rows[slug]
+    way = trail(handbook, slug)
+    numbered = numbering(handbook, slug, rows)
+    own = handbook.own_reference(slug)
+    liquid = handbook.liquid_range(slug)
+    key_values = _key_values(handbook, slug, links, numbered)
+    metrics = _metrics(handbook, slug, links, numbered)
+    siblings = catalogue.families[molecule.family]
+    isomers = catalogue.isomers_of(slug)
+    swaps = catalogue.nearest(slug, [s for s in siblings if s not in isomers], SWAPS_SHOWN)
+    return Datasheet(
+        slug=slug,
+        name=solvent.name,
+        cas=solvent.cas,
+        family=molecule.family_label,
+        family_link=Link(molecule.family_label, links.family(molecule.family)),
+        formula=formula_markup(molecule.formula),
+        formula_plain=molecule.formula,
+        molar_mass=split_value(molecule.molar_mass, None, QUANTITIES["molar_mass"].decimals)[0],
+        synonyms=solvent.synonyms,
+        smiles=molecule.smiles,
+        inchi=molecule.inchi,
+        inchikey=molecule.inchikey,
+        note=solvent.note,
+        structure=Markup(drawing(molecule.smiles, 260, 180)),
+        structure_text=f"Structure of {solvent.name}, SMILES {molecule.smiles}",
+        reference=celsius_label(handbook.reference),
+        own_reference=celsius_label(own),
+        permittivity=number(handbook.at(slug, "relative_permittivity"), numbered),
+        polar_key=handbook.is_polar(slug).replace(" ", "-"),
+        polar=POLAR[handbook.is_polar(slug)],
+        polar_reason=_polar_reason(handbook, slug, molecule),
+        trend=trend_line(handbook, slug, numbered),
+        notices=_notices(catalogue, slug, links),
+        scale=catalogue.picture(figures, slug, "scale"),
+        ribbon=catalogue.picture(figures, slug, "ribbon"),
+        figure=Markup(figures.get(slug, "")),
+        figure_text=_figure_text(handbook, slug, solvent.name),
+        liquid_range=range_label(liquid.low, liquid.high),
+        key_values=key_values,
+        value_marks=marks_of(*(row.number for row in key_values)),
+        temperatures=tuple(celsius(t) for t in handbook.temperatures),
+        reference_column=_position(handbook.temperatures, handbook.reference),
+        metrics=metrics,
+        metric_marks=marks_of(*(c for g in metrics for r in g.rows for c in r.cells)),
+        measured=measured(rows, numbered, way),
+        curves=curves(rows, links, numbered, way),
+        handling=_handling(rows, numbered),
+        containers=_containers(rows),
+        isomers=tuple(_related(catalogue, other, figures) for other in isomers),
+        isomers_href=links.isomers(catalogue.set_of(slug)),
+        swaps=tuple(_related(catalogue, other, figures) for other in swaps),
+        swaps_total=len(siblings) - 1,
+        citations=citations(handbook, numbered),
+        foot=foot,
+    )
+
+
+def _position(temperatures: Sequence[float], reference: float) -> int:
+    """Column of the reference temperature, −1 where it is none of the columns."""
+    return next((i for i, t in enumerate(temperatures) if abs(t - reference) < 1e-6), -1)
+
+
+def _polar_reason(handbook: Handbook, slug: str, molecule: Molecule) -> str:
+    parts = []
+    orientation = handbook.at(slug, "lippert_mataga_polarizability")
+    if orientation is not None:
+        digits = split_value(orientation.value, orientation.uncertainty, 3)[0]
+        parts.append(f"Δf = {digits} (polar from {POLAR_ABOVE:g}, unpolar to {UNPOLAR_BELOW:g})")
+    dipole = handbook.at(slug, "dipole_moment")
+    if molecule.zero_dipole:
+        parts.append("no dipole moment by symmetry")
+    elif dipole is not None:
+        parts.append(f"dipole moment {split_value(dipole.value, dipole.uncertainty, 2)[0]} D")
+    return ", ".join(parts) if parts else "neither permittivity nor dipole moment on record"
+
+
+def trend_line(handbook: Handbook, slug: str, numbered: Mapping[str, Link]) -> TrendLine:
+    """The observed and the expected slope, and what is left between them."""
+    trend = handbook.trend(slug)
+    expected = handbook.expected_trend(slug)
+    quantity = QUANTITIES["temperature_coefficient"]
+    observed = None
+    if math.isfinite(trend.value):
+        observed = Value(
+            quantity.key, trend.value, trend.uncertainty, trend.temperature,
+            trend.basis, trend.sources, (),
+        )  # fmt: skip
+    left_over = None
+    if observed is not None and expected is not None:
+        spread = math.hypot(observed.uncertainty, expected.uncertainty)
+        left_over = Value(
+            quantity.key, observed.value - expected.value, spread, observed.temperature,
+            "computed", (), (),
+        )  # fmt: skip
+    return TrendLine(
+        key=trend.sign.replace(" ", "-"),
+        words=TREND[trend.sign],
+        observed=number(observed, numbered),
+        expected=number(expected, numbered),
+        left_over=number(left_over, numbered, quantity=quantity),
+    )
+
+
+def _notices(catalogue: Catalogue, slug: str, links: Links) -> tuple[Notice, ...]:
+    handbook = catalogue.handbook
+    own = handbook.own_reference(slug)
+    notices = []
+    if abs(own - handbook.reference) > 1e-6:
+        notices.append(
+            Notice(
+                "note",
+                "Note",
+                f"Not liquid, or not measured, at {celsius_label(handbook.reference)}: single "
+                f"values on this page are at {celsius_label(own)} unless they say otherwise.",
+                "",
+            )
+        )
+    if handbook.at(slug, "relative_permittivity") is None:
+        notices.append(Notice("note", "Note", "No permittivity on record for the liquid.", ""))
+    notices += [
+        Notice(
+            "hazard",
+            "Peroxides",
+            f"Peroxide former, group {line.peroxide_group}, as transcribed by the laboratory.",
+            "#handling",
+        )
+        for line in catalogue.rows[slug].handling
+        if line.peroxide_group
+    ]
+    if handbook.molecules[slug].is_associated:
+        notices.append(
+            Notice(
+                "note",
+                "Associated",
+                "Hydrogen-bonded liquid: equations that let molecules turn independently "
+                "do not hold.",
+                "#metrics",
+            )
+        )
+    notices += [_check(finding, links) for finding in catalogue.findings_of(slug)]
+    return tuple(notices)
+
+
+def _check(finding: Finding, links: Links) -> Notice:
+    problem = finding.problem
+    text = f"{problem.found} (expected: {problem.expected})" if problem.expected else problem.found
+    label = "Error" if problem.severity == "error" else "Check"
+    return Notice("check", label, text, f"{links.root}review.html#{finding.anchor}")
+
+
+def _figure_text(handbook: Handbook, slug: str, name: str) -> str:
+    """What the curve shows, for those who do not see it."""
+    pairs = [
+        (t, v)
+        for t, v in zip(
+            handbook.temperatures, handbook.series(slug, "relative_permittivity"), strict=True
+        )
+        if v is not None
+    ]
+    if not pairs:
+        return f"No permittivity by temperature is known for {name}."
+    (low_t, low), (high_t, high) = pairs[0], pairs[-1]
+    first = split_value(low.value, low.uncertainty, 2)[0]
+    if len(pairs) == 1:
+        return f"Relative permittivity of {name}: {first} at {celsius_label(low_t)}."
+    last = split_value(high.value, high.uncertainty, 2)[0]
+    return (
+        f"Relative permittivity of {name} against temperature: {first} at "
+        f"{celsius_label(low_t)}, {last} at {celsius_label(high_t)}."
+    )
+
+
+def _key_values(
+    handbook: Handbook, slug: str, links: Links, numbered: Mapping[str, Link]
+) -> tuple[QuantityRow, ...]:
+    rows = []
+    for key in KEY_VALUES:
+        quantity = QUANTITIES[key]
+        rows.append(
+            QuantityRow(
+                quantity.name,
+                symbol_markup(quantity.symbol),
+                unit_label(quantity.unit),
+                links.method(key),
+                number(handbook.at(slug, key), numbered),
+            )
+        )
+    return tuple(rows)
+
+
+def _metrics(
+    handbook: Handbook, slug: str, links: Links, numbered: Mapping[str, Link]
+) -> tuple[MetricGroup, ...]:
+    placed = {key for _, keys in GROUPS for key in keys}
+    rest = tuple(q.key for q in QUANTITIES.values() if q.needs_temperature and q.key not in placed)
+    groups = []
+    for title, keys in (*GROUPS, ("Others", rest)):
+        rows = []
+        for key in keys:
+            quantity = QUANTITIES[key]
+            cells = tuple(number(v, numbered) for v in handbook.series(slug, key))
+            if any(cells):
+                rows.append(
+                    MetricRow(
+                        quantity.name,
+                        symbol_markup(quantity.symbol),
+                        unit_label(quantity.unit),
+                        links.method(key),
+                        cells,
+                    )
+                )
+        if rows:
+            groups.append(MetricGroup(title, tuple(rows)))
+    return tuple(groups)
+
+
+def _handling(rows: Rows, numbered: Mapping[str, Link]) -> tuple[HandlingLines, ...]:
+    return tuple(
+        HandlingLines(
+            line.h_statements,
+            line.storage,
+            line.peroxide_group,
+            line.sds_revision,
+            numbered.get(line.source),
+        )
+        for line in rows.handling
+    )
+
+
+def _containers(rows: Rows) -> tuple[ContainerRow, ...]:
+    return tuple(
+        ContainerRow(
+            c.container, c.grade, str(c.size), c.location,
+            str(c.received or ""), str(c.opened or ""), str(c.test_due or ""),
+        )
+        for c in rows.stock
+    )  # fmt: skip
+
+
+def _related(catalogue: Catalogue, slug: str, figures: Mapping[str, str]) -> Related:
+    handbook = catalogue.handbook
+    solvent = handbook.dataset.solvents[slug]
+    return Related(
+        Link(solvent.name, f"{slug}.html"),
+        solvent.cas,
+        number(handbook.at(slug, "relative_permittivity"), {}),
+        POLAR[handbook.is_polar(slug)],
+        catalogue.picture(figures, slug, "scale"),
+    )

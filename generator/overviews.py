@@ -1,0 +1,317 @@
+"""The pages that are about the handbook as a whole: home, review list, methods, sources, data."""
+
+from __future__ import annotations
+
+import json
+from collections import Counter
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from markupsafe import Markup
+
+from generator import thermal
+from generator.catalogue import Catalogue, Links, anchor
+from generator.comparisons import TITLES
+from generator.contexts import Foot, Link
+from generator.datasheet import POLAR
+from generator.listings import (
+    Count,
+    CurveForm,
+    DictionaryField,
+    DictionaryTable,
+    Download,
+    Group,
+    Home,
+    Method,
+    ReviewRow,
+    SourceEntry,
+)
+from generator.polarity_map import Axis, Point, polarity_map
+from generator.quantities import QUANTITIES
+from generator.wording import celsius_label, number, symbol_markup, unit_label
+
+ROOT = ""  # these pages stand at the top
+SYMMETRIC = Axis("Kirkwood function (ε−1)/(2ε+1)", 0.0, 0.5, 0.1, 1)
+
+
+def home(catalogue: Catalogue, laboratory: str, foot: Foot) -> Home:
+    """The finder with its index, the map, and what the handbook holds."""
+    handbook = catalogue.handbook
+    dataset = handbook.dataset
+    links = Links(ROOT)
+    families = tuple(
+        Group(
+            f"family-{anchor(key)}",
+            Markup.escape(catalogue.family_labels[key]),
+            tuple(Link(dataset.solvents[slug].name, links.solvent(slug)) for slug in members),
+        )
+        for key, members in catalogue.families.items()
+    )
+    return Home(
+        laboratory=laboratory,
+        reference=celsius_label(handbook.reference),
+        index_json=_index_json(catalogue),
+        total=len(dataset.solvents),
+        families=families,
+        polar_map=_map(catalogue),
+        counts=_counts(catalogue),
+        findings=_finding_counts(catalogue),
+        tables=tuple(Link(title, f"tables/{key}.html") for key, title in TITLES.items()),
+        foot=foot,
+    )
+
+
+def _index_json(catalogue: Catalogue) -> Markup:
+    """The finder's index. ``<`` is escaped so that the text may stand inside a script element."""
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    entries = []
+    for slug in catalogue.in_order:
+        solvent = handbook.dataset.solvents[slug]
+        molecule = handbook.molecules[slug]
+        permittivity = number(handbook.at(slug, "relative_permittivity"), {})
+        entries.append(
+            {
+                "n": solvent.name,
+                "c": solvent.cas,
+                "f": molecule.formula,
+                "s": list(solvent.synonyms),
+                "k": molecule.inchikey,
+                "g": f"family-{anchor(molecule.family)}",
+                "l": molecule.family_label,
+                "p": handbook.is_polar(slug),
+                "e": permittivity.value if permittivity else "",
+                "t": permittivity.temperature if permittivity else "",
+                "u": links.solvent(slug),
+            }
+        )
+    text = json.dumps(entries, ensure_ascii=False, separators=(",", ":"))
+    return Markup(text.replace("<", "\\u003c"))
+
+
+def _map(catalogue: Catalogue) -> Markup:
+    handbook = catalogue.handbook
+    links = Links(ROOT)
+    points = []
+    for slug in catalogue.in_order:
+        refraction = handbook.at(slug, "molar_refraction")
+        kirkwood = handbook.at(slug, "kirkwood_function")
+        permittivity = number(handbook.at(slug, "relative_permittivity"), {})
+        if refraction is None or kirkwood is None or permittivity is None:
+            continue
+        polar = handbook.is_polar(slug)
+        donor = handbook.molecules[slug].is_associated
+        points.append(
+            Point(
+                refraction.value,
+                kirkwood.value,
+                handbook.dataset.solvents[slug].name,
+                f"ε {permittivity.value} at {permittivity.temperature}, {POLAR[polar].lower()}",
+                links.solvent(slug),
+                "donor" if donor else "unpolar" if polar == "unpolar" else "dipolar",
+            )
+        )
+    widest = max((p.x for p in points), default=40.0)
+    top = 10.0 * (int(widest / 10.0) + 1)
+    across = Axis("Molar refraction / cm³ mol⁻¹", 0.0, top, 10.0 if top <= 100 else 50.0, 0)
+    return polarity_map(
+        points,
+        across,
+        SYMMETRIC,
+        f"Map of {len(points)} substances, molar refraction across and Kirkwood function upwards; "
+        "each point leads to its datasheet",
+    )
+
+
+def _counts(catalogue: Catalogue) -> tuple[Count, ...]:
+    handbook = catalogue.handbook
+    dataset = handbook.dataset
+    known = sum(handbook.at(slug, "relative_permittivity") is not None for slug in dataset.solvents)
+    return (
+        Count(str(len(dataset.solvents)), "substances", "tables/reference.html"),
+        Count(str(known), "with a permittivity", "tables/permittivity.html"),
+        Count(str(len(dataset.measurements)), "published values", "sources.html"),
+        Count(str(len(dataset.correlations)), "temperature curves", "methods.html#curves"),
+        Count(str(len(dataset.sources)), "sources", "sources.html"),
+    )
+
+
+def _finding_counts(catalogue: Catalogue) -> tuple[Count, ...]:
+    kinds = Counter(finding.problem.kind for finding in catalogue.findings)
+    return tuple(
+        Count(str(count), kind.replace("-", " "), "review.html")
+        for kind, count in sorted(kinds.items(), key=lambda pair: (-pair[1], pair[0]))
+    )
+
+
+def review(catalogue: Catalogue) -> tuple[ReviewRow, ...]:
+    """Every finding, with the substance it concerns where there is one."""
+    solvents = catalogue.handbook.dataset.solvents
+    links = Links(ROOT)
+    return tuple(
+        ReviewRow(
+            finding.anchor,
+            finding.problem.severity,
+            Link(solvents[finding.slug].name, links.solvent(finding.slug))
+            if finding.slug
+            else None,
+            finding.problem.place,
+            finding.problem.kind.replace("-", " "),
+            finding.problem.found,
+            finding.problem.expected,
+            finding.problem.hint,
+        )
+        for finding in catalogue.findings
+    )
+
+
+def math_markup(formula: str, *, block: bool = True) -> Markup:
+    """A LaTeX formula as MathML, which browsers draw without any script."""
+    from latex2mathml.converter import convert
+
+    if not formula:
+        return Markup("")
+    return Markup(convert(formula, display="block" if block else "inline"))
+
+
+def methods() -> tuple[tuple[Method, ...], tuple[Method, ...]]:
+    """Measured and derived quantities, each with its formula, validity and source."""
+    made = {"measured": [], "derived": []}  # type: dict[str, list[Method]]
+    for quantity in QUANTITIES.values():
+        unit = unit_label(quantity.unit)
+        made[quantity.kind].append(
+            Method(
+                anchor(quantity.key),
+                quantity.name,
+                symbol_markup(quantity.symbol),
+                unit or "1",
+                math_markup(quantity.formula),
+                quantity.definition,
+                quantity.validity,
+                quantity.source,
+                str(quantity.decimals),
+                f"{quantity.low:g} to {quantity.high:g} {unit}".strip().replace("-", "\u2212"),
+            )
+        )
+    return tuple(made["measured"]), tuple(made["derived"])
+
+
+def curve_forms(catalogue: Catalogue) -> tuple[CurveForm, ...]:
+    """The forms a temperature curve may have, and how many curves of the handbook have it."""
+    used = Counter(curve.form for curve in catalogue.handbook.dataset.correlations)
+    return tuple(
+        CurveForm(
+            f"form-{anchor(key)}",
+            key,
+            ", ".join(form.coefficients),
+            math_markup(form.formula),
+            form.source,
+            f"{used[key]} curves" if used[key] != 1 else "1 curve",
+        )
+        for key, form in thermal.FORMS.items()
+    )
+
+
+def sources(catalogue: Catalogue) -> tuple[SourceEntry, ...]:
+    """Every source with how much of the handbook comes from it."""
+    handbook = catalogue.handbook
+    values = Counter(m.source for m in handbook.dataset.measurements)
+    curves = Counter(c.source for c in handbook.dataset.correlations)
+    return tuple(
+        SourceEntry(
+            anchor(key),
+            key,
+            source.citation,
+            source.kind.replace("-", " "),
+            str(source.year or ""),
+            source.doi or "",
+            str(values[key]),
+            str(curves[key]),
+        )
+        for key, source in sorted(handbook.sources.items())
+    )
+
+
+def dictionary(package: Mapping[str, Any]) -> tuple[DictionaryTable, ...]:
+    """Tables and columns as the Tabular Data Package describes them."""
+    tables = []
+    for resource in package.get("resources", ()):
+        schema = resource.get("schema", {})
+        keys = _as_list(schema.get("primaryKey", ()))
+        foreign = {
+            field: f"{key['reference'].get('resource') or resource['name']}"
+            for key in schema.get("foreignKeys", ())
+            for field in _as_list(key["fields"])
+        }
+        tables.append(
+            DictionaryTable(
+                anchor(resource["name"]),
+                resource["name"],
+                resource.get("path", ""),
+                resource.get("title", resource["name"]),
+                resource.get("description", ""),
+                tuple(
+                    DictionaryField(
+                        field["name"],
+                        field.get("title", ""),
+                        field.get("type", "string"),
+                        field.get("description", ""),
+                        _rules(field, foreign.get(field["name"], "")),
+                        field["name"] in keys,
+                    )
+                    for field in schema.get("fields", ())
+                ),
+            )
+        )
+    return tuple(tables)
+
+
+def _as_list(value: object) -> Sequence[str]:
+    return (value,) if isinstance(value, str) else tuple(value)  # type: ignore[arg-type]
+
+
+_RULES = {
+    "required": "must be filled",
+    "unique": "must be unique",
+    "minimum": "at least {}",
+    "maximum": "at most {}",
+    "minLength": "at least {} characters",
+    "maxLength": "at most {} characters",
+    "pattern": "pattern {}",
+    "enum": "one of {}",
+}
+
+
+def _rules(field: Mapping[str, Any], refers_to: str) -> str:
+    rules = []
+    for key, value in field.get("constraints", {}).items():
+        if key in _RULES and value is not False:
+            shown = ", ".join(map(str, value)) if isinstance(value, list) else value
+            rules.append(_RULES[key].format(shown))
+    if refers_to:
+        rules.append(f"must stand in {refers_to}")
+    return "; ".join(rules)
+
+
+def downloads(package: Mapping[str, Any]) -> tuple[Download, ...]:
+    """The files a reader may take away."""
+    own = {
+        "values.csv": "Every number, measured and derived alike, a row each, with uncertainty, "
+        "unit, temperature, basis and sources",
+        "findings.csv": "The review list",
+        "handbook.json": "The whole handbook, by substance",
+    }
+    made = [Download(Link(name, f"downloads/{name}"), what) for name, what in own.items()]
+    if package:
+        made.append(
+            Download(
+                Link("datapackage.json", "downloads/data/datapackage.json"),
+                "The laboratory's tables as a Tabular Data Package: this description and the "
+                "tables below",
+            )
+        )
+    for resource in package.get("resources", ()):
+        path = resource.get("path", "")
+        what = resource.get("title", "") or resource.get("description", "")
+        made.append(Download(Link(path, f"downloads/data/{path}"), what))
+    return tuple(made)

@@ -1,0 +1,156 @@
+"""Frozen contexts → finished HTML pages. Knows nothing of the site generator that wraps them."""
+
+from __future__ import annotations
+
+import html
+import re
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import Any
+
+from jinja2 import Environment, PackageLoader, StrictUndefined, Template
+
+from generator import comparisons, overviews
+from generator.catalogue import Catalogue, catalogue
+from generator.contexts import Datasheet, Foot
+from generator.datasheet import datasheet
+from generator.errors import Problem
+from generator.metrics import Handbook, Settings
+
+
+@dataclass(frozen=True, slots=True)
+class Page:
+    """A finished page.
+
+    ``path`` is where a Markdown source of it would stand; ``html`` is the body with its H1;
+    ``toc`` lists its headings as (level, id, text). ``search_title`` and ``search_text`` are
+    plain text for the site search, empty where the page shall not be found.
+    """
+
+    path: str
+    title: str
+    html: str
+    toc: tuple[tuple[int, str, str], ...]
+    search_title: str
+    search_text: str
+    kind: str
+
+
+def render_all(
+    handbook: Handbook,
+    findings: Sequence[Problem],
+    settings: Settings,
+    figures: Mapping[str, str],
+    package: Mapping[str, Any] | None = None,
+) -> tuple[Page, ...]:
+    """Every generated page of the handbook.
+
+    ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
+    polarity scale, ``slug:ribbon`` the temperature ribbon. ``package`` is the parsed
+    ``datapackage.json``; without it the data dictionary lists no tables.
+    """
+    book = catalogue(handbook, findings)
+    foot = Foot(settings.laboratory, handbook.dataset.revision)
+    described = package or {}
+    return (
+        *_whole(book, settings, figures, described, foot),
+        *(_datasheet_page(datasheet(book, slug, figures, foot)) for slug in book.in_order),
+    )
+
+
+def _whole(
+    book: Catalogue,
+    settings: Settings,
+    figures: Mapping[str, str],
+    package: Mapping[str, Any],
+    foot: Foot,
+) -> Iterator[Page]:
+    shared: dict[str, Any] = {"page_foot": foot}
+    yield _page("index.md", "home", "Solvent handbook",
+                h=overviews.home(book, settings.laboratory, foot))  # fmt: skip
+    menu = tuple((key, title) for key, title in comparisons.TITLES.items())
+    for table in comparisons.tables(book, figures):
+        yield _page(f"tables/{table.key}.md", "table", table.title,
+                    t=table, menu_entries=menu, **shared)  # fmt: skip
+    yield _page(
+        "tables/isomers.md", "isomers", comparisons.TITLES["isomers"],
+        sets=comparisons.isomer_sets(book), groups=comparisons.same_formula(book),
+        menu_entries=menu, **shared,
+    )  # fmt: skip
+    yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
+    measured, derived = overviews.methods()
+    yield _page(
+        "methods.md", "methods", "Methods",
+        measured=measured, derived=derived, forms=overviews.curve_forms(book), **shared,
+    )  # fmt: skip
+    yield _page("sources.md", "sources", "Sources", sources=overviews.sources(book), **shared)
+    yield _page(
+        "data-dictionary.md", "dictionary", "Data dictionary",
+        tables=overviews.dictionary(package), **shared,
+    )  # fmt: skip
+    yield _page(
+        "downloads.md", "downloads", "Downloads",
+        files=overviews.downloads(package), **shared,
+    )  # fmt: skip
+
+
+def _page(path: str, kind: str, title: str, **context: Any) -> Page:
+    body = _template(kind).render(**context)
+    return Page(path, title, body, headings(body), title, _plain(body, 1200), kind)
+
+
+def _datasheet_page(sheet: Datasheet) -> Page:
+    body = _template("datasheet").render(s=sheet)
+    return Page(
+        f"solvents/{sheet.slug}.md",
+        f"{sheet.name} {sheet.cas}",
+        body,
+        headings(body),
+        f"{sheet.name} {sheet.cas}",
+        search_text(sheet),
+        "datasheet",
+    )
+
+
+def search_text(sheet: Datasheet) -> str:
+    """What the site search knows of a substance: names, numbers and formula as plain text."""
+    parts = [sheet.cas, sheet.formula_plain, *sheet.synonyms, sheet.family, sheet.inchikey]
+    if sheet.permittivity:
+        parts.append(f"relative permittivity {sheet.permittivity.sentence}")
+    parts.append(sheet.polar)
+    return " · ".join(part for part in parts if part)
+
+
+@lru_cache(maxsize=1)
+def _environment() -> Environment:
+    return Environment(
+        loader=PackageLoader("generator"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+    )
+
+
+def _template(kind: str) -> Template:
+    return _environment().get_template(f"{kind}.html.j2")
+
+
+_HEADING = re.compile(r'<h([1-3])[^>]* id="([^"]+)"[^>]*>(.*?)</h\1>', re.DOTALL)
+_TAG = re.compile(r"<[^>]+>")
+_SILENT = re.compile(r"<(script|svg|math|style)\b.*?</\1>", re.DOTALL)
+
+
+def headings(body: str) -> tuple[tuple[int, str, str], ...]:
+    """The headings of a body that carry an id, as (level, id, plain text)."""
+    return tuple(
+        (int(level), name, _plain(text, 200)) for level, name, text in _HEADING.findall(body)
+    )
+
+
+def _plain(markup: str, length: int) -> str:
+    """Running text of a piece of HTML, cut at a word after ``length`` characters."""
+    bare = _TAG.sub(" ", _SILENT.sub(" ", markup))
+    text = " ".join(html.unescape(bare).split())
+    return text if len(text) <= length else text[:length].rsplit(" ", 1)[0]

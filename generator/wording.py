@@ -1,0 +1,146 @@
+"""Numbers, units, temperatures and formulas as they are printed."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
+
+from markupsafe import Markup, escape
+
+from generator import reconcile
+from generator.contexts import Link, Mark, Number
+from generator.quantities import QUANTITIES, Quantity
+from generator.reconcile import Value
+from generator.uncertainty import format_value
+from generator.units import ZERO_CELSIUS
+
+MINUS = "\u2212"
+# The letter beside a number in a table, and the word for it where there is room for a word.
+_LETTERS = {
+    reconcile.EXTRAPOLATED: ("x", "extrapolated"),
+    reconcile.OUTSIDE_LIQUID_RANGE: ("o", "not liquid"),
+    reconcile.LOWER_BOUND: ("r", "rounding only"),
+    reconcile.USUAL: ("u", "customary"),
+    reconcile.CARRIED: ("t", "other temperature"),
+    reconcile.ASSOCIATED: ("a", "associated"),
+    reconcile.CORRECTED: ("c", "corrected"),
+}
+MARKS = tuple(
+    Mark(key, *_LETTERS.get(key, (key[0], key)), meaning)
+    for key, meaning in reconcile.MARKS.items()
+)
+_EXPONENTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_UNIT_WORDS = {"degC": "°C", "1": ""}
+
+
+def unit_label(unit: str) -> str:
+    """A table unit as it is printed: ``cm3/mol`` gives ``cm³ mol⁻¹``."""
+    if unit in _UNIT_WORDS:
+        return _UNIT_WORDS[unit]
+    above, *below = unit.split("/")
+    parts = []
+    for position, group in enumerate([above, *below]):
+        for word in group.split():
+            found = re.fullmatch(r"(\D+?)(\d*)", word)
+            if found is None:  # the bare "1" of a unit such as 1/K
+                continue
+            power = int(found[2] or 1) * (-1 if position else 1)
+            exponent = "" if power == 1 else str(power).translate(_EXPONENTS)
+            parts.append(found[1] + exponent)
+    return " ".join(parts)
+
+
+def celsius(temperature: float) -> str:
+    """A temperature [K] as digits in °C, with a real minus sign."""
+    degrees = round(temperature - ZERO_CELSIUS, 2)
+    return f"{degrees + 0.0:g}".replace("-", MINUS)
+
+
+def celsius_label(temperature: float) -> str:
+    """A temperature [K] with its unit: ``25 °C``."""
+    return f"{celsius(temperature)} °C"
+
+
+def range_label(low: float | None, high: float | None) -> str:
+    """A range of temperatures [K]; an end that is not known is said to be so."""
+    if low is None and high is None:
+        return "not known"
+    if low is None or high is None:
+        end = celsius_label(high if low is None else low)  # type: ignore[arg-type]
+        return f"up to {end}" if low is None else f"from {end}"
+    return f"{celsius(low)} to {celsius_label(high)}"
+
+
+def formula_markup(formula: str) -> Markup:
+    """A plain formula with its indices set low: ``C2H6O`` gives ``C₂H₆O``."""
+    return Markup(re.sub(r"(\d+)", r"<sub>\1</sub>", str(escape(formula))))
+
+
+def symbol_markup(symbol: str) -> Markup:
+    """A quantity's symbol with what follows an underscore set low."""
+    head, _, index = symbol.partition("_")
+    if not index:
+        return escape(symbol)
+    low, bracket, rest = index.partition(")")
+    return Markup("{}<sub>{}</sub>{}").format(head, low, bracket + rest)
+
+
+def number(
+    value: Value | None,
+    sources: Mapping[str, Link],
+    *,
+    quantity: Quantity | None = None,
+) -> Number | None:
+    """A value of the handbook as a printable number; ``None`` stays ``None``.
+
+    ``sources`` leads from the key of a source to its link, relative to the page being made.
+    """
+    if value is None or not math.isfinite(value.value):
+        return None
+    definition = quantity or QUANTITIES[value.quantity]
+    text, uncertainty = split_value(value.value, value.uncertainty, definition.decimals)
+    return Number(
+        raw=f"{value.value:.12g}",
+        value=text,
+        uncertainty=uncertainty,
+        unit=unit_label(definition.unit),
+        temperature="" if value.temperature is None else celsius_label(value.temperature),
+        basis=value.basis,
+        marks=tuple(mark for mark in MARKS if mark.key in value.marks),
+        sources=tuple(sources[key] for key in value.sources if key in sources),
+    )
+
+
+def split_value(value: float, uncertainty: float | None, decimals: int) -> tuple[str, str]:
+    """The digits of a value and of its uncertainty, each on its own ("" where there is none)."""
+    own = math.nan if uncertainty is None else uncertainty
+    text = format_value(value, own, decimals)
+    if text.startswith("("):  # (1.5 ± 0.2)×10⁻⁶: the power belongs to both
+        inside, _, power = text[1:].partition(")")
+        head, _, tail = inside.partition(" ± ")
+        return head + power, tail + power
+    head, _, tail = text.partition(" ± ")
+    return head, tail
+
+
+def aligned(numbers: Sequence[Number | None]) -> tuple[Number | None, ...]:
+    """The numbers of one column with the padding that puts their decimal points in line."""
+    places = [_places(item.value) if item else 0 for item in numbers]
+    most = max(places, default=0)
+    return tuple(
+        replace(item, pad="." * (most > 0 and own == 0) + "0" * (most - own)) if item else None
+        for item, own in zip(numbers, places, strict=True)
+    )
+
+
+def _places(text: str) -> int:
+    """Digits behind the decimal point; a power of ten stands outside the line-up."""
+    return 0 if "×" in text else len(text.partition(".")[2])
+
+
+def marks_of(*numbers: Number | None) -> tuple[Mark, ...]:
+    """The marks that occur among these numbers, each once, in the steady order."""
+    present = {mark.key for item in numbers if item for mark in item.marks}
+    return tuple(mark for mark in MARKS if mark.key in present)
