@@ -31,6 +31,8 @@ _CAS = re.compile(r"(\d{2,7})-?(\d\d)-?(\d)")
 _NOT_A_NAME = re.compile(
     r"\d{4}|\d-\d\d-\d|^[A-Z]{2,}[- ]?\d|[;{}\[\]=~_@#]|, |-$|inchi|^ghl|^unii", re.IGNORECASE
 )
+# What tells isomers apart in front of a name.
+_LOCANTS = re.compile(r"^(?:(?:\d+(?:,\d+)*|[omp]|sec|tert|cis|trans)-)+")
 _SYNONYMS = 4
 _LONGEST_SYNONYM = 45
 TABLES = ("solvents", "measurements", "correlations", "sources")
@@ -239,16 +241,18 @@ def find(text: str) -> tuple[Entry, ...]:
     """The substances a CAS number or name may mean: none, one, or several candidates.
 
     A name is compared whole and without regard to case: first with customary laboratory names,
-    then with the names printed in the handbook tables, then with the main names of the identity
-    tables, then with their synonyms. The first of these lists that knows the name decides.
+    then with the names printed in the handbook tables, then with those names without their
+    locants ("octanol" is one of four), then with the main names of the identity tables, then
+    with their synonyms. The first of these lists that knows the name decides.
     """
     cas = with_hyphens(text)
     if cas is not None:
+        cas = _racemates().get(cas, cas)
         return (entry(cas),) if _identity(cas) else ()
     wanted = " ".join(text.split()).casefold()
     if not wanted:
         return ()
-    for search in (_customary, _in_handbooks, _in_identities):
+    for search in (_customary, _in_handbooks, _without_locants, _in_identities):
         entries = tuple(entry(number) for number in search(wanted) if _identity(number))
         if entries:
             return entries
@@ -265,13 +269,26 @@ def _customary(wanted: str) -> list[str]:
     return names or synonyms
 
 
-def _in_handbooks(wanted: str) -> list[str]:
-    found: dict[str, None] = {}
+@lru_cache(maxsize=1)
+def _racemates() -> Mapping[str, str]:
+    """The number a handbook lists a racemate under → its usual number."""
+    return {row["listed_as"]: cas for cas, row in _own_table("names.csv").items()}
+
+
+def _handbook_names() -> Iterator[tuple[str, str]]:
     for table in (tablerows.PERMITTIVITY, tablerows.ORGANIC, tablerows.INORGANIC):
         for cas, line in _table(table)[1].items():
-            if line.split("\t", 2)[1].strip().casefold() == wanted:
-                found[cas] = None
-    return list(found)
+            name = line.split("\t", 2)[1].strip().casefold()
+            yield _racemates().get(cas, cas), name.removesuffix(", ()-")
+
+
+def _in_handbooks(wanted: str) -> list[str]:
+    return list(dict.fromkeys(cas for cas, name in _handbook_names() if name == wanted))
+
+
+def _without_locants(wanted: str) -> list[str]:
+    named = ((cas, name) for cas, name in _handbook_names() if name.endswith(wanted))
+    return list(dict.fromkeys(cas for cas, name in named if _LOCANTS.sub("", name) == wanted))
 
 
 def _in_identities(wanted: str) -> list[str]:
@@ -298,8 +315,7 @@ def _in_identities(wanted: str) -> list[str]:
 def with_permittivity() -> tuple[str, ...]:
     """CAS numbers of all substances with a published permittivity and a known structure."""
     _large_index()
-    racemates = {row["listed_as"]: cas for cas, row in _own_table("names.csv").items()}
-    listed = (racemates.get(cas, cas) for cas in _table(tablerows.PERMITTIVITY)[1])
+    listed = (_racemates().get(cas, cas) for cas in _table(tablerows.PERMITTIVITY)[1])
     return tuple(cas for cas in dict.fromkeys(listed) if _identity(cas))
 
 

@@ -68,6 +68,10 @@ def test_known_substances_answer_to_number_name_and_synonym(text: str, cas: str)
         ("butanol", {"71-36-3", "78-92-2", "78-83-1", "75-65-0"}),
         ("1,2-dichloroethylene", {"156-59-2", "156-60-5"}),
         ("decalin", {"493-01-6", "493-02-7"}),
+        ("cresol", {"95-48-7", "108-39-4", "106-44-5"}),
+        ("trichlorobenzene", {"87-61-6", "120-82-1", "108-70-3"}),
+        ("Nitropropane", {"108-03-2", "79-46-9"}),
+        ("octanol", {"111-87-5", "123-96-6", "589-98-0", "589-62-8"}),
         ("DMA", {"127-19-5", "121-69-7"}),
     ],
 )
@@ -302,6 +306,7 @@ def test_worked_out_slopes_agree_with_published_curves() -> None:
 def test_racemates_are_found_under_the_number_the_handbooks_use() -> None:
     (entry,) = library.find("1,2-dichloropropane")
     assert (entry.cas, entry.listed_as) == ("78-87-5", "26198-63-0")
+    assert library.find("26198-63-0") == (entry,)
     row = _value("1,2-dichloropropane", "relative_permittivity", "crc-permittivity")
     assert row["value"] == "8.37"
     assert "26198-63-0" in library.rows(entry, "x")["solvents"][0]["note"]
