@@ -242,6 +242,34 @@ def test_viswanath_curves_of_both_forms() -> None:
         assert _at(curve, celsius, "mPa s") == pytest.approx(_at(other, celsius, "mPa s"), rel=0.10)
 
 
+@pytest.mark.parametrize(
+    ("name", "celsius", "expected"),
+    [
+        # Perry's curve where there is one; else handbook values in mPa s, from memory
+        ("ethanol", 7.0, None),
+        ("methylcyclopentane", 16.0, None),
+        ("ethyl propionate", 47.0, None),
+        ("butane", -28.0, None),
+        ("propyl formate", 39.0, None),
+        ("isobutyl acetate", 25.0, 0.676),
+        ("cis-1,2-dichloroethylene", 20.0, 0.467),
+    ],
+)
+def test_reversed_signs_are_turned_back(name: str, celsius: float, expected: float | None) -> None:
+    (entry,) = library.find(name)
+    only = (tablerows.VISWANATH_3, tablerows.PERRY_VISCOSITY)
+
+    def records(table: str) -> tuple[dict[str, str], ...]:
+        found = library._records((entry.cas,), table) if table in only else iter(())
+        return tuple(dict(record) for record in found)
+
+    curves = {r["source"]: r for r in tablerows._viscosity_curves(records)}
+    if expected is None:
+        expected = _at(curves["perry-viscosity"], celsius, "mPa s")
+    found = _at(curves["viswanath-viscosity"], celsius, "mPa s")
+    assert found == pytest.approx(expected, rel=0.04)
+
+
 def test_permittivity_curves_pass_their_points() -> None:
     for name in ("water", "acetone", "methanol", "benzene", "carbon disulfide", "formamide"):
         point = _value(name, "relative_permittivity", "crc-permittivity")
