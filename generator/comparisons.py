@@ -270,6 +270,7 @@ def isomer_sets(catalogue: Catalogue) -> tuple[IsomerSet, ...]:
                     for slug in members
                 ),
                 tuple(Markup(drawing(m.smiles, 130, 90)) for m in molecules),
+                tuple(celsius_label(handbook.own_reference(slug)) for slug in members),
                 tuple(rows),
             )
         )

@@ -248,6 +248,7 @@ class Datasheet:
     temperatures: tuple[str, ...]
     reference_column: int
     metrics: tuple[MetricGroup, ...]
+    metric_columns: int
     metric_marks: tuple[Mark, ...]
     measured: tuple[SourceGroup, ...]
     curves: tuple[CurveRow, ...]

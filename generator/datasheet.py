@@ -32,6 +32,7 @@ from generator.wording import (
     formula_markup,
     marks_of,
     number,
+    prose,
     range_label,
     split_value,
     symbol_markup,
@@ -97,7 +98,7 @@ POLAR = {
 TREND = {
     "falls": "Falls on warming",
     "rises": "Rises on warming",
-    "no trend": "No trend",
+    "no trend": "No trend within its uncertainty",
     "not known": "Not known",
 }
 
@@ -115,7 +116,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
     own = handbook.own_reference(slug)
     liquid = handbook.liquid_range(slug)
     key_values = _key_values(handbook, slug, links, numbered)
-    metrics = _metrics(handbook, slug, links, numbered)
+    metrics = _metrics(handbook, slug, links)
     siblings = catalogue.families[molecule.family]
     isomers = catalogue.isomers_of(slug)
     swaps = catalogue.nearest(slug, [s for s in siblings if s not in isomers], SWAPS_SHOWN)
@@ -133,7 +134,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         inchi=molecule.inchi,
         inchikey=molecule.inchikey,
         note=solvent.note,
-        structure=Markup(drawing(molecule.smiles, 260, 180)),
+        structure=Markup(drawing(molecule.smiles, 190, 130)),
         structure_text=f"Structure of {solvent.name}, SMILES {molecule.smiles}",
         reference=celsius_label(handbook.reference),
         own_reference=celsius_label(own),
@@ -153,6 +154,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         temperatures=tuple(celsius(t) for t in handbook.temperatures),
         reference_column=_position(handbook.temperatures, handbook.reference),
         metrics=metrics,
+        metric_columns=len(handbook.temperatures) + 2,  # with name and unit
         metric_marks=marks_of(*(c for g in metrics for r in g.rows for c in r.cells)),
         measured=measured(rows, numbered, way),
         curves=curves(rows, links, numbered, way),
@@ -257,7 +259,7 @@ def _check(finding: Finding, links: Links) -> Notice:
     problem = finding.problem
     text = f"{problem.found} (expected: {problem.expected})" if problem.expected else problem.found
     label = "Error" if problem.severity == "error" else "Check"
-    return Notice("check", label, text, f"{links.root}review.html#{finding.anchor}")
+    return Notice("check", label, prose(text), f"{links.root}review.html#{finding.anchor}")
 
 
 def _figure_text(handbook: Handbook, slug: str, name: str) -> str:
@@ -300,9 +302,7 @@ def _key_values(
     return tuple(rows)
 
 
-def _metrics(
-    handbook: Handbook, slug: str, links: Links, numbered: Mapping[str, Link]
-) -> tuple[MetricGroup, ...]:
+def _metrics(handbook: Handbook, slug: str, links: Links) -> tuple[MetricGroup, ...]:
     placed = {key for _, keys in GROUPS for key in keys}
     rest = tuple(q.key for q in QUANTITIES.values() if q.needs_temperature and q.key not in placed)
     groups = []
@@ -310,7 +310,7 @@ def _metrics(
         rows = []
         for key in keys:
             quantity = QUANTITIES[key]
-            cells = tuple(number(v, numbered) for v in handbook.series(slug, key))
+            cells = tuple(number(v, {}) for v in handbook.series(slug, key))
             if any(cells):
                 rows.append(
                     MetricRow(

@@ -73,6 +73,7 @@ class IsomerSet:
     formula_plain: str
     members: tuple[Link, ...]
     structures: tuple[Markup, ...]
+    temperatures: tuple[str, ...]
     rows: tuple[IsomerRow, ...]
 
 

@@ -28,10 +28,9 @@ from generator.listings import (
 )
 from generator.polarity_map import Axis, Point, polarity_map
 from generator.quantities import QUANTITIES
-from generator.wording import celsius_label, number, symbol_markup, unit_label
+from generator.wording import celsius_label, number, prose, symbol_markup, unit_label
 
 ROOT = ""  # these pages stand at the top
-SYMMETRIC = Axis("Kirkwood function (ε−1)/(2ε+1)", 0.0, 0.5, 0.1, 1)
 
 
 def home(catalogue: Catalogue, laboratory: str, foot: Foot) -> Home:
@@ -112,12 +111,14 @@ def _map(catalogue: Catalogue) -> Markup:
             )
         )
     widest = max((p.x for p in points), default=40.0)
+    lowest = 0.05 * int(min((p.y for p in points), default=0.0) / 0.05)
+    upwards = Axis("Kirkwood function (ε−1)/(2ε+1)", lowest, 0.5, 0.05, 2)
     top = 10.0 * (int(widest / 10.0) + 1)
     across = Axis("Molar refraction / cm³ mol⁻¹", 0.0, top, 10.0 if top <= 100 else 50.0, 0)
     return polarity_map(
         points,
         across,
-        SYMMETRIC,
+        upwards,
         f"Map of {len(points)} substances, molar refraction across and Kirkwood function upwards; "
         "each point leads to its datasheet",
     )
@@ -157,9 +158,9 @@ def review(catalogue: Catalogue) -> tuple[ReviewRow, ...]:
             else None,
             finding.problem.place,
             finding.problem.kind.replace("-", " "),
-            finding.problem.found,
-            finding.problem.expected,
-            finding.problem.hint,
+            prose(finding.problem.found),
+            prose(finding.problem.expected),
+            prose(finding.problem.hint),
         )
         for finding in catalogue.findings
     )

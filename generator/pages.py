@@ -17,6 +17,7 @@ from generator.contexts import Datasheet, Foot
 from generator.datasheet import datasheet
 from generator.errors import Problem
 from generator.metrics import Handbook, Settings
+from generator.wording import cell_markup, marks_markup
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,7 +68,7 @@ def _whole(
     foot: Foot,
 ) -> Iterator[Page]:
     shared: dict[str, Any] = {"page_foot": foot}
-    yield _page("index.md", "home", "Solvent handbook",
+    yield _page("index.md", "home", "Home",
                 h=overviews.home(book, settings.laboratory, foot))  # fmt: skip
     menu = tuple((key, title) for key, title in comparisons.TITLES.items())
     for table in comparisons.tables(book, figures):
@@ -95,9 +96,23 @@ def _whole(
     )  # fmt: skip
 
 
+# How much of a page the site search knows [characters]. Of the tables only what stands above them:
+# their names and numbers belong to the datasheets.
+_FOUND = {
+    "home": 0,
+    "table": 300,
+    "isomers": 300,
+    "review": 300,
+    "methods": 20_000,
+    "sources": 20_000,
+    "dictionary": 20_000,
+    "downloads": 2_000,
+}
+
+
 def _page(path: str, kind: str, title: str, **context: Any) -> Page:
     body = _template(kind).render(**context)
-    return Page(path, title, body, headings(body), title, _plain(body, 1200), kind)
+    return Page(path, title, body, headings(body), title, _plain(body, _FOUND[kind]), kind)
 
 
 def _datasheet_page(sheet: Datasheet) -> Page:
@@ -124,20 +139,26 @@ def search_text(sheet: Datasheet) -> str:
 
 @lru_cache(maxsize=1)
 def _environment() -> Environment:
-    return Environment(
+    environment = Environment(
         loader=PackageLoader("generator"),
         autoescape=True,
         undefined=StrictUndefined,
         trim_blocks=True,
         lstrip_blocks=True,
     )
+    environment.filters["cell"] = cell_markup
+    environment.filters["marks"] = marks_markup
+    return environment
 
 
 def _template(kind: str) -> Template:
     return _environment().get_template(f"{kind}.html.j2")
 
 
-_HEADING = re.compile(r'<h([1-3])[^>]* id="([^"]+)"[^>]*>(.*?)</h\1>', re.DOTALL)
+# A heading may say in data-toc how the list of contents shall call it.
+_HEADING = re.compile(
+    r'<h([1-3])[^>]* id="([^"]+)"(?: data-toc="([^"]*)")?[^>]*>(.*?)</h\1>', re.DOTALL
+)
 _TAG = re.compile(r"<[^>]+>")
 _SILENT = re.compile(r"<(script|svg|math|style)\b.*?</\1>", re.DOTALL)
 
@@ -145,7 +166,8 @@ _SILENT = re.compile(r"<(script|svg|math|style)\b.*?</\1>", re.DOTALL)
 def headings(body: str) -> tuple[tuple[int, str, str], ...]:
     """The headings of a body that carry an id, as (level, id, plain text)."""
     return tuple(
-        (int(level), name, _plain(text, 200)) for level, name, text in _HEADING.findall(body)
+        (int(level), name, _plain(short or text, 200))
+        for level, name, short, text in _HEADING.findall(body)
     )
 
 

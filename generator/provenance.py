@@ -12,6 +12,7 @@ from generator.quantities import QUANTITIES
 from generator.reconcile import Candidate, LiquidRange, decide
 from generator.wording import (
     celsius_label,
+    printed_label,
     range_label,
     split_value,
     symbol_markup,
@@ -101,7 +102,7 @@ def _source_value(
         _, digits = split_value(row.value, row.uncertainty, quantity.decimals)
         uncertainty = f"{digits} {unit_label(quantity.unit)}".strip()
     return SourceValue(
-        printed=f"{row.printed} {unit_label(row.printed_unit)}".strip().replace("-", "\u2212"),
+        printed=printed_label(row.printed, row.printed_unit),
         uncertainty=uncertainty or "not stated",
         temperature="" if row.temperature is None else celsius_label(row.temperature),
         source=numbered.get(row.source),
@@ -117,7 +118,9 @@ def _fate(candidate: Candidate | None, note: str) -> tuple[str, str]:
     if candidate is None:
         return "on record", note
     remark = "" if candidate.remark == "as published" else candidate.remark
-    status = f"weight {candidate.weight:.0%}" if candidate.weight > 0 else "set aside"
+    percent = round(100 * candidate.weight)
+    status = f"weight {percent} %" if percent else "weight below 1 %"
+    status = status if candidate.weight > 0 else "set aside"
     return status, "; ".join(part for part in (remark, note) if part)
 
 

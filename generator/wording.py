@@ -6,6 +6,7 @@ import math
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
+from functools import lru_cache
 
 from markupsafe import Markup, escape
 
@@ -32,9 +33,10 @@ MARKS = tuple(
     for key, meaning in reconcile.MARKS.items()
 )
 _EXPONENTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
-_UNIT_WORDS = {"degC": "°C", "1": ""}
+_UNIT_WORDS = {"degC": "°C", "degF": "°F", "1": ""}
 
 
+@lru_cache(maxsize=256)
 def unit_label(unit: str) -> str:
     """A table unit as it is printed: ``cm3/mol`` gives ``cm³ mol⁻¹``."""
     if unit in _UNIT_WORDS:
@@ -52,9 +54,9 @@ def unit_label(unit: str) -> str:
     return " ".join(parts)
 
 
-def celsius(temperature: float) -> str:
+def celsius(temperature: float, decimals: int = 2) -> str:
     """A temperature [K] as digits in °C, with a real minus sign."""
-    degrees = round(temperature - ZERO_CELSIUS, 2)
+    degrees = round(temperature - ZERO_CELSIUS, decimals)
     return f"{degrees + 0.0:g}".replace("-", MINUS)
 
 
@@ -64,13 +66,33 @@ def celsius_label(temperature: float) -> str:
 
 
 def range_label(low: float | None, high: float | None) -> str:
-    """A range of temperatures [K]; an end that is not known is said to be so."""
-    if low is None and high is None:
-        return "not known"
-    if low is None or high is None:
-        end = celsius_label(high if low is None else low)  # type: ignore[arg-type]
-        return f"up to {end}" if low is None else f"from {end}"
-    return f"{celsius(low)} to {celsius_label(high)}"
+    """A range of temperatures [K] to a tenth; an end that is not known is left open."""
+    if low is None:
+        return "not known" if high is None else f"up to {celsius(high, 1)} °C"
+    if high is None:
+        return f"from {celsius(low, 1)} °C"
+    return f"{celsius(low, 1)} to {celsius(high, 1)} °C"
+
+
+_POWER = re.compile(r"e([+-]?)0*(\d+)$", re.IGNORECASE)
+
+
+def printed_label(printed: str, unit: str) -> str:
+    """A number as its source prints it, with its unit; ``8e-06`` becomes a power of ten."""
+    found = _POWER.search(printed)
+    if found:
+        power = ("-" if found[1] == "-" else "") + found[2]
+        printed = f"{printed[: found.start()]}×10{power.translate(_EXPONENTS)}"
+    return f"{printed.replace('-', MINUS)} {unit_label(unit)}".strip()
+
+
+_HYPHEN_MINUS = re.compile(r"(?<![\w-])-(?=\d)")
+_UNIT_IN_PROSE = re.compile(r"\bdeg([CF])\b")
+
+
+def prose(text: str) -> str:
+    """Text of a finding as it is printed: real minus signs, ``degC`` as ``°C``."""
+    return _UNIT_IN_PROSE.sub(r"°\1", _HYPHEN_MINUS.sub(MINUS, text))
 
 
 def formula_markup(formula: str) -> Markup:
@@ -78,12 +100,13 @@ def formula_markup(formula: str) -> Markup:
     return Markup(re.sub(r"(\d+)", r"<sub>\1</sub>", str(escape(formula))))
 
 
+@lru_cache(maxsize=256)
 def symbol_markup(symbol: str) -> Markup:
     """A quantity's symbol with what follows an underscore set low."""
     head, _, index = symbol.partition("_")
     if not index:
         return escape(symbol)
-    low, bracket, rest = index.partition(")")
+    low, bracket, rest = index.partition("(")
     return Markup("{}<sub>{}</sub>{}").format(head, low, bracket + rest)
 
 
@@ -108,8 +131,36 @@ def number(
         unit=unit_label(definition.unit),
         temperature="" if value.temperature is None else celsius_label(value.temperature),
         basis=value.basis,
-        marks=tuple(mark for mark in MARKS if mark.key in value.marks),
+        marks=_marks(value.marks),
         sources=tuple(sources[key] for key in value.sources if key in sources),
+    )
+
+
+@lru_cache(maxsize=256)
+def _marks(keys: tuple[str, ...]) -> tuple[Mark, ...]:
+    return tuple(mark for mark in MARKS if mark.key in keys)
+
+
+@lru_cache(maxsize=256)
+def marks_markup(marks: tuple[Mark, ...]) -> Markup:
+    """The letters of some marks, set high, each with its meaning on hover."""
+    letter = Markup('<sup class="mark" title="{}: {}">{}</sup>')
+    return Markup("").join(letter.format(m.label, m.meaning, m.letter) for m in marks)
+
+
+def cell_markup(number: Number | None, extra: str = "") -> Markup:
+    """A number as a table cell: its decimal point in line, marks and uncertainty beside it.
+
+    Made here and not in a template, because a datasheet has some two hundred of them.
+    """
+    if number is None:
+        return Markup(f'<td class="n none {extra}">–</td>')
+    pad = f' data-pad="{number.pad}"' if number.pad else ""
+    marks = f'<span class="m">{marks_markup(number.marks)}</span>' if number.marks else ""
+    own = f'<span class="u">±\u202f{number.uncertainty}</span>' if number.uncertainty else ""
+    return Markup(
+        f'<td class="n {extra}" data-v="{number.raw}"><span class="v"{pad}>{number.value}</span>'
+        f"{marks}{own}</td>"
     )
 
 
