@@ -82,7 +82,10 @@ def parse(smiles: str) -> Mol:
 
 
 def conformer_count(mol: Mol) -> int:
-    """How many embeddings to try: 1 for a stiff molecule, up to 30 for a flexible one."""
+    """How many embeddings to try: 1 for a stiff molecule, up to 20 for a flexible one.
+
+    Large molecules get fewer, so that the work on one stays within a fraction of a second.
+    """
     from rdkit.Chem import rdMolDescriptors
 
     rotors = int(rdMolDescriptors.CalcNumRotatableBonds(mol))
@@ -94,7 +97,9 @@ def conformer_count(mol: Mol) -> int:
         if sum(not mol.GetAtomWithIdx(i).GetIsAromatic() for i in ring) > 3
     )
     freedom = rotors + donors + floppy_rings
-    return 1 if freedom == 0 else min(30, 4 + 5 * freedom)
+    atoms = mol.GetNumAtoms() + sum(atom.GetTotalNumHs() for atom in mol.GetAtoms())
+    affordable = max(3, int(20 * (22 / atoms) ** 2))
+    return 1 if freedom == 0 else min(20, affordable, 4 + 5 * freedom)
 
 
 def shapes(smiles: str, tries: int | None = None) -> Shapes:
@@ -135,7 +140,6 @@ def _embed(mol: Mol, tries: int) -> list[int]:
 
     settings: Any = rdDistGeom.ETKDGv3()
     settings.randomSeed = SEED
-    settings.useSmallRingTorsions = True
     for random_start in (False, True):
         settings.useRandomCoords = random_start
         try:
@@ -153,10 +157,10 @@ def _relax(mol: Mol) -> tuple[str, Array]:
 
     if rdForceFieldHelpers.MMFFHasAllMoleculeParams(mol):
         name = "MMFF94"
-        results = rdForceFieldHelpers.MMFFOptimizeMoleculeConfs(mol, maxIters=2000)
+        results = rdForceFieldHelpers.MMFFOptimizeMoleculeConfs(mol, maxIters=1000)
     elif rdForceFieldHelpers.UFFHasAllMoleculeParams(mol):
         name = "UFF"
-        results = rdForceFieldHelpers.UFFOptimizeMoleculeConfs(mol, maxIters=2000)
+        results = rdForceFieldHelpers.UFFOptimizeMoleculeConfs(mol, maxIters=1000)
     else:
         return "none", np.zeros(mol.GetNumConformers())
     # 1 kcal = 4.184 kJ (thermochemical calorie, exact)

@@ -5,12 +5,13 @@ rdkit is imported inside the functions, so that importing this module costs noth
 
 from __future__ import annotations
 
-import re
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 from generator.conformers import dipole_vanishes, parse
+from generator.dipoles import DipoleEstimate, estimate_dipole
+from generator.drawings import drawing
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -20,9 +21,11 @@ if TYPE_CHECKING:
 __all__ = [
     "ATOMIC_WEIGHTS",
     "FAMILIES",
+    "DipoleEstimate",
     "Molecule",
     "additive_refraction",
     "drawing",
+    "estimate_dipole",
     "isomer_groups",
     "molecule",
     "same_structure",
@@ -326,57 +329,3 @@ def _functions(mol: Mol) -> str:
     elif mol.GetRingInfo().NumRings():
         parts.append(Chem.MolToSmiles(mol, isomericSmiles=False))
     return " ".join(sorted(parts))
-
-
-def drawing(smiles: str, width: int = 220, height: int = 160, dark: bool = False) -> str:
-    """Structure drawing as an SVG element of `width` × `height` pixels.
-
-    The background is transparent and strokes follow the text colour of the page
-    (`currentColor`), so one drawing serves light and dark pages and print; `dark` is accepted
-    for callers that ask for one and changes nothing. There are no ids and no XML header; the
-    element carries role="img" and waits for the caller's title. Equal structures give equal
-    text, byte for byte.
-    """
-    from rdkit.Chem import rdDepictor
-    from rdkit.Chem.Draw import rdMolDraw2D
-
-    mol = parse(smiles)
-    rdDepictor.SetPreferCoordGen(False)
-    rdDepictor.Compute2DCoords(mol, canonOrient=True)
-    rdDepictor.StraightenDepiction(mol)
-    canvas = rdMolDraw2D.MolDraw2DSVG(width, height)
-    options: Any = canvas.drawOptions()
-    options.clearBackground = False
-    options.useBWAtomPalette()
-    options.bondLineWidth = 1.6
-    options.scaleBondWidth = False
-    options.fixedBondLength = 30
-    options.fixedFontSize = 13
-    options.padding = 0.06
-    options.explicitMethyl = mol.GetNumHeavyAtoms() <= 3
-    rdMolDraw2D.PrepareAndDrawMolecule(canvas, mol)
-    canvas.FinishDrawing()
-    return _clean_svg(canvas.GetDrawingText(), width, height)
-
-
-def _clean_svg(text: str, width: int, height: int) -> str:
-    """Keep the shapes of a drawing, as short as possible, and colour them by the page."""
-    body = text[text.index("<!-- END OF HEADER -->") + len("<!-- END OF HEADER -->") :]
-    body = body[: body.rindex("</svg>")]
-    body = re.sub(r" class='[^']*'", "", body)
-    body = re.sub(
-        r"style='fill:none;[^']*stroke:#[0-9A-Fa-f]{6};stroke-width:([0-9.]+)px;[^']*?"
-        r"(stroke-dasharray:[^;']+)?[^']*'",
-        lambda found: (
-            f'fill="none" stroke="currentColor" stroke-width="{found[1]}"'
-            + (f' style="{found[2]}"' if found[2] else "")
-        ),
-        body,
-    )
-    body = re.sub(r"#[0-9A-Fa-f]{6}", "currentColor", body)
-    body = body.replace(" />", "/>").replace("'", '"')
-    lines = [line.strip() for line in body.splitlines() if line.strip()]
-    return (
-        f'<svg xmlns="http://www.w3.org/2000/svg" width="{width}" height="{height}" '
-        f'viewBox="0 0 {width} {height}" role="img">' + "\n".join(lines) + "</svg>"
-    )
