@@ -18,6 +18,7 @@ from generator.wording import (
     celsius,
     celsius_label,
     formula_markup,
+    labelled,
     marks_of,
     number,
     range_label,
@@ -269,7 +270,13 @@ def isomer_sets(catalogue: Catalogue) -> tuple[IsomerSet, ...]:
                     Link(handbook.dataset.solvents[slug].name, links.solvent(slug))
                     for slug in members
                 ),
-                tuple(Markup(drawing(m.smiles, 130, 90)) for m in molecules),
+                tuple(
+                    labelled(
+                        drawing(handbook.molecules[slug].smiles, 130, 90),
+                        f"Structure of {handbook.dataset.solvents[slug].name}",
+                    )
+                    for slug in members
+                ),
                 tuple(celsius_label(handbook.own_reference(slug)) for slug in members),
                 tuple(rows),
             )

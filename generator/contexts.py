@@ -229,7 +229,6 @@ class Datasheet:
     inchikey: str
     note: str
     structure: Markup
-    structure_text: str
     reference: str
     own_reference: str
     permittivity: Number | None

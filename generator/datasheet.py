@@ -30,6 +30,7 @@ from generator.wording import (
     celsius,
     celsius_label,
     formula_markup,
+    labelled,
     marks_of,
     number,
     prose,
@@ -105,7 +106,8 @@ TREND = {
 
 def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot: Foot) -> Datasheet:
     """The datasheet of one substance. ``figures`` holds SVG text by ``slug``, ``slug:scale``
-    (polarity scale) and ``slug:ribbon`` (temperature ribbon); a missing one is left out."""
+    (polarity scale), ``slug:ribbon`` (temperature ribbon) and ``slug:structure`` (a drawing to take
+    instead of the plain one); a missing one is left out."""
     handbook = catalogue.handbook
     solvent = handbook.dataset.solvents[slug]
     molecule = handbook.molecules[slug]
@@ -134,8 +136,10 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         inchi=molecule.inchi,
         inchikey=molecule.inchikey,
         note=solvent.note,
-        structure=Markup(drawing(molecule.smiles, 190, 130)),
-        structure_text=f"Structure of {solvent.name}, SMILES {molecule.smiles}",
+        structure=labelled(
+            figures.get(f"{slug}:structure") or drawing(molecule.smiles, 190, 130),
+            f"Structure of {solvent.name}, SMILES {molecule.smiles}",
+        ),
         reference=celsius_label(handbook.reference),
         own_reference=celsius_label(own),
         permittivity=number(handbook.at(slug, "relative_permittivity"), numbered),

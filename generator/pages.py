@@ -48,7 +48,8 @@ def render_all(
     """Every generated page of the handbook.
 
     ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
-    polarity scale, ``slug:ribbon`` the temperature ribbon. ``package`` is the parsed
+    polarity scale, ``slug:ribbon`` the temperature ribbon, ``slug:structure``
+    a drawing to take instead of the plain one. ``package`` is the parsed
     ``datapackage.json``; without it the data dictionary lists no tables.
     """
     book = catalogue(handbook, findings)

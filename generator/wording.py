@@ -110,6 +110,11 @@ def symbol_markup(symbol: str) -> Markup:
     return Markup("{}<sub>{}</sub>{}").format(head, low, bracket + rest)
 
 
+def labelled(svg: str, text: str) -> Markup:
+    """A drawing that says what it shows to those who do not see it."""
+    return Markup(svg.replace('role="img"', f'role="img" aria-label="{escape(text)}"', 1))
+
+
 def number(
     value: Value | None,
     sources: Mapping[str, Link],

@@ -249,6 +249,12 @@ def test_every_page_carries_caution_and_revision(
         assert "Uncontrolled when printed." in page.html, page.path
 
 
+def test_hand_written_pages_get_the_same_caution() -> None:
+    theme = (ROOT / "site_src" / "theme" / "main.html").read_text(encoding="utf-8")
+    assert CAUTION in theme
+    assert "Uncontrolled when printed." in theme
+
+
 def test_figure_is_shown_with_words_for_those_who_do_not_see_it(by_path: dict[str, Page]) -> None:
     water = by_path["solvents/water.md"].html
     assert "curve of water" in water
@@ -313,7 +319,7 @@ def test_a_substance_without_data_still_has_a_sheet(handbook: Handbook) -> None:
 # What the datasheet template may see. A change here is a change of the template's contract.
 DATASHEET_KEYS = [
     "slug", "name", "cas", "family", "family_link", "formula", "formula_plain", "molar_mass",
-    "synonyms", "smiles", "inchi", "inchikey", "note", "structure", "structure_text", "reference",
+    "synonyms", "smiles", "inchi", "inchikey", "note", "structure", "reference",
     "own_reference", "permittivity", "polar_key", "polar", "polar_reason", "trend", "notices",
     "scale", "ribbon", "figure", "figure_text", "liquid_range", "key_values", "value_marks",
     "temperatures", "reference_column", "metrics", "metric_columns", "metric_marks", "measured",

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+import re
+from pathlib import Path
 
 import pytest
 
@@ -109,6 +111,12 @@ def test_every_mark_has_a_letter_of_its_own() -> None:
     assert {mark.key for mark in MARKS} == set(MEANINGS)
     assert len({mark.letter for mark in MARKS}) == len(MARKS)
     assert all(mark.label != mark.key for mark in MARKS if "-" in mark.key)
+
+
+def test_every_mark_is_explained_to_the_reader() -> None:
+    page = Path(__file__).resolve().parents[2] / "site_src" / "pages" / "how-to-read.md"
+    rows = re.findall(r"^\| (\w) \| ([\w ]+) \|", page.read_text(encoding="utf-8"), re.MULTILINE)
+    assert {(m.letter, m.label) for m in MARKS} == set(rows)
 
 
 def test_marks_of_keeps_a_steady_order() -> None:
