@@ -1,8 +1,9 @@
 """Which cell is to blame: the single change that lets every cross-check of a substance pass.
 
-Each outcome costs the more, the further it lies from what is usual (a long-tailed cost, so that
-one failed model cannot outvote the rest). For each cell the tables' value is replaced by many
-others; the cell whose best replacement saves most is the one most likely wrong. A cell that
+Each outcome costs the more, the further it lies from what is usual (a long-tailed cost), and what
+one check can add is capped by how far that check is to be trusted, so that a rule of thumb that
+does not hold for an odd molecule accuses nobody. For each cell the typed value is replaced by
+many others; the cell whose best replacement saves most is the one most likely wrong. A cell that
 stands in several failed checks is found this way, and one that other checks confirm is cleared,
 since changing it would break them.
 """
@@ -10,13 +11,15 @@ since changing it would break them.
 from __future__ import annotations
 
 import math
+from collections import defaultdict
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 
-from generator.expectations import Outcome, outcomes
-from generator.facts import SMILES, TEMPERATURE, Array, Curve, Facts, Point, View
+from generator.expectations import outcomes
+from generator.facts import CAS, SMILES, TEMPERATURE, Array, Facts, Point, View
+from generator.outcome import CHECKS, Outcome
 from generator.quantities import QUANTITIES
 from generator.slips import Slip, slips
 from generator.spreads import LIMIT, Spreads
@@ -24,13 +27,16 @@ from generator.spreads import LIMIT, Spreads
 # Degrees of freedom of the long-tailed cost (Student's t).
 _TAIL = 3.0
 # How much a cell must save before it is named.
-LEAST_GAIN = 3.0
+LEAST_GAIN = 2.5
 # Reluctance to blame a kind of cell: typed values go wrong most often.
-_RELUCTANCE = {"value": 0.0, "temperature_c": 1.5, "coefficients": 1.0, "smiles": 3.0}
+_RELUCTANCE = {"value": 0.0, "temperature_c": 1.0, "coefficients": 0.7, "smiles": 0.5, "cas": 0.5}
+# A structure that nothing replaces, and each comparison that is merely left out.
+_NO_ALTERNATIVE, _LEFT_OUT = 2.5, 0.5
 # Freedom of a replaced number: it can always pass one check, which proves nothing.
-_FREEDOM = 1.5
+_FREEDOM = 1.0
 _SLIP_BONUS = 1.0
-_STEPS = 160
+# Share of a check's cost that counts beyond its cap: a slip of the point is no odd molecule.
+_BEYOND = 0.25
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,8 +44,8 @@ class Blame:
     """A cell found most likely wrong.
 
     ``best`` is the replacement that satisfies most (NaN for a structure or curve), ``failed`` the
-    clashes it would settle, ``strength`` the worst of them over its limit, ``rival`` the next
-    most likely cell with the gain it lacks.
+    clashes it would settle, ``passed`` the comparisons it stands up to, ``strength`` the worst
+    clash over its limit, ``rival`` the next most likely cell, ``lead`` how much less it saves.
     """
 
     cell: str
@@ -49,8 +55,8 @@ class Blame:
     failed: tuple[Outcome, ...]
     passed: tuple[Outcome, ...]
     slip: Slip | None
-    rival: str = ""
-    lead: float = math.inf
+    rival: str
+    lead: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,13 +65,26 @@ class _Trial:
     best: float
     cost: float
     slip: Slip | None = None
-    fixed: dict[str, Array] = field(default_factory=dict)
 
 
-def cost(deviation: Array) -> Array:
-    """Cost of a deviation [spreads]; 0 where there is nothing to compare."""
-    z = np.nan_to_num(deviation, nan=0.0, posinf=1e6, neginf=1e6)
-    return np.asarray(0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL))
+def column_of(cell: str) -> str:
+    """The table column a cell stands in."""
+    if cell in (SMILES, CAS):
+        return cell
+    if cell.endswith(TEMPERATURE):
+        return "temperature_c"
+    return "coefficients" if "~" in cell else "value"
+
+
+def quantity_of(cell: str) -> str:
+    """The quantity a cell belongs to; the cell itself for structure and CAS number."""
+    return cell.removesuffix(TEMPERATURE).partition("#")[0].partition("~")[0]
+
+
+def point_of(facts: Facts, cell: str) -> Point:
+    """The point a cell belongs to."""
+    name = cell.removesuffix(TEMPERATURE)
+    return next(p for p in facts.points[quantity_of(cell)] if p.name == name)
 
 
 def deviations(found: Sequence[Outcome], spreads: Spreads) -> Array:
@@ -76,134 +95,149 @@ def deviations(found: Sequence[Outcome], spreads: Spreads) -> Array:
 def clashes(found: Sequence[Outcome], spreads: Spreads) -> list[Outcome]:
     """The outcomes beyond their limit."""
     z = deviations(found, spreads)
-    return [o for o, d in zip(found, z, strict=True) if not abs(np.nan_to_num(d)) <= LIMIT]
+    return [o for o, d in zip(found, z, strict=True) if abs(np.nan_to_num(d)) > LIMIT]
 
 
-def blamed(facts: Facts, spreads: Spreads, most: int = 3) -> tuple[Blame, ...]:
-    """The cells most likely wrong in one substance, worst first; none where nothing clashes."""
+def blamed(
+    facts: Facts, spreads: Spreads, now: list[Outcome] | None = None, most: int = 4
+) -> tuple[Blame, ...]:
+    """The cells most likely wrong in one substance, worst first; none where nothing clashes.
+
+    ``now``: the outcomes of the facts as typed, where they are at hand.
+    """
     found: list[Blame] = []
-    changed: dict[str, Array] = {}
     dropped: set[str] = set()
     while len(found) < most:
-        view = View(facts, changed, frozenset(dropped))
-        now = outcomes(view)
+        view = View(facts, dropped=frozenset(dropped))
+        if now is None:
+            now = outcomes(view)
+        if SMILES in dropped or CAS in dropped:
+            now = [o for o in now if not dropped.intersection(o.members)]
         failed = clashes(now, spreads)
-        if not failed:
-            break
-        blame = _worst(facts, view, now, failed, spreads)
+        blame = _worst(view, now, failed, spreads) if failed else None
         if blame is None:
             break
         found.append(blame)
         dropped.add(blame.cell.removesuffix(TEMPERATURE))
-        if blame.cell == SMILES:
-            break
+        now = None
     return tuple(found)
 
 
 def _worst(
-    facts: Facts, view: View, now: list[Outcome], failed: list[Outcome], spreads: Spreads
+    view: View, now: list[Outcome], failed: list[Outcome], spreads: Spreads
 ) -> Blame | None:
-    before = float(cost(deviations(now, spreads)).sum())
-    candidates = [c for c in facts.names() if any(c in outcome.members for outcome in failed)]
-    trials = sorted((_try(facts, view, now, cell, spreads) for cell in candidates),
-                    key=lambda trial: trial.cost)  # fmt: skip
-    if not trials:
-        return None
+    before = float(_total(_sums(now, spreads)))
+    candidates = [c for c in view.facts.names() if any(c in o.members for o in failed)]
+    trials = [_try(view, now, cell, spreads) for cell in candidates]
+    trials.sort(key=lambda trial: trial.cost)
     best = trials[0]
     gain = before - best.cost
-    mine = [outcome for outcome in failed if best.cell in outcome.members]
     if gain < LEAST_GAIN:
         return None
+    mine = [outcome for outcome in failed if best.cell in outcome.members]
     z = np.abs(deviations(mine, spreads))
     order = np.argsort(-z, kind="stable")
-    rival = next((t for t in trials[1:] if _base(t.cell) != _base(best.cell)), None)
+    own = best.cell.removesuffix(TEMPERATURE)
+    rival = next((t for t in trials[1:] if t.cell.removesuffix(TEMPERATURE) != own), None)
     return Blame(
         cell=best.cell,
         best=best.best,
         gain=gain,
         strength=float(z.max()) / LIMIT,
         failed=tuple(mine[i] for i in order),
-        passed=tuple(o for o in now if o not in failed and best.cell in o.members),
+        passed=tuple(o for o in now if best.cell in o.members and o not in mine),
         slip=best.slip,
         rival=rival.cell if rival else "",
         lead=rival.cost - best.cost if rival else math.inf,
     )
 
 
-def _base(cell: str) -> str:
-    return cell.removesuffix(TEMPERATURE)
+def _sums(found: Sequence[Outcome], spreads: Spreads) -> dict[str, Array]:
+    """Uncapped cost by check."""
+    sums: dict[str, Array] = defaultdict(lambda: np.zeros(()))
+    for outcome in found:
+        z = np.nan_to_num(spreads.deviation(outcome), nan=0.0, posinf=1e6, neginf=1e6)
+        sums[outcome.check] = sums[outcome.check] + 0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL)
+    return sums
 
 
-def column_of(cell: str) -> str:
-    """The table column a cell stands in."""
-    if cell == SMILES:
-        return "smiles"
-    if cell.endswith(TEMPERATURE):
-        return "temperature_c"
-    return "coefficients" if "~" in cell else "value"
+def _total(sums: dict[str, Array]) -> Array:
+    total: Array = np.zeros(())
+    for check, cost in sums.items():
+        cap = CHECKS[check].trust
+        total = total + np.minimum(cost, cap + _BEYOND * np.maximum(cost - cap, 0.0))
+    return total
 
 
-def _try(facts: Facts, view: View, now: list[Outcome], cell: str, spreads: Spreads) -> _Trial:
+def _try(view: View, now: list[Outcome], cell: str, spreads: Spreads) -> _Trial:
+    """The best that can be made of a substance by changing one cell."""
+    rest = [o for o in now if cell not in o.members]
     reluctance = _RELUCTANCE[column_of(cell)] + _FREEDOM
-    z = deviations(now, spreads)
-    if cell == SMILES or "~" in cell:
-        rest = sum(c for o, c in zip(now, cost(z), strict=True) if cell not in o.members)
-        # Each comparison that is merely left out is paid with the cost of an ordinary one.
-        left_out = sum(cell in o.members for o in now)
-        return _Trial(cell, math.nan, float(rest) + reluctance + 0.5 * left_out)
-    point = _point(facts, cell)
+    if cell == SMILES:
+        return _try_structure(view, rest, now, spreads, reluctance)
+    if cell == CAS or "~" in cell:
+        left_out = _LEFT_OUT * (len(now) - len(rest)) if "~" in cell else 0.0
+        return _Trial(cell, math.nan, float(_total(_sums(rest, spreads))) + reluctance + left_out)
+    point = point_of(view.facts, cell)
     temperature = cell.endswith(TEMPERATURE)
-    suggestions = [] if temperature else list(
-        slips(point.row.printed, point.row.printed_unit, point.row.quantity)
-    )  # fmt: skip
-    values = np.array(
-        [*_grid(point, temperature), *(s.value for s in suggestions)], dtype=np.float64
-    )
-    tried = View(facts, {**view.changed, cell: values}, view.dropped)
-    total = np.zeros_like(values)
-    for outcome in outcomes(tried):
-        total = total + cost(np.broadcast_to(spreads.deviation(outcome), values.shape))
-    total += reluctance
+    suggestions: list[Slip] = []
+    if not temperature:
+        row = point.row
+        suggestions = list(slips(row.printed, row.printed_unit, row.quantity))
+    values = np.array([*_grid(point, temperature), *(s.value for s in suggestions)])
+    tried = View(view.facts, {cell: values}, view.dropped)
+    touched = [o for o in outcomes(tried, point.row.quantity) if cell in o.members]
+    total = np.broadcast_to(_total(_sums([*rest, *touched], spreads)), values.shape) + reluctance
     quantity = QUANTITIES[point.row.quantity]
     if not temperature:
-        total[(values < quantity.low) | (values > quantity.high)] += 50.0
+        total = total + np.where((values < quantity.low) | (values > quantity.high), 50.0, 0.0)
     plain = len(values) - len(suggestions)
     best = int(np.argmin(total[:plain]))
     slip, lowest = None, float(total[best])
-    for suggestion, at in zip(suggestions, total[plain:], strict=True):
+    settled = _settled(touched, spreads, values.shape)
+    for suggestion, cost, fits in zip(
+        suggestions, total[plain:], settled[plain:], strict=True
+    ):
         # A slip explains more than a free number; an odd slip explains little more.
-        value = float(at) - _SLIP_BONUS + suggestion.rarity
-        if value < lowest:
-            slip, lowest = suggestion, value
+        worth = float(cost) - _SLIP_BONUS + suggestion.rarity
+        if fits and worth < lowest:
+            slip, lowest = suggestion, worth
     return _Trial(cell, slip.value if slip else float(values[best]), lowest, slip)
 
 
-def _point(facts: Facts, cell: str) -> Point:
-    name = cell.removesuffix(TEMPERATURE)
-    return next(p for p in facts.points[name.partition("#")[0]] if p.name == name)
+def _try_structure(
+    view: View, rest: list[Outcome], now: list[Outcome], spreads: Spreads, reluctance: float
+) -> _Trial:
+    who, listed = view.facts.identity, view.facts.listed
+    if who.relation == "same":
+        return _Trial(SMILES, math.nan, math.inf)
+    if listed is not None:
+        seen = outcomes(View(view.facts, dropped=view.dropped, structure=listed))
+        return _Trial(SMILES, math.nan, float(_total(_sums(seen, spreads))) + reluctance)
+    left_out = _NO_ALTERNATIVE + _LEFT_OUT * (len(now) - len(rest))
+    return _Trial(SMILES, math.nan, float(_total(_sums(rest, spreads))) + reluctance + left_out)
 
 
-def curve_of(facts: Facts, cell: str) -> Curve:
-    """The curve a cell belongs to."""
-    return next(c for c in facts.curves[cell.partition("~")[0]] if c.name == cell)
-
-
-def point_of(facts: Facts, cell: str) -> Point:
-    """The point a cell belongs to."""
-    return _point(facts, cell)
+def _settled(touched: Sequence[Outcome], spreads: Spreads, shape: tuple[int, ...]) -> Array:
+    """Where a replacement brings every comparison of the cell well inside its limit."""
+    fits = np.ones(shape, dtype=bool)
+    for outcome in touched:
+        z = np.abs(np.nan_to_num(spreads.deviation(outcome), nan=0.0, posinf=1e6, neginf=1e6))
+        fits &= z < 0.6 * LIMIT
+    return fits
 
 
 def _grid(point: Point, temperature: bool) -> Array:
     """Other values to try: near ones closely, far ones coarsely."""
     if temperature:
-        return np.concatenate([np.linspace(173.0, 573.0, 101), [point.temperature]])
+        return np.concatenate([np.linspace(173.0, 573.0, 81), [point.temperature]])
     quantity = QUANTITIES[point.row.quantity]
     if quantity.unit == "degC":
         return point.value + np.concatenate(
-            [np.linspace(-300, 300, 121), np.linspace(-25, 25, 101)]
+            [np.linspace(-400, 400, 81), np.linspace(-40, 40, 81)]
         )
     offset = 1.0 if quantity.key in ("relative_permittivity", "refractive_index") else 0.0
     level = max(abs(point.value - offset), 1e-3)
-    near = np.exp(np.linspace(-0.6, 0.6, _STEPS + 1))
-    far = np.exp(np.linspace(-7, 7, 57))
+    near = np.exp(np.linspace(-0.6, 0.6, 121))
+    far = np.exp(np.linspace(-7, 7, 43))
     return offset + level * np.concatenate([near, far])

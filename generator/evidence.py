@@ -8,14 +8,16 @@ the numbers of every check that voted. Suspects only: nothing here stops a build
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from generator.blame import Blame, blamed, clashes, column_of, curve_of, point_of
 from generator.dataset import Correction, Dataset
 from generator.errors import Problem
-from generator.expectations import CHECKS, Outcome, outcomes
+from generator.expectations import outcomes
 from generator.facts import SMILES, TEMPERATURE, Facts, View, celsius, facts_of, structure_of
 from generator.metrics import Handbook
+from generator.neighbours import series_of
+from generator.outcome import CHECKS, Outcome
 from generator.quantities import QUANTITIES
 from generator.spreads import LIMIT, Spreads, Threshold, spreads_for
 from generator.spreads import thresholds as _thresholds
@@ -63,9 +65,10 @@ def review(handbook: Handbook) -> Review:
 def _prepared(handbook: Handbook) -> tuple[list[Facts], Spreads]:
     dataset = handbook.dataset
     facts = [
-        facts_of(dataset, slug, structure_of(handbook.molecules[slug]))
-        for slug in dataset.solvents
+        facts_of(dataset, slug, structure_of(handbook.molecules[slug])) for slug in dataset.solvents
     ]
+    series = series_of(facts)
+    facts = [replace(f, series=series[f.slug]) for f in facts]
     return facts, spreads_for(o for f in facts for o in outcomes(View(f)))
 
 

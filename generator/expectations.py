@@ -1,109 +1,45 @@
 """The cross-checks of one substance: what one cell makes us expect of another.
 
-Each check yields outcomes: a number found, the number expected from other cells, how far the two
-may usually lie apart, and the cells that took part. Nothing is judged here; what is usual comes
-from the data (``spreads``), and which cell is to blame from all outcomes together (``blame``).
+Each check yields outcomes: a number found, the number expected from other cells, and the cells
+that took part. Nothing is judged here; what is usual comes from the data (``spreads``), and which
+cell is to blame from all outcomes together (``blame``).
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
-from itertools import combinations
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from generator import polarity
+from generator.agreement import AGREEMENT, EPS, MU, RHO, ROOM, TB, TF, TM, N
 from generator.facts import SMILES, TEMPERATURE, Array, Curve, Point, View
+from generator.outcome import Outcome, cells, relative_spread
 from generator.units import ZERO_CELSIUS
 
-EPS, N, RHO, MU = "relative_permittivity", "refractive_index", "density", "dipole_moment"
-TM, TB, TF = "melting_point", "boiling_point", "flash_point"
-PRESSURE = "vapour_pressure"
-ONE_ATMOSPHERE = 101.325  # kPa, exact
-# A moment below this cannot be compared by ratio [D].
-SMALL_MOMENT = 0.3
 # Uncertainty of ε∞ = 1.05 n² taken as a share of ε (the 5 % are an assumption).
 INFINITE_SHARE = 0.03
-ROOM = 20.0 + ZERO_CELSIUS
 # Density values are carried this far to meet an index or permittivity [K].
 REACH = 60.0
+# Liquids that are liquid at room temperature are measured between these [K].
+USUAL = (15.0 + ZERO_CELSIUS, 30.0 + ZERO_CELSIUS)
+# Pressure takes a liquid this far beyond its boiling point before anybody wonders [K].
+UNDER_PRESSURE = 80.0
 
 
-@dataclass(frozen=True, slots=True)
-class Check:
-    """One kind of cross-check: its slug, what it compares, and whether by ratio or difference."""
-
-    name: str
-    title: str
-    relative: bool
-    unit: str
-
-
-CHECKS = {
-    check.name: check
-    for check in (
-        Check("refraction", "molar refraction from n and ρ against the structure", True, "cm3/mol"),
-        Check("volume", "molar volume from ρ against the structure", True, "cm3/mol"),
-        Check("index-square", "ε of an unpolar liquid against n²", True, "1"),
-        Check("below-index-square", "ε below n²", True, "1"),
-        Check("onsager", "ε against the Onsager equation from μ, n and V", True, "1"),
-        Check("own-curve", "a point against its own curve", True, ""),
-        Check("curves", "two curves of one quantity", True, ""),
-        Check("sources", "two sources of one quantity", True, ""),
-        Check("moments", "two published dipole moments", False, "D"),
-        Check("symmetry", "dipole moment of a molecule that symmetry leaves none", False, "D"),
-        Check("temperatures", "two sources of one temperature", False, "degC"),
-    )
-}
-
-
-@dataclass(frozen=True, slots=True)
-class Outcome:
-    """One comparison. ``found`` and ``expected`` may be arrays; ``own`` is their own uncertainty.
-
-    ``group`` is what the comparison's usual spread is learnt over; ``weight`` stretches that
-    spread for this one comparison. ``members`` are the cells that took part.
-    """
-
-    check: str
-    group: str
-    members: tuple[str, ...]
-    found: ArrayLike
-    expected: ArrayLike
-    own: float
-    what_found: str
-    what_expected: str
-    weight: float = 1.0
-    unit: str = ""
-
-    @property
-    def residual(self) -> Array:
-        """ln(found/expected), or found − expected where the check goes by difference."""
-        found, expected = np.asarray(self.found), np.asarray(self.expected)
-        with np.errstate(all="ignore"):
-            if CHECKS[self.check].relative:
-                return np.log(found / expected)
-            return np.asarray(found - expected, dtype=np.float64)
-
-
-def outcomes(view: View) -> list[Outcome]:
-    """Every comparison that the cells of a view allow."""
-    return [outcome for check in _ALL for outcome in check(view)]
+def outcomes(view: View, reading: str = "") -> list[Outcome]:
+    """Every comparison that the cells of a view allow, or those that read one quantity."""
+    return [
+        outcome
+        for check, reads in (*AGREEMENT, *_PHYSICS)
+        if not reading or reading in reads
+        for outcome in check(view)
+    ]
 
 
 def _sources(view: View, key: str) -> list[Point | Curve]:
     return [*view.points(key), *view.curves(key)]
-
-
-def _cells(*sources: Point | Curve) -> tuple[str, ...]:
-    names: list[str] = []
-    for source in sources:
-        names.append(source.name)
-        if isinstance(source, Point) and not np.isnan(source.temperature):
-            names.append(source.name + TEMPERATURE)
-    return tuple(names)
 
 
 def _near(source: Point | Curve, temperature: float) -> bool:
@@ -112,8 +48,9 @@ def _near(source: Point | Curve, temperature: float) -> bool:
     return bool(abs(source.temperature - temperature) <= REACH)
 
 
-def _relative(source: Point | Curve) -> float:
-    return source.spread / abs(source.value) if isinstance(source, Point) and source.value else 0.0
+def _inside(curve: Curve) -> float:
+    """Room temperature, or the end of the curve nearest to it [K]."""
+    return float(np.clip(ROOM, curve.row.t_min, curve.row.t_max))
 
 
 def _refraction(view: View) -> Iterator[Outcome]:
@@ -124,54 +61,59 @@ def _refraction(view: View) -> Iterator[Outcome]:
         for source in _sources(view, RHO):
             if not _near(source, index.temperature):
                 continue
-            at = view.temperature(index)
-            n = view.value(index)
-            volume = polarity.molar_volume(known.molecule.molar_mass, view.density(source, at))
+            density = view.density(source, view.temperature(index))
+            volume = polarity.molar_volume(known.molecule.molar_mass, density)
             # d ln R/dn = 6n/((n²−1)(n²+2)), about 2 for organic liquids
-            own = float(np.hypot(_relative(source), 2.0 * index.spread))
+            own = float(np.hypot(relative_spread(source), 2.0 * index.spread))
             yield Outcome(
-                "refraction",
-                known.molecule.family,
-                (*_cells(index, source), SMILES),
-                polarity.molar_refraction(n, volume),
-                known.refraction,
-                own,
-                f"from n ({index.label}) and ρ ({source.label})",
-                "from the structure",
+                "refraction", known.molecule.family, (*cells(index, source), SMILES),
+                polarity.molar_refraction(view.value(index), volume), known.refraction, own,
+                f"from n ({index.label}) and ρ ({source.label})", "from the structure",
                 unit="cm3/mol",
-            )
+            )  # fmt: skip
+
+
+def _index(view: View) -> Iterator[Outcome]:
+    """n from the structure alone: additive refraction in the foretold volume."""
+    known = view.known
+    if "molar_volume" not in known.foretold:
+        return
+    volume = known.foretold["molar_volume"] * np.exp(view.facts.series.get("molar_volume", 0.0))
+    at_room = polarity.refractive_index_from_refraction(known.refraction, volume)
+    for index in view.points(N):
+        if np.isfinite(index.temperature):
+            yield Outcome(
+                "index", known.molecule.family, (*cells(index), SMILES),
+                view.index(index, ROOM), at_room, index.spread / index.value,
+                f"n ({index.label})", "from the structure", unit="1",
+            )  # fmt: skip
 
 
 def _volume(view: View) -> Iterator[Outcome]:
     known = view.known
-    if known.volume is None:
+    if "molar_volume" not in known.foretold:
         return
+    shift = view.facts.series.get("molar_volume")
+    check, group = ("volume", known.molecule.family) if shift is None else ("series-volume", "all")
     for source in _sources(view, RHO):
-        at = ROOM
-        if isinstance(source, Curve):
-            at = float(np.clip(ROOM, source.row.t_min, source.row.t_max))
-        here = view.density(source, at)
-        expansion = np.exp(view.expansivity(at) * (at - ROOM))
+        at = _inside(source) if isinstance(source, Curve) else ROOM
+        volume = polarity.molar_volume(known.molecule.molar_mass, view.density(source, at))
+        expected = known.foretold["molar_volume"] * np.exp(shift or 0.0)
         yield Outcome(
-            "volume",
-            known.molecule.family,
-            (*_cells(source), SMILES),
-            polarity.molar_volume(known.molecule.molar_mass, here),
-            known.volume * expansion,
-            _relative(source),
+            check, group, (*cells(source), SMILES), volume,
+            expected * np.exp(view.expansivity(at) * (at - ROOM)), relative_spread(source),
             f"from ρ ({source.label})",
-            "from the structure",
-            unit="cm3/mol",
-        )
+            "from the structure" if shift is None else "from the series", unit="cm3/mol",
+        )  # fmt: skip
 
 
 def _permittivities(view: View) -> Iterator[tuple[Point | Curve, ArrayLike, float, ArrayLike]]:
-    """Every source of ε with its value, the temperature [K] it is compared at, as typed and now."""
+    """Every source of ε with its value and the temperature [K] it is compared at: typed, seen."""
     for point in view.points(EPS):
         if np.isfinite(point.temperature):
             yield point, view.value(point), point.temperature, view.temperature(point)
     for curve in view.curves(EPS):
-        at = float(np.clip(ROOM, curve.row.t_min, curve.row.t_max))
+        at = _inside(curve)
         yield curve, view.curve(curve, at), at, at
 
 
@@ -180,184 +122,201 @@ def _index_square(view: View) -> Iterator[Outcome]:
     unpolar = molecule.dipole_limit is not None
     for source, eps, at, now in _permittivities(view):
         for index in view.points(N):
-            if not np.isfinite(index.temperature) or abs(index.temperature - at) > REACH:
+            if not abs(index.temperature - at) <= REACH:
                 continue
             square = view.index(index, now) ** 2
-            own = float(np.hypot(_relative(source), 2 * index.spread / index.value))
-            if unpolar:
-                group = "symmetric" if molecule.zero_dipole else "saturated"
-                check, expected = "index-square", square
-            else:
-                group, check = "all", "below-index-square"
-                expected = np.maximum(square, 0.0)
-                eps = np.minimum(eps, expected)
+            own = float(np.hypot(relative_spread(source), 2 * index.spread / index.value))
+            group = "symmetric" if molecule.zero_dipole else "saturated"
             yield Outcome(
-                check,
-                group,
-                (*_cells(source, index), SMILES),
-                eps,
-                expected,
-                own,
-                f"ε ({source.label})",
-                f"n² ({index.label})",
-                unit="1",
-            )
+                "index-square" if unpolar else "below-index-square",
+                group if unpolar else "all", (*cells(source, index), SMILES),
+                eps if unpolar else np.minimum(eps, square), square, own,
+                f"ε ({source.label})", f"n² ({index.label})", unit="1",
+            )  # fmt: skip
+
+
+def _liquids(
+    view: View,
+) -> Iterator[tuple[Point | Curve, ArrayLike, ArrayLike, Array, ArrayLike, tuple[str, ...]]]:
+    """What the Onsager equation needs beside μ: ε, T [K], n, V [cm3/mol] and the cells read.
+
+    n follows from the structure's refraction, so that a wrong n does not cast doubt on ε.
+    """
+    known = view.known
+    densities = _sources(view, RHO)
+    for source, eps, at, now in _permittivities(view):
+        density = next((d for d in densities if _near(d, at)), None)
+        if density is not None:
+            rho = view.density(density, now)
+            members = (*cells(source), density.name, SMILES)
+        elif "molar_volume" in known.foretold:
+            rho = known.molecule.molar_mass / known.foretold["molar_volume"]
+            members = (*cells(source), SMILES)
+        else:
+            continue
+        volume = polarity.molar_volume(known.molecule.molar_mass, rho)
+        n = polarity.refractive_index_from_refraction(known.refraction, volume)
+        yield source, eps, now, n, volume, members
 
 
 def _onsager(view: View) -> Iterator[Outcome]:
     molecule = view.known.molecule
-    densities = _sources(view, RHO)
-    if molecule.dipole_limit is not None or not densities:
+    if molecule.dipole_limit is not None:
         return
     group = molecule.family if molecule.is_associated else f"aprotic {molecule.family}"
-    for source, eps, at, now in _permittivities(view):
-        near = [d for d in densities if _near(d, at)][:1]
-        indices = [i for i in view.points(N) if abs(i.temperature - at) <= REACH][:1]
+    for source, eps, now, n, volume, members in _liquids(view):
         for moment in view.points(MU):
-            for density in near:
-                for index in indices:
-                    volume = polarity.molar_volume(molecule.molar_mass, view.density(density, now))
-                    n = view.index(index, now)
-                    mu = np.asarray(view.value(moment))
-                    expected = polarity.onsager_permittivity(mu, n, volume, now)
-                    slope = _sensitivity(moment.value, index.value, volume, at)
-                    yield Outcome(
-                        "onsager",
-                        group,
-                        (*_cells(source, moment, density, index), SMILES),
-                        eps,
-                        expected,
-                        float(np.hypot(_relative(source), INFINITE_SHARE)),
-                        f"ε ({source.label})",
-                        f"from μ ({moment.label}), n and V",
-                        weight=max(slope, 0.02),
-                        unit="1",
-                    )
-
-
-def _sensitivity(mu: float, n: float, volume: ArrayLike, temperature: float) -> float:
-    """d ln ε/d ln μ of the Onsager equation at the typed values."""
-    middle = float(np.median(np.atleast_1d(volume)))
-    if mu <= 0:
-        return 0.0
-    low, high = (
-        float(polarity.onsager_permittivity(mu * f, n, middle, temperature)) for f in (0.95, 1.05)
-    )
-    with np.errstate(all="ignore"):
-        slope = np.log(high / low) / np.log(1.05 / 0.95)
-    return float(slope) if np.isfinite(slope) else 1.0
-
-
-def _own_curve(view: View) -> Iterator[Outcome]:
-    for key in (EPS, RHO):
-        for point in view.points(key):
-            for curve in view.curves(key):
-                if not np.isfinite(point.temperature) or not curve.holds(point.temperature):
-                    continue
-                yield Outcome(
-                    "own-curve",
-                    key,
-                    (*_cells(point), curve.name),
-                    view.value(point),
-                    view.curve(curve, view.temperature(point)),
-                    _relative(point),
-                    f"point ({point.label})",
-                    curve.label,
-                )
-
-
-def _two_curves(view: View) -> Iterator[Outcome]:
-    for key in (EPS, RHO):
-        for one, other in combinations(view.curves(key), 2):
-            low = max(one.row.t_min, other.row.t_min)
-            high = min(one.row.t_max, other.row.t_max)
-            if low > high:
-                continue
-            at = float(np.clip(ROOM, low, high))
+            expected = polarity.onsager_permittivity(view.value(moment), n, volume, now)
             yield Outcome(
-                "curves",
-                key,
-                (one.name, other.name),
-                view.curve(one, at),
-                view.curve(other, at),
-                0.0,
-                one.label,
-                other.label,
-            )
+                "onsager", group, (moment.name, *members), eps, expected,
+                float(np.hypot(relative_spread(source), INFINITE_SHARE)),
+                f"ε ({source.label})", f"from μ ({moment.label}), n and V",
+                weight=sensitivity(moment.value, n, volume, now), unit="1",
+            )  # fmt: skip
 
 
-def _two_points(view: View) -> Iterator[Outcome]:
-    for key in (EPS, RHO, N):
-        for one, other in combinations(view.points(key), 2):
-            if not abs(one.temperature - other.temperature) <= 5.0:
-                continue
-            yield Outcome(
-                "sources",
-                key,
-                (*_cells(one), *_cells(other)),
-                view.value(one),
-                view.value(other),
-                float(np.hypot(_relative(one), _relative(other))),
-                one.label,
-                other.label,
-            )
-
-
-def _moments(view: View) -> Iterator[Outcome]:
-    points = view.points(MU)
-    for one, other in combinations(points, 2):
+def _moment(view: View) -> Iterator[Outcome]:
+    known = view.known
+    if known.molecule.dipole_limit is not None or "liquid_moment" not in known.foretold:
+        return
+    shift = view.facts.series.get("liquid_moment")
+    check = "moment" if shift is None else "series-moment"
+    mu = known.foretold["liquid_moment"] * float(np.exp(shift or 0.0))
+    for source, eps, now, n, volume, members in _liquids(view):
         yield Outcome(
-            "moments",
-            "all",
-            (one.name, other.name),
-            view.value(one),
-            view.value(other),
-            float(np.hypot(one.spread, other.spread)),
-            one.label,
-            other.label,
-            weight=max(1.0, 0.5 * min(one.value, other.value)),
-            unit="D",
-        )
-    limit = view.known.molecule.dipole_limit
-    if limit is not None:
-        for point in points:
-            yield Outcome(
-                "symmetry",
-                "all",
-                (point.name, SMILES),
-                np.maximum(view.value(point), limit),
-                limit,
-                point.spread,
-                f"μ ({point.label})",
-                "allowed by the structure",
-                unit="D",
-            )
+            check, known.molecule.family, members, eps,
+            polarity.onsager_permittivity(mu, n, volume, now),
+            float(np.hypot(relative_spread(source), INFINITE_SHARE)), f"ε ({source.label})",
+            "from similar structures" if shift is None else "from the series",
+            weight=sensitivity(mu, n, volume, now), unit="1",
+        )  # fmt: skip
 
 
-def _temperatures(view: View) -> Iterator[Outcome]:
-    for key in (TM, TB, TF):
-        for one, other in combinations(view.points(key), 2):
+def sensitivity(mu: float, n: ArrayLike, volume: ArrayLike, temperature: ArrayLike) -> float:
+    """d ln ε/d ln μ [1] of the Onsager equation, at the middle of what is tried.
+
+    ``mu`` [D], ``n`` [1], ``volume`` [cm3/mol], ``temperature`` [K].
+    """
+    if mu <= 0:
+        return 0.02
+    n, volume, temperature = (
+        float(np.median(np.atleast_1d(np.asarray(x)))) for x in (n, volume, temperature)
+    )
+    low, high = polarity.onsager_permittivity(mu * np.array([0.95, 1.05]), n, volume, temperature)
+    with np.errstate(all="ignore"):
+        slope = float(np.log(high / low) / np.log(1.05 / 0.95))
+    return max(slope, 0.02) if np.isfinite(slope) else 1.0
+
+
+def _slope(view: View) -> Iterator[Outcome]:
+    """d ln ε/dT of a curve against what expansion and thermal agitation leave at constant g."""
+    known = view.known
+    for curve in view.curves(EPS):
+        if curve.row.t_max - curve.row.t_min < 4.0:
+            continue
+        at = float(np.clip(ROOM, curve.row.t_min + 2.0, curve.row.t_max - 2.0))
+        eps = float(curve.at(at))
+        volume = known.foretold.get("molar_volume")
+        if volume is None or not eps > 1:
+            continue
+        n = polarity.refractive_index_from_refraction(known.refraction, volume)
+        alpha = view.expansivity(at)
+        if known.molecule.dipole_limit is not None:
+            slope, group = polarity.clausius_mossotti_slope(eps, alpha), "unpolar"
+        else:
+            slope = polarity.expected_temperature_coefficient(eps, n, alpha, at)
+            group = known.molecule.family if known.molecule.is_associated else "aprotic"
+        yield Outcome(
+            "slope", group, (curve.name, SMILES), curve.relative_slope(at), slope / eps, 0.0,
+            f"d ln ε/dT ({curve.label})", "at constant correlation", unit="1/K",
+        )  # fmt: skip
+
+
+def _boiling(view: View) -> Iterator[Outcome]:
+    known = view.known
+    if "boiling_point" not in known.foretold:
+        return
+    shift = view.facts.series.get("boiling_point")
+    check, group = "series-boiling", "all"
+    if shift is None:
+        check, group = "boiling", known.molecule.family
+    for point in view.points(TB):
+        yield Outcome(
+            check, group, (point.name, SMILES),
+            np.maximum(np.asarray(view.value(point)) + ZERO_CELSIUS, 1.0),
+            known.foretold["boiling_point"] * np.exp(shift or 0.0),
+            point.spread / max(point.value + ZERO_CELSIUS, 1.0),
+            f"boiling point ({point.label})",
+            "from the structure" if shift is None else "from the series", unit="K",
+        )  # fmt: skip
+
+
+def _flash(view: View) -> Iterator[Outcome]:
+    boils = view.middle(TB)
+    if not np.isfinite(boils):
+        return
+    for point in view.points(TF):
+        yield Outcome(
+            "flash", "all", (point.name,),
+            np.maximum(np.asarray(view.value(point)) + ZERO_CELSIUS, 1.0),
+            np.asarray(boils + ZERO_CELSIUS), point.spread / max(point.value + ZERO_CELSIUS, 1.0),
+            f"flash point ({point.label})", "boiling point", unit="K",
+        )  # fmt: skip
+
+
+def _order(view: View) -> Iterator[Outcome]:
+    """Melting points below the boiling point, boiling points above the melting point."""
+    for key, other, side in ((TM, TB, -1.0), (TB, TM, 1.0)):
+        edge = view.middle(other)
+        if not np.isfinite(edge):
+            continue
+        for point in view.points(key):
+            value = np.asarray(view.value(point))
             yield Outcome(
-                "temperatures",
-                key,
-                (one.name, other.name),
-                view.value(one),
-                view.value(other),
-                float(np.hypot(one.spread, other.spread)),
-                one.label,
-                other.label,
+                "order", key, (point.name,), value,
+                np.minimum(value, edge) if side < 0 else np.maximum(value, edge), point.spread,
+                f"{key.replace('_', ' ')} ({point.label})", f"{other.replace('_', ' ')} at most"
+                if side < 0 else f"{other.replace('_', ' ')} at least", unit="degC",
+            )  # fmt: skip
+
+
+def _measured_at(view: View) -> Iterator[Outcome]:
+    """Temperatures at which nobody measures: solid, gaseous, far from room for no reason."""
+    melts, boils = (view.middle(key) + ZERO_CELSIUS for key in (TM, TB))
+    for key in (EPS, N, RHO):
+        for point in view.points(key):
+            if not np.isfinite(point.temperature):
+                continue
+            now = np.asarray(view.temperature(point))
+            low = melts if np.isfinite(melts) else -np.inf
+            high = boils + UNDER_PRESSURE if np.isfinite(boils) else np.inf
+            yield Outcome(
+                "liquid-range", key, (point.name + TEMPERATURE,), now,
+                np.clip(now, low, max(low, high)), 0.0, f"temperature ({point.label})",
+                "liquid", unit="degC",
+            )  # fmt: skip
+            cold, warm = USUAL
+            if np.isfinite(boils) and boils < warm:
+                cold = -np.inf
+            if np.isfinite(melts) and melts > cold:
+                warm = max(warm, melts + 40.0)
+            yield Outcome(
+                "usual-temperature", key, (point.name + TEMPERATURE,), now,
+                np.clip(now, cold, warm), 0.0, f"temperature ({point.label})", "usual",
                 unit="degC",
-            )
+            )  # fmt: skip
 
 
-_ALL: tuple[Callable[[View], Iterator[Outcome]], ...] = (
-    _refraction,
-    _volume,
-    _index_square,
-    _onsager,
-    _own_curve,
-    _two_curves,
-    _two_points,
-    _moments,
-    _temperatures,
+_PHYSICS: tuple[tuple[Callable[[View], Iterator[Outcome]], frozenset[str]], ...] = (
+    (_refraction, frozenset({N, RHO, SMILES})),
+    (_index, frozenset({N, SMILES})),
+    (_volume, frozenset({RHO, SMILES})),
+    (_index_square, frozenset({EPS, N, SMILES})),
+    (_onsager, frozenset({EPS, RHO, MU, SMILES})),
+    (_moment, frozenset({EPS, RHO, SMILES})),
+    (_slope, frozenset({EPS, SMILES})),
+    (_boiling, frozenset({TB, SMILES})),
+    (_flash, frozenset({TF})),
+    (_order, frozenset({TM, TB})),
+    (_measured_at, frozenset({EPS, N, RHO})),
 )

@@ -10,16 +10,18 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
+from statistics import median
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from generator import thermal
-from generator.dataset import Correlation, Dataset, Measurement
-from generator.increments import additive_volume
+from generator.dataset import Correlation, Dataset, Measurement, Source
+from generator.identity import Identity, Print
+from generator.increments import foretold
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, additive_refraction
-from generator.units import ZERO_CELSIUS, convert, convert_difference
+from generator.units import ZERO_CELSIUS, convert
 
 Array = NDArray[np.float64]
 
@@ -42,11 +44,16 @@ class Point:
     temperature: float
     spread: float
     row: Measurement
+    calculated: bool = False
 
     @property
     def label(self) -> str:
         """The source, as evidence names it."""
         return self.row.source
+
+    def holds(self, temperature: float, reach: float = 0.6) -> bool:
+        """Whether the point was measured within ``reach`` of ``temperature`` [K]."""
+        return abs(self.temperature - temperature) <= reach
 
 
 @dataclass(frozen=True, slots=True)
@@ -85,19 +92,26 @@ class Structure:
 
     molecule: Molecule
     refraction: float
-    volume: float | None
-    dipole: float | None = None
-    dipole_spread: float = math.inf
+    foretold: Mapping[str, float]
 
 
 @dataclass(frozen=True, slots=True)
 class Facts:
-    """Everything the tables say about one substance that a cross-check looks at."""
+    """Everything the tables say about one substance that a cross-check looks at.
+
+    ``series`` holds, for each model of the structure, how much more (natural logarithm) than
+    foretold its neighbours in the homologous series have; ``listed`` is the structure of the
+    CAS number where another one was typed; ``prints`` what the open tables print under it.
+    """
 
     slug: str
     structure: Structure
     points: Mapping[str, tuple[Point, ...]]
     curves: Mapping[str, tuple[Curve, ...]]
+    series: Mapping[str, float] = field(default_factory=dict)
+    identity: Identity = field(default_factory=Identity)
+    prints: Mapping[tuple[str, str], Print] = field(default_factory=dict)
+    listed: Structure | None = None
 
     def names(self) -> Iterable[str]:
         """Every cell that can be doubted."""
@@ -109,11 +123,12 @@ class Facts:
         for curves in self.curves.values():
             yield from (curve.name for curve in curves)
         yield SMILES
+        yield CAS
 
 
 def structure_of(molecule: Molecule) -> Structure:
     """The structure's own numbers."""
-    return Structure(molecule, additive_refraction(molecule.smiles), additive_volume(molecule))
+    return Structure(molecule, additive_refraction(molecule.smiles), foretold(molecule))
 
 
 def facts_of(dataset: Dataset, slug: str, structure: Structure) -> Facts:
@@ -124,17 +139,21 @@ def facts_of(dataset: Dataset, slug: str, structure: Structure) -> Facts:
             continue
         measured = dataset.measurements_of(slug, key)
         if measured:
-            points[key] = tuple(_point(key, i, row) for i, row in enumerate(measured))
+            points[key] = tuple(
+                _point(key, i, row, dataset.sources.get(row.source))
+                for i, row in enumerate(measured)
+            )
         fitted = dataset.correlations_of(slug, key)
         if fitted:
             curves[key] = tuple(Curve(f"{key}~{i}", row) for i, row in enumerate(fitted))
     return Facts(slug, structure, points, curves)
 
 
-def _point(key: str, index: int, row: Measurement) -> Point:
+def _point(key: str, index: int, row: Measurement, source: Source | None) -> Point:
+    calculated = source is not None and source.kind == "calculated"
     temperature = math.nan if row.temperature is None else row.temperature
     spread = row.half_width if row.uncertainty is None else row.uncertainty
-    return Point(f"{key}#{index}", row.value, temperature, spread, row)
+    return Point(f"{key}#{index}", row.value, temperature, spread, row, calculated)
 
 
 @dataclass(frozen=True, slots=True)
@@ -158,6 +177,11 @@ class View:
     def curves(self, key: str) -> Sequence[Curve]:
         """The curves of a quantity."""
         return [c for c in self.facts.curves.get(key, ()) if c.name not in self.dropped]
+
+    def middle(self, key: str) -> float:
+        """Median of the values of a quantity as typed, NaN where there is none."""
+        values = [p.value for p in self.points(key)]
+        return median(values) if values else math.nan
 
     def value(self, point: Point) -> ArrayLike:
         """Value of a point [the quantity's unit]."""
@@ -202,11 +226,3 @@ class View:
 def celsius(kelvin: float) -> float:
     """A temperature [K] in °C."""
     return kelvin - ZERO_CELSIUS
-
-
-def printed_spread(row: Measurement) -> float:
-    """Rounding half-width of a value [its quantity's unit], never zero."""
-    if row.half_width > 0:
-        return row.half_width
-    unit = QUANTITIES[row.quantity].unit
-    return abs(convert_difference(1e-6 * abs(row.value), row.printed_unit, unit))

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import pairwise
 
 from generator.quantities import QUANTITIES
 from generator.units import DEBYE, ZERO_CELSIUS, convert
@@ -62,11 +63,13 @@ def _respelled(printed: str, temperature: bool) -> Iterator[tuple[str, str, floa
         return
     if temperature:
         yield (digits if sign else f"-{digits}"), "the opposite sign would fit", 0.0
+    few = 2 if temperature else 6
     for shift, words in ((1, "×10"), (-1, "÷10"), (2, "×100"), (-2, "÷100"), (3, "×1000"),
-                         (-3, "÷1000")):  # fmt: skip
-        yield f"{float(printed) * 10.0**shift:.12g}", f"{words} would fit: the point is shifted", 0.0
+                         (-3, "÷1000"))[:few]:  # fmt: skip
+        text = f"{float(printed) * 10.0**shift:.12g}"
+        yield text, f"{words} would fit: the point is shifted", 0.0
     marks = [i for i, character in enumerate(digits) if character.isdigit()]
-    for one, other in zip(marks, marks[1:], strict=False):
+    for one, other in pairwise(marks):
         swapped = list(digits)
         swapped[one], swapped[other] = swapped[other], swapped[one]
         text = sign + "".join(swapped)

@@ -17,7 +17,7 @@ from pathlib import Path
 
 import numpy as np
 
-from generator.expectations import CHECKS, Outcome
+from generator.outcome import CHECKS, Outcome
 
 _TABLE = Path(__file__).parent / "reference" / "spreads.csv"
 # A residual counts as a clash beyond this many spreads. Residuals of real liquids have longer
@@ -87,7 +87,9 @@ class Spreads:
     def of(self, check: str, group: str) -> Spread:
         """Spread of a group, or of the whole check where the group has too few comparisons."""
         found = self.table.get((check, group)) or self.table.get((check, ALL))
-        return found or Spread(0.0, math.inf, 0)
+        if found is None:
+            return Spread(0.0, math.inf, 0)
+        return Spread(found.median, max(found.spread, CHECKS[check].resolution), found.count)
 
     def deviation(self, outcome: Outcome) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
         """Residual in spreads; NaN where there is nothing to compare."""
@@ -142,6 +144,6 @@ def thresholds(spreads: Spreads) -> tuple[Threshold, ...]:
             LIMIT * usual.spread,
             usual.count,
         )
-        for (check, group), usual in spreads.table.items()
-        if check in CHECKS
+        for check, group in spreads.table
+        for usual in [spreads.of(check, group)]
     )

@@ -1,0 +1,79 @@
+"""Homologous series: how much more than foretold the neighbours of a substance have.
+
+The structure's own forecast leaves a remainder that members of one series share. The median
+remainder of the nearest members corrects it, so that a step out of the series stands out.
+"""
+
+from __future__ import annotations
+
+import math
+from collections import defaultdict
+from collections.abc import Mapping, Sequence
+from statistics import median
+
+from generator import polarity
+from generator.agreement import EPS, ROOM, TB
+from generator.facts import Facts, View
+from generator.increments import MODELS, series_key, size
+from generator.units import ZERO_CELSIUS
+
+# Neighbours looked at, the fewest that count, and how far in ln(size) they may lie.
+_MOST, _FEWEST, _REACH = 7, 3, 0.6
+
+
+def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, float]]:
+    """For each substance and model: the median of ln(measured/foretold) of its neighbours."""
+    groups: dict[str, list[tuple[float, Facts, Mapping[str, float]]]] = defaultdict(list)
+    for facts in everything:
+        key = series_key(facts.structure.molecule)
+        groups[key].append((size(facts.structure.molecule), facts, remainders(facts)))
+    shifts: dict[str, dict[str, float]] = {facts.slug: {} for facts in everything}
+    for members in groups.values():
+        for own_size, facts, _ in members:
+            near = sorted(
+                (abs(other_size - own_size), other.slug, remainder)
+                for other_size, other, remainder in members
+                if other is not facts and abs(other_size - own_size) <= _REACH
+            )
+            for model in MODELS:
+                values = [remainder[model] for *_, remainder in near if model in remainder]
+                if len(values) >= _FEWEST:
+                    shifts[facts.slug][model] = median(values[:_MOST])
+    return shifts
+
+
+def remainders(facts: Facts) -> Mapping[str, float]:
+    """ln(measured/foretold) of each model where both are known."""
+    measured = observed(facts)
+    return {
+        model: math.log(measured[model] / value)
+        for model, value in facts.structure.foretold.items()
+        if measured.get(model, 0.0) > 0
+    }
+
+
+def observed(facts: Facts) -> Mapping[str, float]:
+    """What the models foretell, as the tables have it: V at 20 °C, T_b [K], Onsager moment [D]."""
+    view, found = View(facts), {}
+    boils = view.middle(TB)
+    if math.isfinite(boils):
+        found["boiling_point"] = boils + ZERO_CELSIUS
+    mass = facts.structure.molecule.molar_mass
+    volumes = [
+        mass / float(view.density(source, ROOM))
+        for source in (*view.points("density"), *view.curves("density"))
+        if source.holds(ROOM, 40.0)
+    ]
+    volumes = [v for v in volumes if math.isfinite(v) and v > 0]
+    if not volumes:
+        return found
+    volume = found["molar_volume"] = median(volumes)
+    n = polarity.refractive_index_from_refraction(facts.structure.refraction, volume)
+    moments = [
+        float(polarity.onsager_dipole_moment(p.value, n, volume, p.temperature))
+        for p in view.points(EPS)
+        if math.isfinite(p.temperature)
+    ]
+    if moments and facts.structure.molecule.dipole_limit is None:
+        found["liquid_moment"] = median(moments)
+    return found
