@@ -123,9 +123,7 @@ def blamed(
     return tuple(found)
 
 
-def _worst(
-    view: View, now: list[Outcome], failed: list[Outcome], spreads: Spreads
-) -> Blame | None:
+def _worst(view: View, now: list[Outcome], failed: list[Outcome], spreads: Spreads) -> Blame | None:
     before = float(_total(_sums(now, spreads)))
     candidates = [c for c in view.facts.names() if any(c in o.members for o in failed)]
     trials = [_try(view, now, cell, spreads) for cell in candidates]
@@ -195,9 +193,7 @@ def _try(view: View, now: list[Outcome], cell: str, spreads: Spreads) -> _Trial:
     best = int(np.argmin(total[:plain]))
     slip, lowest = None, float(total[best])
     settled = _settled(touched, spreads, values.shape)
-    for suggestion, cost, fits in zip(
-        suggestions, total[plain:], settled[plain:], strict=True
-    ):
+    for suggestion, cost, fits in zip(suggestions, total[plain:], settled[plain:], strict=True):
         # A slip explains more than a free number; an odd slip explains little more.
         worth = float(cost) - _SLIP_BONUS + suggestion.rarity
         if fits and worth < lowest:
@@ -233,9 +229,7 @@ def _grid(point: Point, temperature: bool) -> Array:
         return np.concatenate([np.linspace(173.0, 573.0, 81), [point.temperature]])
     quantity = QUANTITIES[point.row.quantity]
     if quantity.unit == "degC":
-        return point.value + np.concatenate(
-            [np.linspace(-400, 400, 81), np.linspace(-40, 40, 81)]
-        )
+        return point.value + np.concatenate([np.linspace(-400, 400, 81), np.linspace(-40, 40, 81)])
     offset = 1.0 if quantity.key in ("relative_permittivity", "refractive_index") else 0.0
     level = max(abs(point.value - offset), 1e-3)
     near = np.exp(np.linspace(-0.6, 0.6, 121))

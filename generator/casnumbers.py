@@ -75,7 +75,9 @@ def slips(cas: str) -> tuple[str, ...]:
     swapped = (
         digits[:i] + digits[i + 1] + digits[i] + digits[i + 2 :] for i in range(len(digits) - 1)
     )
-    made = [f"{d[:-3]}-{d[-3:-1]}-{d[-1]}" for d in (*swapped, digits[:-1] + check_digit(digits[:-1]))]
+    made = [
+        f"{d[:-3]}-{d[-3:-1]}-{d[-1]}" for d in (*swapped, digits[:-1] + check_digit(digits[:-1]))
+    ]
     return tuple(dict.fromkeys(number for number in made if is_valid(number)))
 
 

@@ -96,7 +96,9 @@ def format_number(number: float, decimals: int) -> str:
     """A number with fixed decimals, or as a power of ten where those would show nothing of it."""
     if not math.isfinite(number):
         return ""
-    if number != 0 and (abs(number) < 10.0 ** (-decimals) / 2 or abs(number) >= 1e7 or decimals > 6):
+    if number != 0 and (
+        abs(number) < 10.0 ** (-decimals) / 2 or abs(number) >= 1e7 or decimals > 6
+    ):
         mantissa, exponent = f"{number:.1e}".split("e")
         return f"{mantissa}×10{str(int(exponent)).translate(_SUPER)}".replace("-", MINUS)
     return _plain(number, decimals)
