@@ -9,7 +9,7 @@ from generator.units import ZERO_CELSIUS
 
 
 def _value(handbook: Handbook, cas: str, key: str, celsius: float | None = None) -> float:
-    slug = next(s.solvent for s in handbook.dataset.solvents.values() if s.cas == cas)
+    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == cas)
     kelvin = None if celsius is None else celsius + ZERO_CELSIUS
     value = handbook.at(slug, key, kelvin)
     assert value is not None, (slug, key, celsius)
@@ -35,7 +35,7 @@ def test_permittivity_of_water_at_90_degrees(handbook: Handbook) -> None:
 
     from generator.reconcile import choose
 
-    slug = next(s.solvent for s in handbook.dataset.solvents.values() if s.cas == WATER)
+    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == WATER)
     liquid = handbook.liquid_range(slug)
     (found,) = choose(handbook.dataset, slug, "relative_permittivity", [363.15], liquid)
     assert found is not None
@@ -88,7 +88,7 @@ def test_densities_follow_reference_equations(handbook: Handbook, fluid: str) ->
         published = PropsSI("D", "T", kelvin, "P", 101325, fluid) / 1000
         found = _value(handbook, COOLPROP[fluid], "density", celsius)
         assert found == pytest.approx(published, rel=0.006), celsius
-    slug = next(s.solvent for s in handbook.dataset.solvents.values() if s.cas == COOLPROP[fluid])
+    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == COOLPROP[fluid])
     expansivity = handbook.at(slug, "thermal_expansivity")
     assert expansivity is not None
     published = PropsSI("isobaric_expansion_coefficient", "T", 298.15, "P", 101325, fluid)
@@ -110,7 +110,7 @@ def test_densities_follow_reference_equations(handbook: Handbook, fluid: str) ->
     ],
 )
 def test_streams_that_a_charged_rod_deflects(handbook: Handbook, cas: str, polar: bool) -> None:
-    slug = next(s.solvent for s in handbook.dataset.solvents.values() if s.cas == cas)
+    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == cas)
     assert handbook.is_polar(slug) == ("polar" if polar else "unpolar")
 
 
@@ -121,7 +121,7 @@ def test_times_of_one_oscillating_cell_at_two_temperatures(handbook: Handbook) -
     clearly when cooled; what trans gains stays below the resolution of one microsecond.
     """
     room_trans, cold_trans, room_cis, cold_cis = 17.0, 17.0, 29.0, 37.0
-    slugs = {s.cas: s.solvent for s in handbook.dataset.solvents.values()}
+    slugs = {s.cas: s.slug for s in handbook.dataset.solvents.values()}
     trans, cis = slugs["156-60-5"], slugs["156-59-2"]
     trans_room = _value(handbook, "156-60-5", "relative_permittivity", 20)
     cis_room = _value(handbook, "156-59-2", "relative_permittivity", 20)
@@ -147,7 +147,7 @@ def test_times_of_one_oscillating_cell_at_two_temperatures(handbook: Handbook) -
     ["71-43-2", "56-23-5", "75-15-0", "110-82-7", "156-60-5", "106-42-3", "127-18-4"],
 )
 def test_zero_moment_by_symmetry(handbook: Handbook, cas: str) -> None:
-    slug = next(s.solvent for s in handbook.dataset.solvents.values() if s.cas == cas)
+    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == cas)
     assert handbook.molecules[slug].zero_dipole
     assert _value(handbook, cas, "dipole_moment") == pytest.approx(0.0, abs=0.05)
 
