@@ -15,6 +15,8 @@ from generator.quantities import QUANTITIES
 from generator.tables import NOTE, Row, Tables, read_tables
 from generator.units import ZERO_CELSIUS, convert, convert_difference
 
+# What vacuum has: relative uncertainties are of what the liquid adds to it.
+_VACUUM = {"relative_permittivity": 1.0, "refractive_index": 1.0}
 # Printed temperatures in °C are compared to this many kelvin.
 _SAME = 0.005
 
@@ -139,7 +141,10 @@ class Handling:
 
 @dataclass(frozen=True, slots=True)
 class Usual:
-    """Customary standard uncertainty: ``absolute`` [the quantity's unit] + ``relative`` × value."""
+    """Customary standard uncertainty: ``absolute`` [the quantity's unit] + ``relative`` × value.
+
+    For the permittivity and the refractive index the value counts from 1, what vacuum has.
+    """
 
     absolute: float
     relative: float
@@ -177,7 +182,9 @@ class Dataset:
     def usual_uncertainty(self, kind: str, quantity: str, value: float) -> float | None:
         """Customary standard uncertainty [the quantity's unit] for a kind of source, or None."""
         usual = self.usual.get((kind, quantity))
-        return None if usual is None else usual.absolute + usual.relative * abs(value)
+        if usual is None:
+            return None
+        return usual.absolute + usual.relative * abs(value - _VACUUM.get(quantity, 0.0))
 
     def decision_on(self, row: Measurement | Correlation) -> Correction | None:
         """The correction that concerns a row of the tables, or None."""
