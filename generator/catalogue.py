@@ -185,12 +185,15 @@ def _rows(handbook: Handbook) -> dict[str, Rows]:
     }
 
 
-class _HasSolvent(Protocol):
+class _TableRow(Protocol):
     @property
     def solvent(self) -> str: ...
 
+    @property
+    def line(self) -> int: ...
 
-_Row = TypeVar("_Row", bound=_HasSolvent)
+
+_Row = TypeVar("_Row", bound=_TableRow)
 
 
 def _shared_out(slugs: Iterable[str], rows: Iterable[_Row]) -> list[tuple[_Row, ...]]:
@@ -206,7 +209,7 @@ def _owners(handbook: Handbook) -> dict[tuple[str, int], str]:
     """Which substance a row of a table belongs to."""
     dataset = handbook.dataset
     owners = {("solvents.csv", s.line): slug for slug, s in dataset.solvents.items()}
-    tables = {
+    tables: Mapping[str, Sequence[_TableRow]] = {
         "measurements.csv": dataset.measurements,
         "correlations.csv": dataset.correlations,
         "corrections.csv": dataset.corrections,

@@ -24,8 +24,8 @@ from generator.contexts import (
 from generator.metrics import POLAR_ABOVE, UNPOLAR_BELOW, Handbook
 from generator.provenance import KEY_VALUES, citations, curves, measured, numbering, trail
 from generator.quantities import QUANTITIES
-from generator.reconcile import Value
 from generator.structures import Molecule, drawing
+from generator.values import Value
 from generator.wording import (
     celsius,
     celsius_label,

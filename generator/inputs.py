@@ -7,26 +7,20 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from generator import polarity, thermal
-from generator.dataset import Dataset, Source
-from generator.quantities import MEASURED, QUANTITIES
-from generator.reconcile import (
-    CARRIED,
-    OUTSIDE_LIQUID_RANGE,
-    REACH,
+from generator.curves import (
     SHORTEST_SPAN,
-    LiquidRange,
-    Value,
-    choose,
-    choose_constant,
     curve_slope,
     curve_uncertainty,
     curve_values,
     line_through,
-    liquid_range,
     rank_curves,
     within,
 )
+from generator.dataset import Dataset, Source
+from generator.quantities import MEASURED, QUANTITIES
+from generator.reconcile import REACH, choose, choose_constant, liquid_range
 from generator.structures import Molecule
+from generator.values import CARRIED, OUTSIDE_LIQUID_RANGE, LiquidRange, Value
 
 STRUCTURE = "structure"
 # The source behind what follows from the molecular structure alone.

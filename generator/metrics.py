@@ -28,9 +28,9 @@ from generator.inputs import (
     union,
 )
 from generator.quantities import QUANTITIES
-from generator.reconcile import ASSOCIATED, LiquidRange, Value
 from generator.structures import Molecule, molecule
 from generator.units import ZERO_CELSIUS
+from generator.values import ASSOCIATED, LiquidRange, Value
 
 Array = NDArray[np.float64]
 

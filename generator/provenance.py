@@ -9,7 +9,8 @@ from generator.contexts import Citation, CurveRow, Link, SourceGroup, SourceValu
 from generator.dataset import Correction, Measurement
 from generator.metrics import Handbook
 from generator.quantities import QUANTITIES
-from generator.reconcile import Candidate, LiquidRange, decide
+from generator.reconcile import Candidate, decide
+from generator.values import LiquidRange
 from generator.wording import (
     celsius_label,
     printed_label,
@@ -46,8 +47,9 @@ def numbering(handbook: Handbook, slug: str, rows: Rows) -> dict[str, Link]:
     for key in KEY_VALUES:
         value = handbook.at(slug, key)
         keys.update(dict.fromkeys(value.sources if value else ()))
-    for row in (*rows.measurements, *rows.correlations, *rows.handling):
-        keys[row.source] = None
+    keys.update(dict.fromkeys(row.source for row in rows.measurements))
+    keys.update(dict.fromkeys(row.source for row in rows.correlations))
+    keys.update(dict.fromkeys(row.source for row in rows.handling))
     known = [key for key in keys if key in handbook.sources]
     return {key: Link(str(i), f"#source-{i}") for i, key in enumerate(known, start=1)}
 

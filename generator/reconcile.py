@@ -17,36 +17,30 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from statistics import median
 
-import numpy as np
-
-from generator import thermal
+from generator.curves import (
+    curve_slope,
+    curve_uncertainty,
+    curve_values,
+    line_through,
+    rank_curves,
+    within,
+)
 from generator.dataset import Correlation, Dataset, Measurement
 from generator.quantities import QUANTITIES
 from generator.uncertainty import weighted_mean
-from generator.units import ZERO_CELSIUS, convert, convert_difference
-
-EXTRAPOLATED = "extrapolated"
-OUTSIDE_LIQUID_RANGE = "outside-liquid-range"
-LOWER_BOUND = "lower-bound"
-USUAL = "usual"
-CARRIED = "carried"
-ASSOCIATED = "associated"
-CORRECTED = "corrected"
-# What each mark means, as pages and the data dictionary say it.
-MARKS = {
-    EXTRAPOLATED: "outside the stated range of its curve",
-    OUTSIDE_LIQUID_RANGE: "outside the liquid range",
-    LOWER_BOUND: "no uncertainty stated: rounding of the printed value only, a lower bound",
-    USUAL: "no uncertainty stated: the one customary for this kind of source stands in",
-    CARRIED: "measured at another temperature and taken unchanged, uncertainty widened",
-    ASSOCIATED: "the formula is not valid for associated liquids",
-    CORRECTED: "a published value was set aside or replaced, see the corrections",
-}
+from generator.units import ZERO_CELSIUS
+from generator.values import (
+    CARRIED,
+    CORRECTED,
+    EDGE,
+    EXTRAPOLATED,
+    LiquidRange,
+    Value,
+    uncertainty_of,
+)
 
 SAME_TEMPERATURE = 0.6  # K: 293 K, 20 °C and 293.2 K are one temperature
 REACH = 10.0  # K
-EDGE = 0.051  # K: printed ends of ranges are rounded
-SHORTEST_SPAN = 4.0  # K: temperatures closer together give no slope
 # A value of less weight than this does not hand its marks on.
 _SAYS_SOMETHING = 0.05
 # Usual relative slope by kelvin, to widen a value that is taken to another temperature unchanged.
@@ -63,36 +57,6 @@ _SLOPE_SHARE = 0.1
 _CALCULATED = "calculated"
 # Further out than this many times its own and the common spread, a value is set aside.
 _OUTLIER = 3.5
-
-
-@dataclass(frozen=True, slots=True)
-class Value:
-    """One number of the handbook with everything that must travel with it.
-
-    ``value`` and ``uncertainty`` (standard) are in the quantity's unit, ``temperature`` in kelvin
-    (None where the quantity has none). ``basis`` is measured, curve, computed or estimated.
-    """
-
-    quantity: str
-    value: float
-    uncertainty: float
-    temperature: float | None
-    basis: str
-    sources: tuple[str, ...]
-    marks: tuple[str, ...] = ()
-
-
-@dataclass(frozen=True, slots=True)
-class LiquidRange:
-    """Melting and boiling point [K], None where not known."""
-
-    low: float | None
-    high: float | None
-
-    def holds(self, temperature: float) -> bool:
-        """Whether the substance is liquid at ``temperature`` [K], as far as is known."""
-        above = self.low is None or temperature >= self.low - EDGE
-        return above and (self.high is None or temperature <= self.high + EDGE)
 
 
 def liquid_range(dataset: Dataset, solvent: str) -> LiquidRange:
@@ -143,77 +107,6 @@ class _Entry:
 
 
 _NOTHING = Decision(None, (), 0.0)
-
-
-def stated_or_usual(
-    dataset: Dataset, source: str, key: str, stated: float | None, value: float, floor: float
-) -> tuple[float, str | None]:
-    """Standard uncertainty [unit of ``key``] of a table entry, and its mark.
-
-    The stated one; else what is customary for the kind of source (table ``uncertainties``); else
-    the rounding half-width ``floor`` as a marked lower bound. Never below the rounding.
-    """
-    if stated is not None:
-        return stated, None
-    kind = dataset.sources[source].kind if source in dataset.sources else ""
-    usual = dataset.usual_uncertainty(kind, key, value)
-    if usual is None:
-        return floor, LOWER_BOUND
-    return max(usual, floor), USUAL
-
-
-def curve_values(curve: Correlation, temperatures: Sequence[float], key: str) -> tuple[float, ...]:
-    """A curve at ``temperatures`` [K], in the unit of quantity ``key``."""
-    raw = thermal.evaluate(curve.form, curve.coefficients, np.asarray(temperatures))
-    unit = QUANTITIES[key].unit
-    return tuple(convert(float(y), curve.unit, unit) for y in np.atleast_1d(raw))
-
-
-def curve_slope(curve: Correlation, temperature: float, key: str) -> float:
-    """Slope of a curve at ``temperature`` [K], in the unit of quantity ``key`` per kelvin."""
-    raw = float(thermal.derivative(curve.form, curve.coefficients, temperature))
-    return convert_difference(raw, curve.unit, QUANTITIES[key].unit)
-
-
-def curve_uncertainty(
-    dataset: Dataset, curve: Correlation, value: float
-) -> tuple[float, str | None]:
-    """Standard uncertainty [the quantity's unit] of a curve where it gives ``value``, and its mark.
-
-    Where none is stated, the distance from the points of the same quantity inside its range
-    counts as well, if it is larger than what is usual for the kind of source.
-    """
-    quantity = QUANTITIES[curve.quantity]
-    if curve.uncertainty is not None:
-        return convert_difference(curve.uncertainty, curve.unit, quantity.unit), None
-    own, mark = stated_or_usual(
-        dataset, curve.source, curve.quantity, None, value, 0.5 * 10.0**-quantity.decimals
-    )
-    points = [
-        p
-        for p in dataset.measurements_of(curve.solvent, curve.quantity)
-        if p.temperature is not None and within(curve, p.temperature)
-    ]
-    if points:
-        at = curve_values(curve, [_kelvin(p) for p in points], curve.quantity)
-        own = max(own, median(abs(p.value - y) for p, y in zip(points, at, strict=True)))
-    return own, mark
-
-
-def within(curve: Correlation, temperature: float, reach: float = EDGE) -> bool:
-    """Whether ``temperature`` [K] lies in the curve's range, give or take ``reach`` [K]."""
-    return curve.t_min - reach <= temperature <= curve.t_max + reach
-
-
-def rank_curves(dataset: Dataset, solvent: str, key: str) -> tuple[Correlation, ...]:
-    """Curves, best first: the laboratory's own, then stated uncertainty, then table order."""
-
-    def rank(curve: Correlation) -> tuple[bool, bool]:
-        source = dataset.sources.get(curve.source)
-        own = source is not None and source.kind == "laboratory"
-        return (not own, curve.uncertainty is None)
-
-    return tuple(sorted(dataset.correlations_of(solvent, key), key=rank))
 
 
 def choose_constant(dataset: Dataset, solvent: str, key: str) -> Value | None:
@@ -287,14 +180,7 @@ def _around(
 
 
 def _at_rest(dataset: Dataset, point: Measurement) -> _Entry:
-    own, mark = stated_or_usual(
-        dataset,
-        point.source,
-        point.quantity,
-        point.uncertainty,
-        point.value,
-        point.half_width,
-    )
+    own, mark = uncertainty_of(dataset, point)
     marks = [m for m in (mark, CORRECTED if point.correction is not None else None) if m]
     return _Entry(point, point.value, own, "as published", tuple(marks))
 
@@ -337,20 +223,6 @@ def _moved(
 ) -> _Entry:
     uncertainty = math.hypot(entry.uncertainty, added)
     return _Entry(entry.origin, value, uncertainty, remark, (*entry.marks, *marks))
-
-
-def line_through(
-    dataset: Dataset, points: Sequence[Measurement], temperature: float
-) -> thermal.LineFit | None:
-    """A straight line through points whose temperatures reach around ``temperature`` [K]."""
-    timed = [p for p in points if p.temperature is not None]
-    at = [_kelvin(p) for p in timed]
-    if not at or max(at) - min(at) < SHORTEST_SPAN:
-        return None
-    if not min(at) - EDGE <= temperature <= max(at) + EDGE:
-        return None
-    own = [_at_rest(dataset, p).uncertainty for p in timed]
-    return thermal.fit_line(at, [p.value for p in timed], own)
 
 
 def _of_curve(

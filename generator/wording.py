@@ -10,27 +10,26 @@ from functools import lru_cache
 
 from markupsafe import Markup, escape
 
-from generator import reconcile
+from generator import values
 from generator.contexts import Link, Mark, Number
 from generator.quantities import QUANTITIES, Quantity
-from generator.reconcile import Value
 from generator.uncertainty import format_value
 from generator.units import ZERO_CELSIUS
+from generator.values import Value
 
 MINUS = "\u2212"
 # The letter beside a number in a table, and the word for it where there is room for a word.
 _LETTERS = {
-    reconcile.EXTRAPOLATED: ("x", "extrapolated"),
-    reconcile.OUTSIDE_LIQUID_RANGE: ("o", "not liquid"),
-    reconcile.LOWER_BOUND: ("r", "rounding only"),
-    reconcile.USUAL: ("u", "customary"),
-    reconcile.CARRIED: ("t", "other temperature"),
-    reconcile.ASSOCIATED: ("a", "associated"),
-    reconcile.CORRECTED: ("c", "corrected"),
+    values.EXTRAPOLATED: ("x", "extrapolated"),
+    values.OUTSIDE_LIQUID_RANGE: ("o", "not liquid"),
+    values.LOWER_BOUND: ("r", "rounding only"),
+    values.USUAL: ("u", "customary"),
+    values.CARRIED: ("t", "other temperature"),
+    values.ASSOCIATED: ("a", "associated"),
+    values.CORRECTED: ("c", "corrected"),
 }
 MARKS = tuple(
-    Mark(key, *_LETTERS.get(key, (key[0], key)), meaning)
-    for key, meaning in reconcile.MARKS.items()
+    Mark(key, *_LETTERS.get(key, (key[0], key)), meaning) for key, meaning in values.MARKS.items()
 )
 _EXPONENTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _UNIT_WORDS = {"degC": "°C", "degF": "°F", "1": ""}

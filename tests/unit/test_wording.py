@@ -10,8 +10,8 @@ import pytest
 
 from generator.contexts import Link
 from generator.quantities import QUANTITIES
-from generator.reconcile import MARKS as MEANINGS
-from generator.reconcile import Value
+from generator.values import MARKS as MEANINGS
+from generator.values import Value
 from generator.wording import (
     MARKS,
     aligned,
