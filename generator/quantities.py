@@ -102,13 +102,13 @@ _ALL = (
         needs_temperature=False,
     ),
     _measured(
-        "melting_point", "Melting point", "t_m", "degC", 1, (-230.0, 400.0),
+        "melting_point", "Melting point", "t_m", "degC", 1, (-273.15, 600.0),
         "Temperature at which solid and liquid are in equilibrium at 1 atm.",
         "Lower end of the liquid range used everywhere in the handbook.",
         needs_temperature=False,
     ),
     _measured(
-        "boiling_point", "Boiling point", "t_b", "degC", 1, (-200.0, 600.0),
+        "boiling_point", "Boiling point", "t_b", "degC", 1, (-273.15, 750.0),
         "Temperature at which the vapour pressure reaches 1 atm (101.325 kPa).",
         "Upper end of the liquid range used everywhere in the handbook.",
         needs_temperature=False,

@@ -1,12 +1,13 @@
 """Physical constants with their authority, and conversion between units of one dimension.
 
-Pint does the parsing and converting; it is imported only when a table holds a unit that is not
-already the one the handbook works in, because its import alone takes a third of a second.
+The units that nearly all tables use are known here with their exact factors. Pint reads every
+other spelling; it is imported only when one is met, because its import takes a third of a second.
 """
 
 from __future__ import annotations
 
 import re
+from fractions import Fraction
 from functools import lru_cache
 from typing import TYPE_CHECKING, Any
 
@@ -47,6 +48,21 @@ _SPELLINGS = {
     "Torr": "torr",
     "%": "percent",
 }
+# Spelling Pint reads → dimension, and the exact slope and offset that lead to the first unit of it.
+_EXACT = {
+    "dimensionless": ("number", Fraction(1), Fraction(0)),
+    "debye": ("dipole moment", Fraction(1), Fraction(0)),
+    "K": ("temperature", Fraction(1), Fraction(0)),
+    "degC": ("temperature", Fraction(1), Fraction("273.15")),
+    "degF": ("temperature", Fraction(5, 9), Fraction("459.67") * Fraction(5, 9)),
+    "kg/m**3": ("density", Fraction(1), Fraction(0)),
+    "g/cm**3": ("density", Fraction(1000), Fraction(0)),
+    "S/m": ("conductivity", Fraction(1), Fraction(0)),
+    "pascal*second": ("viscosity", Fraction(1), Fraction(0)),
+    "millipascal*second": ("viscosity", Fraction(1, 1000), Fraction(0)),
+    "Pa": ("pressure", Fraction(1), Fraction(0)),
+    "kPa": ("pressure", Fraction(1000), Fraction(0)),
+}
 _POWER = re.compile(r"(?<=[A-Za-zµμ])(-?\d+)")
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻", "0123456789-")
 
@@ -78,13 +94,15 @@ def _parsed(unit: str) -> pint.Unit | None:
 
 def is_known(unit: str) -> bool:
     """Whether ``unit`` can be read as a unit."""
-    return _parsed(unit) is not None
+    return _spelling(unit) in _EXACT or _parsed(unit) is not None
 
 
+@lru_cache(maxsize=512)
 def same_dimension(unit: str, to: str) -> bool:
     """Whether both can be read and measure the same kind of thing."""
-    if unit == to:
-        return True
+    one, other = _EXACT.get(_spelling(unit)), _EXACT.get(_spelling(to))
+    if one and other:
+        return one[0] == other[0]
     left, right = _parsed(unit), _parsed(to)
     return left is not None and right is not None and left.dimensionality == right.dimensionality
 
@@ -92,6 +110,9 @@ def same_dimension(unit: str, to: str) -> bool:
 @lru_cache(maxsize=4096)
 def _line(unit: str, to: str) -> tuple[float, float]:
     """Slope and offset of the straight line that turns ``unit`` into ``to``."""
+    one, other = _EXACT.get(_spelling(unit)), _EXACT.get(_spelling(to))
+    if one and other and one[0] == other[0]:
+        return float(one[1] / other[1]), float((one[2] - other[2]) / other[1])
     left, right = _parsed(unit), _parsed(to)
     if left is None or right is None:
         raise ValueError(f"not a unit: {unit if left is None else to!r}")

@@ -1,5 +1,9 @@
 """Constants against CODATA, and conversions between units as laboratories type them."""
 
+import subprocess
+import sys
+
+import pint
 import pytest
 import scipy.constants as codata
 from hypothesis import given
@@ -66,6 +70,46 @@ def test_wrong_dimension_and_nonsense_are_told_apart() -> None:
         units.convert(1.0, "S/m", "g/cm3")
     with pytest.raises(ValueError, match="not a unit"):
         units.convert(1.0, "quux", "g/cm3")
+
+
+# Unit as tables spell it → as Pint spells it.
+COMMON = {
+    "1": "dimensionless",
+    "D": "debye",
+    "K": "kelvin",
+    "degC": "degree_Celsius",
+    "degF": "degree_Fahrenheit",
+    "kg/m3": "kilogram/meter**3",
+    "g/cm3": "gram/centimeter**3",
+    "S/m": "siemens/meter",
+    "Pa s": "pascal*second",
+    "mPa s": "millipascal*second",
+    "Pa": "pascal",
+    "kPa": "kilopascal",
+}
+PINT: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=True)
+
+
+@pytest.mark.parametrize("to", COMMON)
+@pytest.mark.parametrize("unit", COMMON)
+def test_exact_factors_are_those_of_pint(unit: str, to: str) -> None:
+    one, other = PINT.Unit(COMMON[unit]), PINT.Unit(COMMON[to])
+    same = one.dimensionality == other.dimensionality
+    assert units.same_dimension(unit, to) == same
+    if same:
+        theirs = PINT.Quantity(7.0, one).to(other).magnitude
+        assert units.convert(7.0, unit, to) == pytest.approx(theirs, rel=1e-14, abs=1e-12)
+
+
+def test_common_units_need_no_pint() -> None:
+    code = (
+        "import sys; from generator import units; "
+        f"known = [units.is_known(unit) for unit in {list(COMMON)}]; "
+        "assert all(known); assert units.convert(500.0, 'kg/m3', 'g/cm3') == 0.5; "
+        "assert units.convert(68.0, 'degF', '°C') == 20.0; "
+        "assert 'pint' not in sys.modules"
+    )
+    subprocess.run([sys.executable, "-c", code], check=True)
 
 
 @given(st.floats(1e-6, 1e6))
