@@ -148,8 +148,8 @@ class Handbook:
             return None
         values, spreads = self._results[key]
         index = self._index[solvent]
-        value = float(values[index, column])
-        if not math.isfinite(value):
+        value, spread = float(values[index, column]), float(spreads[index, column])
+        if not (math.isfinite(value) and math.isfinite(spread)):
             return None
         inputs = [row.constants.get(k) or row.chosen[k][column] for k in self._used(solvent, key)]
         known = [v for v in inputs if v is not None]
@@ -160,7 +160,7 @@ class Handbook:
         return Value(
             key,
             value,
-            float(spreads[index, column]),
+            spread,
             row.temperatures[column],
             basis,
             union(v.sources for v in known),

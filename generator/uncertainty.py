@@ -17,6 +17,8 @@ Array = NDArray[np.float64]
 SAMPLES = 512
 # Standard uncertainty of a value known only to lie within ± a: a/√3 (JCGM 100, 4.3.7).
 RECTANGULAR = 1 / math.sqrt(3)
+# Probabilities between which a normal distribution has ± one standard deviation.
+_CENTRAL = (0.15865525393145707, 0.8413447460685429)
 
 
 @lru_cache(maxsize=32)
@@ -55,8 +57,33 @@ def draw(value: ArrayLike, uncertainty: ArrayLike, index: int, low: float, high:
 
 
 def spread(samples: Array) -> Array:
-    """Standard uncertainty [as samples] about the mean over the last axis, NaN kept."""
-    return np.std(samples, axis=-1, ddof=1)
+    """Standard uncertainty [as samples] over the last axis: half the central 68.27 % interval.
+
+    For a normal distribution that is the standard deviation. It stays finite and meaningful where
+    a quotient or a bound leaves the distribution long tails and no usable standard deviation
+    (JCGM 101:2008, 7.7: the interval is what a sampled distribution gives). Samples without a
+    value (NaN) are left out; where they are the majority the result is NaN.
+    """
+    samples = np.asarray(samples, dtype=np.float64)
+    count = samples.shape[-1] - np.isnan(samples).sum(axis=-1)
+    result = np.full(samples.shape[:-1], np.nan)
+    usable = 2 * count > samples.shape[-1]
+    ordered = np.sort(samples[usable], axis=-1)  # NaN comes last
+    low, high = (_quantile(ordered, count[usable], p) for p in _CENTRAL)
+    result[usable] = (high - low) / 2
+    return result
+
+
+def _quantile(ordered: Array, count: NDArray[np.int_], probability: float) -> Array:
+    """Quantile of the first ``count`` samples in order, each standing for its own slice."""
+    position = np.clip(probability * count - 0.5, 0, count - 1)
+    below = np.floor(position).astype(int)
+    above = np.minimum(below + 1, count - 1)
+    share = position - below
+    left, right = (
+        np.take_along_axis(ordered, i[:, np.newaxis], axis=-1)[:, 0] for i in (below, above)
+    )
+    return np.asarray(left + share * (right - left))
 
 
 def weighted_mean(value: ArrayLike, uncertainty: ArrayLike) -> tuple[float, float, float]:

@@ -4,7 +4,9 @@ import math
 
 import pytest
 
+from generator.curves import curve_uncertainty, curve_values
 from generator.metrics import Handbook
+from generator.reconcile import choose
 from generator.units import ZERO_CELSIUS
 
 
@@ -19,27 +21,26 @@ def _value(handbook: Handbook, cas: str, key: str, celsius: float | None = None)
 WATER = "7732-18-5"
 
 
-@pytest.mark.parametrize("celsius", [0, 10, 20, 25, 30, 40, 50, 60, 80])
+@pytest.mark.parametrize("celsius", [0.01, 10, 20, 25, 30, 40, 50, 60, 70, 80, 90])
 def test_permittivity_of_water_follows_iapws_r8_97(handbook: Handbook, celsius: float) -> None:
+    from iapws import IAPWS95
     from iapws._iapws import _Dielectric  # IAPWS R8-97, as implemented by PyPI iapws
 
-    density = _value(handbook, WATER, "density", celsius) * 1000
-    published = _Dielectric(density, celsius + ZERO_CELSIUS)
-    found = _value(handbook, WATER, "relative_permittivity", celsius)
-    # The handbook curve is a quadratic of the CRC tables, printed as good to 0.3 %.
-    assert found == pytest.approx(published, rel=0.003)
-
-
-def test_permittivity_of_water_at_90_degrees(handbook: Handbook) -> None:
-    from iapws._iapws import _Dielectric
-
-    from generator.reconcile import choose
-
-    slug = next(s.slug for s in handbook.dataset.solvents.values() if s.cas == WATER)
-    liquid = handbook.liquid_range(slug)
-    (found,) = choose(handbook.dataset, slug, "relative_permittivity", [363.15], liquid)
+    kelvin = celsius + ZERO_CELSIUS
+    published = _Dielectric(IAPWS95(T=kelvin, P=0.101325).rho, kelvin)
+    liquid = handbook.liquid_range("water")
+    (found,) = choose(handbook.dataset, "water", "relative_permittivity", [kelvin], liquid)
     assert found is not None
-    assert found.value == pytest.approx(_Dielectric(965.3, 363.15), rel=0.003)
+    assert found.value == pytest.approx(published, rel=0.0005)
+    assert abs(found.value - published) < found.uncertainty
+    # The handbook table's own curve, which does not come from the release.
+    (table,) = (
+        c
+        for c in handbook.dataset.correlations_of("water", "relative_permittivity")
+        if c.source == "crc-permittivity"
+    )
+    (own,) = curve_values(table, [kelvin], "relative_permittivity")
+    assert abs(own - published) < curve_uncertainty(handbook.dataset, table, own)[0]
 
 
 @pytest.mark.parametrize("celsius", [0, 10, 20, 25, 30, 40, 60, 80])
