@@ -17,21 +17,11 @@ from pathlib import Path
 from generator import library, structures
 from generator.errors import DatasetError, Problem
 from generator.library import Entry
+from generator.schema import DESCRIPTION, shipped_file, shipped_schema
 
 Row = Mapping[str, str]
-# Columns of a table that does not exist yet; an existing file keeps its own.
-COLUMNS: Mapping[str, tuple[str, ...]] = {
-    "solvents": ("solvent", "name", "cas", "smiles", "synonyms", "note"),
-    "measurements": (
-        "solvent", "quantity", "value", "unit", "uncertainty", "temperature_c", "source",
-        "method", "note",
-    ),
-    "correlations": (
-        "solvent", "quantity", "form", "unit", "coefficients", "t_min_c", "t_max_c",
-        "uncertainty", "source",
-    ),
-    "sources": ("source", "kind", "citation", "year", "doi"),
-}  # fmt: skip
+# Comes filled into a new folder: without it no value would have an honest uncertainty.
+_UNCERTAINTIES = "uncertainties.csv"
 _GREEK = {
     "α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ε": "epsilon", "ω": "omega",
     "±": "",
@@ -97,7 +87,8 @@ class _File:
 
     @classmethod
     def read(cls, folder: Path, table: str) -> _File:
-        file = cls(folder / f"{table}.csv", columns=COLUMNS[table])
+        expected = shipped_schema()[table].columns
+        file = cls(folder / f"{table}.csv", columns=expected)
         if not file.path.exists():
             return file
         data = file.path.read_bytes()
@@ -110,10 +101,10 @@ class _File:
         file.delimiter = max(",;\t", key=header.count)
         text = io.StringIO(file.content.removeprefix(_BOM), newline="")
         reader = csv.DictReader(text, delimiter=file.delimiter)
-        file.columns = tuple((name or "").strip() for name in reader.fieldnames or COLUMNS[table])
+        file.columns = tuple((name or "").strip() for name in reader.fieldnames or expected)
         reader.fieldnames = list(file.columns)
         file.rows = [{k: (v or "").strip() for k, v in row.items() if k} for row in reader]
-        missing = [name for name in COLUMNS[table] if name not in file.columns]
+        missing = [name for name in expected if name not in file.columns]
         if missing:
             raise DatasetError(
                 [
@@ -194,6 +185,8 @@ def apply(plan: Plan) -> None:
     """Append the planned rows. Raises ``ValueError`` for a plan with refusals.
 
     Every file is made ready before the first is written, so that a fault leaves all untouched.
+    A folder without a description becomes a complete one: description, empty tables, and the
+    customary uncertainties.
     """
     if plan.refusals:
         raise ValueError("a name is in doubt; nothing is written")
@@ -204,11 +197,26 @@ def apply(plan: Plan) -> None:
         file = _File.read(plan.folder, table)
         if rows or not file.path.exists():
             ready[file.path] = file.with_appended(rows)
+    if not (plan.folder / DESCRIPTION).exists():
+        ready = {**_start(plan.folder), **ready}
     plan.folder.mkdir(parents=True, exist_ok=True)
     for path, content in ready.items():
         draft = path.with_name(path.name + ".new")
         draft.write_bytes(content)
         draft.replace(path)
+
+
+def _start(folder: Path) -> dict[Path, bytes]:
+    """The files that a new folder lacks, each with what it starts with."""
+    paths = [folder / DESCRIPTION, *(folder / table.path for table in shipped_schema().values())]
+    whole = (DESCRIPTION, _UNCERTAINTIES)
+    return {
+        path: shipped_file(path.name)
+        if path.name in whole
+        else _File.read(folder, path.stem).with_appended(())
+        for path in paths
+        if not path.exists()
+    }
 
 
 def _resolved(names: Iterable[str]) -> tuple[dict[str, Entry], list[Refusal]]:

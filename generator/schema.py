@@ -5,14 +5,14 @@ from __future__ import annotations
 import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from pathlib import Path
 from typing import Any
 
 from generator.errors import DatasetError, Problem
 
 DESCRIPTION = "datapackage.json"
-# A new folder of tables starts with the description of the shipped ones.
-_SHIPPED = Path(__file__).parents[1] / "data" / DESCRIPTION
+_SHIPPED = Path(__file__).parents[1] / "data"
 
 
 @dataclass(frozen=True, slots=True)
@@ -101,9 +101,15 @@ def read_schema(package: Mapping[str, Any]) -> dict[str, TableSchema]:
     return {resource["name"]: _table(resource) for resource in package["resources"]}
 
 
-def shipped_description() -> bytes:
-    """The description a new folder of tables starts with."""
-    return _SHIPPED.read_bytes()
+def shipped_file(name: str) -> bytes:
+    """One of the shipped files, as a new folder of tables starts with it."""
+    return (_SHIPPED / name).read_bytes()
+
+
+@lru_cache(maxsize=1)
+def shipped_schema() -> Mapping[str, TableSchema]:
+    """The shipped tables, by name, in the order of their description."""
+    return read_schema(read_package(_SHIPPED))
 
 
 def _table(resource: Mapping[str, Any]) -> TableSchema:

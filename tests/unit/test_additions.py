@@ -11,7 +11,9 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from generator import additions
+from generator.dataset import load_dataset
 from generator.errors import DatasetError
+from generator.schema import DESCRIPTION, shipped_file, shipped_schema
 
 
 def _read(path: Path, delimiter: str = ",", encoding: str = "utf-8") -> list[dict[str, str]]:
@@ -41,6 +43,27 @@ def test_an_empty_folder_gets_its_tables(tmp_path: Path) -> None:
         assert {row["solvent"] for row in rows} == {"acetone", "tetrahydrofuran"}
         assert {row["source"] for row in rows} <= sources
         assert all(None not in row and None not in row.values() for row in rows)
+
+
+def test_a_new_folder_is_complete(tmp_path: Path) -> None:
+    folder = tmp_path / "mine" / "tables"
+    _add(folder, "acetone")
+    tables = {table.path for table in shipped_schema().values()}
+    assert set(_bytes(folder)) == {DESCRIPTION, *tables}
+    assert (folder / DESCRIPTION).read_bytes() == shipped_file(DESCRIPTION)
+    assert (folder / "stock.csv").read_text() == f"{','.join(shipped_schema()['stock'].columns)}\n"
+    dataset = load_dataset(folder)
+    assert list(dataset.solvents) == ["acetone"]
+    assert dataset.usual_uncertainty("handbook-table", "relative_permittivity", 20.0)
+
+
+def test_what_a_folder_has_stays(tmp_path: Path) -> None:
+    (tmp_path / "uncertainties.csv").write_text("kind,quantity,absolute,relative,reason\n")
+    _add(tmp_path, "acetone")
+    assert (tmp_path / "uncertainties.csv").read_text().count("\n") == 1
+    (tmp_path / "stock.csv").unlink()
+    _add(tmp_path, "toluene")
+    assert not (tmp_path / "stock.csv").exists(), "a table gone missing is for the check to report"
 
 
 def test_a_plan_writes_nothing(tmp_path: Path) -> None:
@@ -111,7 +134,7 @@ def test_slugs_are_readable(name: str, slug: str) -> None:
     assert additions.slug(name) == slug
 
 
-_HEADER = list(additions.COLUMNS["measurements"])
+_HEADER = list(shipped_schema()["measurements"].columns)
 _TYPED = ["acetone", "viscosity", "0.31", "mPa s", "0.01", "25", "own", "", "Ørsted, 2,5 % „rest“"]
 
 
@@ -185,7 +208,7 @@ def test_typed_rows_survive_whatever_they_hold(
     path = folder / "solvents.csv"
     with path.open("w", encoding="utf-8", newline="") as file:
         writer = csv.writer(file)
-        writer.writerow(additions.COLUMNS["solvents"])
+        writer.writerow(shipped_schema()["solvents"].columns)
         for i, (name, note) in enumerate(cells):
             writer.writerow([f"own-{i}", name, "", "C", "", note])
     before = path.read_bytes()
