@@ -16,11 +16,13 @@ import csv
 import json
 from dataclasses import dataclass
 from functools import lru_cache
+from importlib.metadata import version
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from generator.cache import digest
 from generator.conformers import Shapes, shapes
 from generator.units import DEBYE, ELEMENTARY_CHARGE
 
@@ -331,6 +333,14 @@ def _increments() -> dict[str, tuple[float, int]]:
             row["key"]: (float(row["increment"]), int(row["molecules"]))
             for row in csv.DictReader(file)
         }
+
+
+@lru_cache(maxsize=1)
+def fingerprint() -> str:
+    """Hash of everything an estimate depends on beside the structure: the model and its code."""
+    here = Path(__file__)
+    files = (here, here.with_name("conformers.py"), MODEL_FOLDER / "increments.csv")
+    return digest(version("rdkit"), *(file.read_bytes() for file in files))
 
 
 @lru_cache(maxsize=1)

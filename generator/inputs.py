@@ -6,7 +6,8 @@ import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from generator import polarity, thermal
+from generator import estimates, polarity, thermal
+from generator.cache import Cache
 from generator.curves import (
     SHORTEST_SPAN,
     curve_slope,
@@ -20,7 +21,7 @@ from generator.dataset import Dataset, Source
 from generator.quantities import MEASURED, QUANTITIES
 from generator.reconcile import REACH, choose, choose_constant, liquid_range
 from generator.structures import Molecule
-from generator.values import CARRIED, OUTSIDE_LIQUID_RANGE, LiquidRange, Value
+from generator.values import CARRIED, ESTIMATED, OUTSIDE_LIQUID_RANGE, LiquidRange, Value
 
 STRUCTURE = "structure"
 # The source behind what follows from the molecular structure alone.
@@ -28,7 +29,8 @@ STRUCTURE_SOURCE = Source(
     STRUCTURE,
     "calculated",
     "Worked out from the structure: IUPAC standard atomic weights (Prohaska et al., Pure Appl. "
-    "Chem. 94, 573, 2022); a dipole moment of zero follows from symmetry.",
+    "Chem. 94, 573, 2022); a dipole moment of zero follows from symmetry, an estimated one from "
+    "bond increments calibrated on measured moments (see the methods page).",
     2022,
     "10.1515/pac-2019-0603",
     0,
@@ -36,14 +38,10 @@ STRUCTURE_SOURCE = Source(
 
 # A moment below this is no moment that the permittivity could show (alkanes, [D]).
 NO_MOMENT = 0.1
-# Where no density curve is known: α = 0.31/(1.6 t_b − T), the shape of the Rackett equation with
-# the critical temperature taken as 1.6 boiling points; the spread is what it misses measured
-# expansivities by on the handbook's own liquids (a test holds both numbers against the data).
-_EXPANSION_FACTOR = 0.31
-_CRITICAL_TO_BOILING = 1.6
-EXPANSION_SPREAD = 0.20
-# Density curves of one liquid differ by some 3 % in slope.
+# Density curves of one liquid differ by some 3 % in slope; one worked out from a single density
+# by 5 %, by far more where hydrogen bonds change the shape.
 _CURVE_EXPANSION_SPREAD = 0.03
+_ONE_POINT_EXPANSION_SPREAD = {False: 0.05, True: 0.25}
 # Share of a temperature shift of n that constant molar refraction gets wrong.
 _REFRACTION_SHARE = 0.1
 
@@ -95,17 +93,29 @@ def choose_inputs(
     structure: Molecule,
     reference: float,
     listed: tuple[float, ...],
+    cache: Cache,
 ) -> Row:
-    """Every input of one substance at ``listed`` [K] and at its own reference temperature."""
+    """Every input of one substance at ``listed`` [K] and at its own reference temperature.
+
+    ``cache`` keeps what is estimated from the structure.
+    """
     liquid = liquid_range(dataset, slug)
     own = _own_reference(dataset, slug, reference, listed, liquid)
     temperatures = (*listed, own)
-    constants = _constants(dataset, slug, structure)
+    constants = _constants(dataset, slug, structure, cache)
     chosen = {key: list(choose(dataset, slug, key, temperatures, liquid)) for key in TIMED}
     if not liquid.holds(own):
         _fill_outside(dataset, slug, chosen, own)
     chosen[_N] = _refractive_index(dataset, slug, constants[_M], chosen, temperatures, liquid)
-    chosen[_ALPHA] = [_expansivity(dataset, slug, v, liquid) for v in chosen[_RHO]]
+    chosen[_ALPHA] = [
+        _expansivity(dataset, slug, v, liquid, associated=structure.is_associated)
+        for v in chosen[_RHO]
+    ]
+    if not dataset.measurements_of(slug, _EPS) and not dataset.correlations_of(slug, _EPS):
+        chosen[_EPS] = [
+            _estimated_permittivity(structure, constants, n, rho)
+            for n, rho in zip(chosen[_N], chosen[_RHO], strict=True)
+        ]
     fixed = {key: tuple(values) for key, values in chosen.items()}
     slopes = tuple(
         _trend(dataset, slug, v, t) for v, t in zip(fixed[_EPS], temperatures, strict=True)
@@ -143,7 +153,7 @@ def _fill_outside(
             values[-1] = replace(value, marks=(*value.marks, OUTSIDE_LIQUID_RANGE))
 
 
-def _constants(dataset: Dataset, slug: str, structure: Molecule) -> dict[str, Value]:
+def _constants(dataset: Dataset, slug: str, structure: Molecule, cache: Cache) -> dict[str, Value]:
     constants = {
         key: value for key in CONSTANT if (value := choose_constant(dataset, slug, key)) is not None
     }
@@ -152,7 +162,31 @@ def _constants(dataset: Dataset, slug: str, structure: Molecule) -> dict[str, Va
     constants[_M] = Value(_M, mass, 2e-5 * mass, None, "computed", (STRUCTURE,))
     if structure.zero_dipole:
         constants[_MU] = _no_moment(constants.get(_MU))
+    elif _MU not in constants:
+        estimate = estimates.dipole_moment(structure, cache)
+        if estimate is not None:
+            constants[_MU] = Value(_MU, *estimate, None, "estimated", (STRUCTURE,), (ESTIMATED,))
     return constants
+
+
+def _estimated_permittivity(
+    structure: Molecule, constants: Mapping[str, Value], index: Value | None, density: Value | None
+) -> Value | None:
+    """ε where no source has any, from what else is known."""
+    moment = constants.get(_MU)
+    if moment is None or index is None or density is None or density.temperature is None:
+        return None
+    estimate = estimates.permittivity(
+        structure,
+        (moment.value, moment.uncertainty),
+        (index.value, index.uncertainty),
+        constants[_M].value / density.value,
+        density.temperature,
+    )
+    if estimate is None:
+        return None
+    sources = union(v.sources for v in (moment, index, density))
+    return Value(_EPS, *estimate, density.temperature, "estimated", sources, (ESTIMATED,))
 
 
 def _no_moment(measured: Value | None) -> Value:
@@ -202,7 +236,7 @@ def _refractive_index(
 
 
 def _expansivity(
-    dataset: Dataset, slug: str, density: Value | None, liquid: LiquidRange
+    dataset: Dataset, slug: str, density: Value | None, liquid: LiquidRange, *, associated: bool
 ) -> Value | None:
     """Thermal expansivity at the temperature of a density: curve, points, or an estimate."""
     if density is None or density.temperature is None:
@@ -212,7 +246,11 @@ def _expansivity(
         if within(curve, temperature):
             (rho,) = curve_values(curve, [temperature], _RHO)
             alpha = -curve_slope(curve, temperature, _RHO) / rho
-            spread = _CURVE_EXPANSION_SPREAD * abs(alpha)
+            one_point = dataset.sources[curve.source].kind == "calculated"
+            share = (
+                _ONE_POINT_EXPANSION_SPREAD[associated] if one_point else _CURVE_EXPANSION_SPREAD
+            )
+            spread = share * abs(alpha)
             return Value(_ALPHA, alpha, spread, temperature, "computed", (curve.source,))
     points = [p for p in dataset.measurements_of(slug, _RHO) if p.temperature is not None]
     line = line_through(dataset, points, temperature)
@@ -223,22 +261,14 @@ def _expansivity(
     boiling = choose_constant(dataset, slug, "boiling_point")
     if liquid.high is None or boiling is None:
         return None
-    alpha = estimated_expansivity(liquid.high, temperature)
-    spread = EXPANSION_SPREAD * alpha
-    return Value(_ALPHA, alpha, spread, temperature, "estimated", boiling.sources)
-
-
-def estimated_expansivity(boiling: float, temperature: float) -> float:
-    """Thermal expansivity [1/K] of a liquid of which only the boiling point is known.
-
-    ``boiling`` [K], ``temperature`` [K].
-    """
-    return _EXPANSION_FACTOR / (_CRITICAL_TO_BOILING * boiling - temperature)
+    alpha = estimates.expansivity(liquid.high, temperature)
+    spread = estimates.EXPANSION_SPREAD * alpha
+    return Value(_ALPHA, alpha, spread, temperature, "estimated", boiling.sources, (ESTIMATED,))
 
 
 def _trend(dataset: Dataset, slug: str, value: Value | None, temperature: float) -> Trend:
     """Slope of ε at ``temperature`` [K], or at the end of its curve's range where that is near."""
-    if value is None:
+    if value is None or value.basis == "estimated":
         return _UNKNOWN_TREND
     for curve in rank_curves(dataset, slug, _EPS):
         width = curve.t_max - curve.t_min

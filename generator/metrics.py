@@ -16,6 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from generator import polarity, uncertainty
+from generator.cache import Cache
 from generator.dataset import Dataset, Source
 from generator.inputs import (
     INPUTS,
@@ -59,6 +60,14 @@ DEPENDS: Mapping[str, tuple[str, ...]] = {
     "debye_length_001": (_EPS,),
     "charge_relaxation_time": (_EPS, _KAPPA),
 }
+
+
+# What an estimated permittivity only gives back as it went in.
+_MEASURED_ONLY = (
+    "debye_dipole_moment",
+    "onsager_dipole_moment",
+    "kirkwood_correlation_factor",
+)
 
 
 @dataclass(frozen=True)
@@ -153,6 +162,10 @@ class Handbook:
             return None
         inputs = [row.constants.get(k) or row.chosen[k][column] for k in self._used(solvent, key)]
         known = [v for v in inputs if v is not None]
+        if key in _MEASURED_ONLY and any(
+            v.quantity == _EPS and v.basis == "estimated" for v in known
+        ):
+            return None
         marks = list(union(v.marks for v in known))
         if key == "debye_dipole_moment" and self.molecules[solvent].is_associated:
             marks.append(ASSOCIATED)
@@ -174,13 +187,17 @@ class Handbook:
         return DEPENDS[key]
 
 
-def compute(dataset: Dataset, settings: Settings) -> Handbook:
-    """Choose every input and work out every metric. Structures must be readable (see checks)."""
+def compute(dataset: Dataset, settings: Settings, cache: Cache | None = None) -> Handbook:
+    """Choose every input and work out every metric. Structures must be readable (see checks).
+
+    ``cache`` keeps what is estimated from structures.
+    """
+    kept = cache or Cache(None)
     reference = settings.reference_temperature_c + ZERO_CELSIUS
     temperatures = tuple(t + ZERO_CELSIUS for t in settings.temperatures_c)
     molecules = {slug: molecule(s.smiles) for slug, s in dataset.solvents.items()}
     rows = {
-        slug: choose_inputs(dataset, slug, molecules[slug], reference, temperatures)
+        slug: choose_inputs(dataset, slug, molecules[slug], reference, temperatures, kept)
         for slug in dataset.solvents
     }
     ordered = list(rows.values())

@@ -33,6 +33,7 @@ from generator.values import (
     CARRIED,
     CORRECTED,
     EDGE,
+    ESTIMATED,
     EXTRAPOLATED,
     LiquidRange,
     Value,
@@ -268,7 +269,7 @@ def _merge(
         temperature,
         "estimated" if estimated else basis,
         tuple(dict.fromkeys(e.origin.source for e in kept)),
-        tuple(marks),
+        (*marks, ESTIMATED) if estimated else tuple(marks),
     )
     trail = tuple(_candidate(e, weights.get(id(e))) for e in entries)
     return Decision(value, trail, birge)

@@ -13,6 +13,7 @@ USUAL = "usual"
 CARRIED = "carried"
 ASSOCIATED = "associated"
 CORRECTED = "corrected"
+ESTIMATED = "estimated"
 # What each mark means, as pages and the data dictionary say it.
 MARKS = {
     EXTRAPOLATED: "outside the stated range of its curve",
@@ -22,6 +23,7 @@ MARKS = {
     CARRIED: "measured at another temperature and taken unchanged, uncertainty widened",
     ASSOCIATED: "the formula is not valid for associated liquids",
     CORRECTED: "a published value was set aside or replaced, see the corrections",
+    ESTIMATED: "not measured: estimated from the structure or from other quantities",
 }
 EDGE = 0.051  # K: printed ends of ranges are rounded
 

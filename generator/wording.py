@@ -27,6 +27,7 @@ _LETTERS = {
     values.CARRIED: ("t", "other temperature"),
     values.ASSOCIATED: ("a", "associated"),
     values.CORRECTED: ("c", "corrected"),
+    values.ESTIMATED: ("e", "estimated"),
 }
 MARKS = tuple(
     Mark(key, *_LETTERS.get(key, (key[0], key)), meaning) for key, meaning in values.MARKS.items()
