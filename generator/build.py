@@ -11,6 +11,7 @@ from generator.cache import Cache
 from generator.dataset import load_dataset
 from generator.errors import DatasetError, Problem
 from generator.metrics import Handbook, Settings, compute
+from generator.schema import read_package
 
 
 @dataclass(frozen=True)
@@ -42,7 +43,7 @@ def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Sit
     inputs = [figures.figure_input(handbook, slug) for slug in handbook.dataset.solvents]
     drawn = figures.draw_all(inputs, Cache(cache_folder))
     return Site(
-        pages=pages.render_all(handbook, findings, settings, drawn),
+        pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),
         files=exports.exports(handbook, findings, data),
         findings=findings,
         handbook=handbook,

@@ -13,9 +13,8 @@ from dataclasses import dataclass
 import numpy as np
 from markupsafe import escape
 
-WIDTH, HEIGHT = 200, 34
-_LEFT, _RIGHT, _FOOT = 5.0, 195.0, 21.0
-_TEXT = 31.0  # base line of the words under a picture
+_WIDTH, _SCALE_HEIGHT, _RIBBON_HEIGHT = 200, 34, 44
+_LEFT, _RIGHT, _FOOT = 5.0, 195.0, 31.0  # px; the ribbon stands on its foot
 _NEAR = 44.0  # px: closer to an end, the reference is not written out
 
 # Class of a colour → the colour on a light page, for viewers without the style sheet.
@@ -89,9 +88,9 @@ def polarity_scale(value: float, uncertainty: float, quartiles: Sequence[float],
         _box(low, 6, high, 22, f'{fill("accent")} fill-opacity="0.35"'),
         _segment(mark, 4, mark, 24, stroke("accent", 2)),
         f'<path {fill("accent")} d="M{mark:g} 8l-4.5-7h9z"/>',
-        *_words([(_LEFT, "start", "0"), (_RIGHT, "end", "0.5")]),
+        *_words(31, [(_LEFT, "start", "0"), (_RIGHT, "end", "0.5")]),
     ]
-    return _svg("polarity-scale", label, parts)
+    return _svg("polarity-scale", _SCALE_HEIGHT, label, parts)
 
 
 def ribbon(
@@ -134,7 +133,7 @@ def ribbon(
             parts.append(_segment(place, _FOOT - 4, place, _FOOT + 2, stroke("edge")))
     if reference is not None:
         at = x(reference[0])
-        parts.append(_segment(at, 1, at, _FOOT + 3, stroke("ink")))
+        parts.append(_segment(at, 1, at, _FOOT + 2, stroke("ink")))
     for line in inside:
         if len(line.temperatures) > 1:
             path = " ".join(
@@ -149,7 +148,7 @@ def ribbon(
     under = [(_LEFT, "start", words[0]), (_RIGHT, "end", words[1])]
     if reference is not None and _LEFT + _NEAR < x(reference[0]) < _RIGHT - _NEAR:
         under.append((x(reference[0]), "middle", words[2]))
-    return _svg("ribbon", label, [*parts, *_words(under)])
+    return _svg("ribbon", _RIBBON_HEIGHT, label, [*parts, *_words(42, under)])
 
 
 _BROKEN = f'{stroke("accent", 1.6)} stroke-dasharray="3.5 2.5"'
@@ -174,18 +173,18 @@ def _box(x1: float, y1: float, x2: float, y2: float, style: str) -> str:
     return f'<path {style} d="M{x1:g} {y1:g}H{x2:g}V{y2:g}H{x1:g}z"/>'
 
 
-def _words(words: Iterable[tuple[float, str, str]]) -> list[str]:
+def _words(base: float, words: Iterable[tuple[float, str, str]]) -> list[str]:
     return [
-        f'<text {fill("soft")} x="{x:g}" y="{_TEXT:g}" text-anchor="{anchor}">{escape(text)}</text>'
+        f'<text {fill("soft")} x="{x:g}" y="{base:g}" text-anchor="{anchor}">{escape(text)}</text>'
         for x, anchor, text in words
         if text
     ]
 
 
-def _svg(kind: str, label: str, parts: Iterable[str]) -> str:
+def _svg(kind: str, height: int, label: str, parts: Iterable[str]) -> str:
     return (
-        f'<svg xmlns="http://www.w3.org/2000/svg" class="{kind}" width="{WIDTH}" '
-        f'height="{HEIGHT}" viewBox="0 0 {WIDTH} {HEIGHT}" role="img" '
+        f'<svg xmlns="http://www.w3.org/2000/svg" class="{kind}" width="{_WIDTH}" '
+        f'height="{height}" viewBox="0 0 {_WIDTH} {height}" role="img" '
         f'aria-label="{escape(label)}" font-family="sans-serif" font-size="9.5">'
         f"{''.join(parts)}</svg>"
     )

@@ -66,6 +66,7 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
             self._site = build_site(folder, settings_of(self.config), folder.parent / ".cache")
         except DatasetError as error:
             raise PluginError(str(error)) from error
+        config.extra["data_revision"] = self._site.handbook.dataset.revision
 
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
         """Add the generated pages and files."""
