@@ -206,6 +206,7 @@ class TrendLine:
 
     key: str
     words: str
+    remark: str
     observed: Number | None
     expected: Number | None
     left_over: Number | None

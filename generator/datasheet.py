@@ -213,6 +213,7 @@ def trend_line(handbook: Handbook, slug: str, numbered: Mapping[str, Link]) -> T
     return TrendLine(
         key=trend.sign.replace(" ", "-"),
         words=TREND[trend.sign],
+        remark=trend.remark,
         observed=number(observed, numbered),
         expected=number(expected, numbered),
         left_over=number(left_over, numbered, quantity=quantity),

@@ -6,12 +6,10 @@ import math
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from generator import estimates, polarity, thermal
+from generator import estimates, polarity
 from generator.cache import Cache
 from generator.curves import (
-    SHORTEST_SPAN,
     curve_slope,
-    curve_uncertainty,
     curve_values,
     line_through,
     rank_curves,
@@ -19,8 +17,9 @@ from generator.curves import (
 )
 from generator.dataset import Dataset, Source
 from generator.quantities import MEASURED, QUANTITIES
-from generator.reconcile import REACH, choose, choose_constant, liquid_range
+from generator.reconcile import choose, choose_constant, liquid_range
 from generator.structures import Molecule
+from generator.trends import Trend, trend_at
 from generator.values import CARRIED, ESTIMATED, OUTSIDE_LIQUID_RANGE, LiquidRange, Value
 
 STRUCTURE = "structure"
@@ -58,21 +57,6 @@ INPUTS = (
     "molar_mass",
 )
 _EPS, _N, _RHO, _MU, _KAPPA, _ALPHA, _M = INPUTS
-
-
-@dataclass(frozen=True, slots=True)
-class Trend:
-    """Observed slope dε/dT [1/K] with its sign: falls, rises, no trend, not known."""
-
-    value: float
-    uncertainty: float
-    sign: str
-    temperature: float | None
-    basis: str
-    sources: tuple[str, ...]
-
-
-_UNKNOWN_TREND = Trend(math.nan, math.nan, "not known", None, "measured", ())
 
 
 @dataclass(frozen=True)
@@ -118,7 +102,8 @@ def choose_inputs(
         ]
     fixed = {key: tuple(values) for key, values in chosen.items()}
     slopes = tuple(
-        _trend(dataset, slug, v, t) for v, t in zip(fixed[_EPS], temperatures, strict=True)
+        trend_at(dataset, slug, v, t, structure.association)
+        for v, t in zip(fixed[_EPS], temperatures, strict=True)
     )
     return Row(own, liquid, temperatures, fixed, constants, slopes)
 
@@ -264,29 +249,6 @@ def _expansivity(
     alpha = estimates.expansivity(liquid.high, temperature)
     spread = estimates.EXPANSION_SPREAD * alpha
     return Value(_ALPHA, alpha, spread, temperature, "estimated", boiling.sources, (ESTIMATED,))
-
-
-def _trend(dataset: Dataset, slug: str, value: Value | None, temperature: float) -> Trend:
-    """Slope of ε at ``temperature`` [K], or at the end of its curve's range where that is near."""
-    if value is None or value.basis == "estimated":
-        return _UNKNOWN_TREND
-    for curve in rank_curves(dataset, slug, _EPS):
-        width = curve.t_max - curve.t_min
-        if within(curve, temperature, REACH) and width >= SHORTEST_SPAN:
-            place = min(max(temperature, curve.t_min), curve.t_max)
-            slope = curve_slope(curve, place, _EPS)
-            (at,) = curve_values(curve, [place], _EPS)
-            # The slope of a straight line through evenly spread points of uncertainty u.
-            spread = math.sqrt(12) * curve_uncertainty(dataset, curve, at)[0] / width
-            sign = thermal.sign_of(slope, spread)
-            return Trend(slope, spread, sign, place, "curve", (curve.source,))
-    points = dataset.measurements_of(slug, _EPS)
-    line = line_through(dataset, points, temperature)
-    if line is None:
-        return _UNKNOWN_TREND
-    sources = tuple(dict.fromkeys(p.source for p in points))
-    sign = thermal.sign_of(line.slope, line.slope_uncertainty)
-    return Trend(line.slope, line.slope_uncertainty, sign, temperature, "measured", sources)
 
 
 def has_no_moment(row: Row) -> bool:

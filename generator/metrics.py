@@ -23,13 +23,13 @@ from generator.inputs import (
     STRUCTURE,
     STRUCTURE_SOURCE,
     Row,
-    Trend,
     choose_inputs,
     has_no_moment,
     union,
 )
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, molecule
+from generator.trends import Trend
 from generator.units import ZERO_CELSIUS
 from generator.values import ASSOCIATED, LiquidRange, Value
 

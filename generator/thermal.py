@@ -44,7 +44,7 @@ def _rackett(c: Sequence[float], t: Array) -> Array:
 
 def _rackett_slope(c: Sequence[float], t: Array) -> Array:
     _, b, tc, d = c
-    return _rackett(c, t) * np.log(b) * d * (1 - t / tc) ** (d - 1) / tc
+    return np.asarray(_rackett(c, t) * np.log(b) * d * (1 - t / tc) ** (d - 1) / tc)
 
 
 _SERIES_POWERS = (0.35, 2 / 3, 1.0, 4 / 3)
@@ -54,14 +54,14 @@ def _critical_series(c: Sequence[float], t: Array) -> Array:
     tc, at_critical, *factors = c
     tau = 1 - t / tc
     terms = (f * tau**p for f, p in zip(factors, _SERIES_POWERS, strict=True))
-    return at_critical + np.sum(list(terms), axis=0)
+    return np.asarray(at_critical + np.sum(list(terms), axis=0))
 
 
 def _critical_series_slope(c: Sequence[float], t: Array) -> Array:
     tc, _, *factors = c
     tau = 1 - t / tc
     terms = (-f * p * tau ** (p - 1) / tc for f, p in zip(factors, _SERIES_POWERS, strict=True))
-    return np.sum(list(terms), axis=0)
+    return np.asarray(np.sum(list(terms), axis=0))
 
 
 def _extended_antoine(c: Sequence[float], t: Array) -> Array:
@@ -81,7 +81,7 @@ def _antoine(c: Sequence[float], t: Array) -> Array:
 
 def _antoine_slope(c: Sequence[float], t: Array) -> Array:
     _, b, offset = c
-    return _antoine(c, t) * np.log(10) * b / (t + offset) ** 2
+    return np.asarray(_antoine(c, t) * np.log(10) * b / (t + offset) ** 2)
 
 
 _WAGNER_POWERS = (1.0, 1.5, 2.5, 5.0)
@@ -91,7 +91,7 @@ def _wagner(c: Sequence[float], t: Array) -> Array:
     tc, pc, *factors = c
     tau = 1 - t / tc
     total = np.sum([f * tau**p for f, p in zip(factors, _WAGNER_POWERS, strict=True)], axis=0)
-    return pc * np.exp(total * tc / t)
+    return np.asarray(pc * np.exp(total * tc / t))
 
 
 def _wagner_slope(c: Sequence[float], t: Array) -> Array:
@@ -100,7 +100,7 @@ def _wagner_slope(c: Sequence[float], t: Array) -> Array:
     pairs = list(zip(factors, _WAGNER_POWERS, strict=True))
     total = np.sum([f * tau**p for f, p in pairs], axis=0)
     inner = np.sum([-f * p * tau ** (p - 1) / tc for f, p in pairs], axis=0)
-    return _wagner(c, t) * (inner * tc / t - total * tc / t**2)
+    return np.asarray(_wagner(c, t) * (inner * tc / t - total * tc / t**2))
 
 
 def _vdi_viscosity(c: Sequence[float], t: Array) -> Array:
@@ -187,6 +187,25 @@ def derivative(form: str, coefficients: Sequence[float], temperature: ArrayLike)
     ``form`` [name in FORMS], ``coefficients`` [as the form asks], ``temperature`` [K].
     """
     return FORMS[form].slope(coefficients, np.asarray(temperature, dtype=np.float64))
+
+
+def turning_point(
+    form: str, coefficients: Sequence[float], low: float, high: float
+) -> float | None:
+    """Temperature [K] between ``low`` and ``high`` [K] where a curve has its extremum, or None.
+
+    ``form`` [name in FORMS], ``coefficients`` [as the form asks]. The outermost one where there
+    are several.
+    """
+    grid = np.linspace(low, high, 201)
+    slopes = derivative(form, coefficients, grid)
+    turns = np.flatnonzero(np.sign(slopes[:-1]) * np.sign(slopes[1:]) < 0)
+    if not turns.size:
+        return None
+    middle = (low + high) / 2
+    i = max(turns, key=lambda k: abs(grid[k] - middle))
+    share = slopes[i] / (slopes[i] - slopes[i + 1])
+    return float(grid[i] + share * (grid[i + 1] - grid[i]))
 
 
 @dataclass(frozen=True, slots=True)
