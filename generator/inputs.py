@@ -191,15 +191,13 @@ def _refractive_index(
 ) -> list[Value | None]:
     """n at each temperature: measured there, else by constant refraction from where it was."""
     result = list(chosen[_N])
-    points = [p for p in dataset.measurements_of(slug, _N) if p.temperature is not None]
-    if not points:
+    if not any(p.temperature is not None for p in dataset.measurements_of(slug, _N)):
         return result
     for k, temperature in enumerate(temperatures):
         value, density = result[k], chosen[_RHO][k]
         if density is None or (value is not None and CARRIED not in value.marks):
             continue
-        nearest = min(points, key=lambda p: abs((p.temperature or 0.0) - temperature))
-        start = nearest.temperature or 0.0
+        start = anchor_temperature(dataset, slug, temperature)
         anchor = choose(dataset, slug, _N, [start], LiquidRange(None, None))[0]
         known = choose(dataset, slug, _RHO, [start], liquid)[0]
         if anchor is None or known is None:
@@ -218,6 +216,13 @@ def _refractive_index(
             union(v.marks for v in inputs),
         )
     return result
+
+
+def anchor_temperature(dataset: Dataset, slug: str, temperature: float) -> float:
+    """Temperature [K] nearest to ``temperature`` [K] at which a refractive index is published."""
+    points = dataset.measurements_of(slug, _N)
+    known = [p.temperature for p in points if p.temperature is not None]
+    return min(known, key=lambda t: abs(t - temperature))
 
 
 def _expansivity(

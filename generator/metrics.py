@@ -80,12 +80,32 @@ class Settings:
     paper: str = "A4"
 
 
+@dataclass(frozen=True, slots=True)
+class Result:
+    """One metric for all substances: arrays of shape (substances, temperatures + 1).
+
+    ``moves``: what one standard uncertainty of an input moves the value by, for each input.
+    """
+
+    values: Array
+    spreads: Array
+    moves: Mapping[str, Array]
+
+
+@dataclass(frozen=True, slots=True)
+class Share:
+    """An input of a derived number and its share of the variance, 0 to 1."""
+
+    value: Value
+    share: float
+
+
 @dataclass(frozen=True)
 class Handbook:
     """Every number of the handbook, measured and derived alike.
 
-    ``reference`` and ``temperatures`` are in kelvin. The arrays in ``_results`` have the shape
-    (substances, temperatures + 1); the last column is each substance's own reference.
+    ``reference`` and ``temperatures`` are in kelvin. In ``_results`` the last column is each
+    substance's own reference.
     """
 
     dataset: Dataset
@@ -94,7 +114,7 @@ class Handbook:
     reference: float
     temperatures: tuple[float, ...]
     _rows: Mapping[str, Row]
-    _results: Mapping[str, tuple[Array, Array]]
+    _results: Mapping[str, Result]
     _index: Mapping[str, int] = field(repr=False)
 
     @cached_property
@@ -126,6 +146,26 @@ class Handbook:
             return tuple(constant for _ in self.temperatures)
         return tuple(self._cell(solvent, key, k) for k in range(len(self.temperatures)))
 
+    def budget(self, solvent: str, key: str, temperature: float | None = None) -> tuple[Share, ...]:
+        """What a derived number is made of, with the share of each input in its variance.
+
+        ``temperature`` [K] is a listed one, or None for the own reference. Empty for a number
+        that is not derived. Shares follow from what one standard uncertainty of each input
+        moves the result by (JCGM 100:2008, 5.1.3).
+        """
+        if key not in self._results or self.at(solvent, key, temperature) is None:
+            return ()
+        own = temperature is None
+        column = len(self.temperatures) if own else self.temperatures.index(temperature)
+        index, moves = self._index[solvent], self._results[key].moves
+        inputs = self._inputs(solvent, key, column)
+        variances = [float(moves[v.quantity][index, column]) ** 2 for v in inputs]
+        total = math.fsum(variances)
+        return tuple(
+            Share(v, variance / total if total > 0 else 0.0)
+            for v, variance in zip(inputs, variances, strict=True)
+        )
+
     def trend(self, solvent: str) -> Trend:
         """Observed slope of the permittivity at the substance's own reference."""
         return self._rows[solvent].slopes[-1]
@@ -155,13 +195,11 @@ class Handbook:
             return _trend_value(row.slopes[column], None if own else row.temperatures[column])
         if key not in self._results:
             return None
-        values, spreads = self._results[key]
-        index = self._index[solvent]
-        value, spread = float(values[index, column]), float(spreads[index, column])
+        result, index = self._results[key], self._index[solvent]
+        value, spread = float(result.values[index, column]), float(result.spreads[index, column])
         if not (math.isfinite(value) and math.isfinite(spread)):
             return None
-        inputs = [row.constants.get(k) or row.chosen[k][column] for k in self._used(solvent, key)]
-        known = [v for v in inputs if v is not None]
+        known = self._inputs(solvent, key, column)
         if key in _MEASURED_ONLY and any(
             v.quantity == _EPS and v.basis == "estimated" for v in known
         ):
@@ -180,11 +218,13 @@ class Handbook:
             tuple(marks),
         )
 
-    def _used(self, solvent: str, key: str) -> tuple[str, ...]:
+    def _inputs(self, solvent: str, key: str, column: int) -> list[Value]:
         """The inputs a number was made from; the unpolar slope does without n."""
-        if key == "expected_temperature_coefficient" and has_no_moment(self._rows[solvent]):
-            return (_EPS, _ALPHA)
-        return DEPENDS[key]
+        row, used = self._rows[solvent], DEPENDS[key]
+        if key == "expected_temperature_coefficient" and has_no_moment(row):
+            used = (_EPS, _ALPHA)
+        inputs = (row.constants.get(k) or row.chosen[k][column] for k in used)
+        return [v for v in inputs if v is not None]
 
 
 def compute(dataset: Dataset, settings: Settings, cache: Cache | None = None) -> Handbook:
@@ -202,13 +242,7 @@ def compute(dataset: Dataset, settings: Settings, cache: Cache | None = None) ->
     }
     ordered = list(rows.values())
     chunks = [_work_out(ordered[i : i + _CHUNK]) for i in range(0, len(ordered), _CHUNK)]
-    results = {
-        key: (
-            np.concatenate([chunk[key][0] for chunk in chunks]),
-            np.concatenate([chunk[key][1] for chunk in chunks]),
-        )
-        for key in DEPENDS
-    }
+    results = {key: _joined([chunk[key] for chunk in chunks]) for key in DEPENDS}
     index = {slug: i for i, slug in enumerate(rows)}
     return Handbook(dataset, settings, molecules, reference, temperatures, rows, results, index)
 
@@ -227,8 +261,16 @@ def _trend_value(trend: Trend, temperature: float | None) -> Value | None:
     )
 
 
-def _work_out(rows: Sequence[Row]) -> dict[str, tuple[Array, Array]]:
-    """Every metric for some substances: values and uncertainties, (substances, temperatures)."""
+def _joined(parts: Sequence[Result]) -> Result:
+    return Result(
+        np.concatenate([part.values for part in parts]),
+        np.concatenate([part.spreads for part in parts]),
+        {key: np.concatenate([part.moves[key] for part in parts]) for key in parts[0].moves},
+    )
+
+
+def _work_out(rows: Sequence[Row]) -> dict[str, Result]:
+    """Every metric for some substances."""
     temperature = np.array([row.temperatures for row in rows])
     bare = np.array([[has_no_moment(row)] for row in rows])
     centre, spread = {}, {}
@@ -242,7 +284,34 @@ def _work_out(rows: Sequence[Row]) -> dict[str, tuple[Array, Array]]:
     }
     values = _metrics(centre, temperature, bare)
     sampled = _metrics(samples, temperature[..., np.newaxis], bare[..., np.newaxis])
-    return {key: (values[key], uncertainty.spread(sampled[key])) for key in DEPENDS}
+    moved = {key: _moved(centre, spread, key, temperature, bare) for key in INPUTS}
+    return {
+        key: Result(
+            values[key],
+            uncertainty.spread(sampled[key]),
+            {used: moved[used][key] for used in DEPENDS[key]},
+        )
+        for key in DEPENDS
+    }
+
+
+def _moved(
+    centre: Mapping[str, Array],
+    spread: Mapping[str, Array],
+    key: str,
+    temperature: Array,
+    bare: NDArray[np.bool_],
+) -> dict[str, Array]:
+    """Half of what each metric changes by when one input goes from −u to +u, inside its bounds."""
+    up, down = (
+        _metrics(
+            {**centre, key: np.clip(centre[key] + side * spread[key], *_bounds(key))},
+            temperature,
+            bare,
+        )
+        for side in (1.0, -1.0)
+    )
+    return {name: np.nan_to_num(np.abs(up[name] - down[name]) / 2) for name in DEPENDS}
 
 
 def _bounds(key: str) -> tuple[float, float]:

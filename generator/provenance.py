@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from generator.catalogue import Links, Rows
 from generator.contexts import Citation, CurveRow, Link, SourceGroup, SourceValue
-from generator.dataset import Correction, Measurement
+from generator.dataset import Correction, Correlation, Measurement, concerns
 from generator.metrics import Handbook
 from generator.quantities import QUANTITIES
 from generator.reconcile import Candidate, decide
@@ -89,7 +89,7 @@ def _source_value(
     numbered: Mapping[str, Link],
     way: Trail,
 ) -> SourceValue:
-    correction = next((c for c in corrections if _concerns(c, row)), None)
+    correction = next((c for c in corrections if concerns(c, row)), None)
     quantity = QUANTITIES[row.quantity]
     if correction is None:
         status, reason = _fate(way.get(("measurements.csv", row.line)), row.note)
@@ -126,17 +126,6 @@ def _fate(candidate: Candidate | None, note: str) -> tuple[str, str]:
     return status, "; ".join(part for part in (remark, note) if part)
 
 
-def _concerns(correction: Correction, row: Measurement) -> bool:
-    same = (correction.solvent, correction.quantity, correction.source) == (
-        row.solvent,
-        row.quantity,
-        row.source,
-    )
-    if not same or correction.temperature is None or row.temperature is None:
-        return same
-    return abs(correction.temperature - row.temperature) < 1e-6
-
-
 def curves(
     rows: Rows, links: Links, numbered: Mapping[str, Link], way: Trail
 ) -> tuple[CurveRow, ...]:
@@ -150,8 +139,15 @@ def curves(
             span=range_label(curve.t_min, curve.t_max),
             uncertainty="not stated" if curve.uncertainty is None else f"{curve.uncertainty:g}",
             source=numbered.get(curve.source),
-            status=_fate(way.get(("correlations.csv", curve.line)), "")[0],
+            status=_part_of_curve(curve, rows.corrections, way),
             row=f"correlations.csv, line {curve.line}",
         )
         for curve in rows.correlations
     )
+
+
+def _part_of_curve(curve: Correlation, corrections: Sequence[Correction], way: Trail) -> str:
+    correction = next((c for c in corrections if concerns(c, curve)), None)
+    if correction is not None and correction.action == "exclude":
+        return f"left out: {correction.reason}"
+    return _fate(way.get(("correlations.csv", curve.line)), "")[0]
