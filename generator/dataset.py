@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from decimal import Decimal
 from functools import cached_property
 from pathlib import Path
@@ -12,7 +12,7 @@ from typing import TypeVar
 
 from generator.errors import DatasetError
 from generator.quantities import QUANTITIES
-from generator.tables import NOTE, Row, Tables, read_tables
+from generator.tables import NOTE, Row, Tables, read_tables, revisions
 from generator.units import ZERO_CELSIUS, convert, convert_difference
 
 # What vacuum has: relative uncertainties are of what the liquid adds to it.
@@ -157,7 +157,8 @@ class Dataset:
 
     ``measurements`` and ``correlations`` hold every row as printed; ``measurements_of`` and
     ``correlations_of`` give those in force, corrections applied. ``usual`` is keyed by kind of
-    source and quantity.
+    source and quantity. ``revision`` is a hash of all tables, ``revisions`` of the rows of each
+    substance and the sources they name, wherever in the tables they stand.
     """
 
     folder: Path
@@ -170,6 +171,7 @@ class Dataset:
     stock: tuple[Container, ...]
     handling: tuple[Handling, ...]
     usual: Mapping[tuple[str, str], Usual]
+    revisions: Mapping[str, str] = field(default_factory=dict, repr=False)
 
     def measurements_of(self, solvent: str, quantity: str) -> tuple[Measurement, ...]:
         """The values in force of one quantity of one substance, in table order."""
@@ -286,6 +288,7 @@ def dataset_from(tables: Tables) -> Dataset:
             )
             for row in tables["uncertainties"].rows
         },
+        revisions(tables),
     )
 
 

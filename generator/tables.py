@@ -8,7 +8,6 @@ word: CRLF, blank rows, blank cells behind the last column. Everything else is a
 from __future__ import annotations
 
 import csv
-import hashlib
 import io
 import math
 import re
@@ -16,6 +15,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date
 from difflib import get_close_matches
+from hashlib import sha256
 from pathlib import Path
 from typing import Any
 
@@ -82,7 +82,7 @@ def read_tables(folder: Path) -> Tables:
     """
     package = read_package(folder)
     tables, problems = {}, []
-    seal = hashlib.sha256()
+    seal = sha256()
     for name, schema in read_schema(package).items():
         try:
             data = (folder / schema.path).read_bytes()
@@ -103,6 +103,33 @@ def read_tables(folder: Path) -> Tables:
     return Tables(folder, package, tables, tuple(problems), seal.hexdigest()[:8])
 
 
+def revisions(tables: Tables) -> dict[str, str]:
+    """Hash of what the tables say about each substance, wherever in them its rows stand.
+
+    The sources that the rows name are part of it.
+    """
+    sources = dict(_said(tables["sources"], "source"))
+    shares: dict[str, list[str]] = {row["solvent"]: [] for row in tables["solvents"].rows}
+    named: dict[str, set[str]] = {slug: set() for slug in shares}
+    for table in tables.tables.values():
+        if "solvent" in table.schema.columns:
+            for (slug, text), row in zip(_said(table, "solvent"), table.rows, strict=True):
+                if slug in shares:
+                    shares[slug].append(text)
+                    named[slug].add(row.cells.get("source", ""))
+    for slug, keys in named.items():
+        shares[slug] += [sources[key] for key in sorted(keys & sources.keys())]
+    return {slug: sha256(repr(said).encode()).hexdigest() for slug, said in shares.items()}
+
+
+def _said(table: Table, column: str) -> Iterator[tuple[str, str]]:
+    """The rows of a table by one of their columns, each as one text, its columns in order."""
+    columns, name = table.schema.columns, table.schema.path
+    for row in table.rows:
+        get = row.cells.get
+        yield row[column], "\x1f".join([name, *[get(c, "") for c in columns]])
+
+
 def read_table(data: bytes, schema: TableSchema) -> tuple[Table, list[Problem]]:
     """The rows of one file and what is wrong with it, from the bytes of the file."""
     return _Reader(schema).read(data)
@@ -113,6 +140,7 @@ class _Reader:
         self._schema = schema
         self._fields = {field.name: field for field in schema.fields}
         self._problems: list[Problem] = []
+        self._clean: dict[tuple[str, str], str] = {}
 
     def _say(
         self, line: int, column: str, kind: str, found: str, expected: str, hint: str,
@@ -222,8 +250,19 @@ class _Reader:
         clean = {}
         for name, cell in zip(columns, cells, strict=False):
             field = self._fields.get(name)
-            clean[name] = self._cell(line, field, cell) if field else cell.strip()
+            clean[name] = self._known(line, field, cell) if field else cell.strip()
         return Row(line, clean)
+
+    def _known(self, line: int, field: Field, cell: str) -> str:
+        """The cell cleaned; a text met before, of which there was nothing to say, is known."""
+        key = field.name, cell
+        if key not in self._clean:
+            said = len(self._problems)
+            text = self._cell(line, field, cell)
+            if len(self._problems) > said:
+                return text
+            self._clean[key] = text
+        return self._clean[key]
 
     def _ending(
         self, text: str, body: Sequence[tuple[int, Sequence[str]]], columns: tuple[str, ...]

@@ -1,6 +1,8 @@
 """Kept results: found again, never wrong."""
 
+import os
 import tempfile
+import time
 from pathlib import Path
 
 from hypothesis import given
@@ -48,3 +50,60 @@ def test_without_a_folder_nothing_is_kept() -> None:
     cache = Cache(None)
     cache.put("figure", "k", b"x")
     assert cache.get("figure", "k") is None
+
+
+def test_a_pack_forgets_what_nobody_asked_for(tmp_path: Path) -> None:
+    pack = Cache(tmp_path).pack("small")
+    for name in "abc":
+        pack.put(digest(name), name.encode())
+    pack.save(forget=True)
+    second = Cache(tmp_path).pack("small")
+    assert second.get(digest("a")) == b"a"
+    second.put(digest("d"), b"d")
+    second.save(forget=False)
+    third = Cache(tmp_path).pack("small")
+    assert [third.get(digest(name)) for name in "acd"] == [b"a", b"c", b"d"]
+    third.save(forget=True)
+    last = Cache(tmp_path).pack("small")
+    assert [last.get(digest(name)) for name in "abcd"] == [b"a", None, b"c", b"d"]
+
+
+@given(position=st.integers(0, 400), flip=st.integers(1, 255))
+def test_a_damaged_pack_gives_what_was_kept_or_nothing(position: int, flip: int) -> None:
+    with tempfile.TemporaryDirectory() as folder:
+        pack = Cache(Path(folder)).pack("small")
+        content = {digest(n): bytes([n]) * 30 for n in range(4)}
+        for key, data in content.items():
+            pack.put(key, data)
+        pack.save(forget=True)
+        path = Path(folder) / "small.pack"
+        stored = bytearray(path.read_bytes())
+        stored[position % len(stored)] ^= flip
+        path.write_bytes(bytes(stored))
+        damaged = Cache(Path(folder)).pack("small")
+        found = [damaged.get(key) for key in content]
+        assert None in found
+        assert all(f in (None, data) for f, data in zip(found, content.values(), strict=True))
+
+
+def test_results_no_build_has_asked_for_are_swept(tmp_path: Path) -> None:
+    cache = Cache(tmp_path)
+    for name in ("old", "new", "wanted"):
+        cache.put("figure", digest(name), b"x")
+    for name in ("old", "wanted"):
+        key = digest(name)
+        long_ago = time.time() - 40 * 86_400
+        os.utime(tmp_path / "figure" / key[:2] / key, (long_ago, long_ago))
+    assert cache.get("figure", digest("wanted")) == b"x"
+    cache.sweep()
+    assert [cache.get("figure", digest(n)) for n in ("old", "new", "wanted")] == [None, b"x", b"x"]
+
+
+def test_a_disk_that_takes_nothing_is_no_error(tmp_path: Path) -> None:
+    (tmp_path / "file").touch()
+    cache = Cache(tmp_path / "file" / "below")
+    cache.put("figure", digest("a"), b"x")
+    pack = cache.pack("small")
+    pack.put(digest("a"), b"x")
+    pack.save(forget=True)
+    assert cache.get("figure", digest("a")) is None

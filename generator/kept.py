@@ -1,0 +1,90 @@
+"""What follows from one substance's own rows alone, kept from one build to the next.
+
+Whatever is worked out for a substance is found again under the hash of all it depends on: the
+substance's rows, the settings, the code, and what else its maker names. So an edit of one value
+works out one substance anew, and a build from kept results is the build from none.
+"""
+
+from __future__ import annotations
+
+import pickle
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from typing import Any, Generic, TypeVar
+
+from generator.cache import Cache, Pack, digest
+from generator.parallel import shared_out
+
+_Made = TypeVar("_Made")
+# Fewer substances than this for each helper are not worth starting one.
+LEAST = 25
+
+
+class Kept:
+    """The kept results of every substance. ``keys``: the hash of all its own numbers depend on."""
+
+    def __init__(self, keys: Mapping[str, str], pack: Pack | None = None) -> None:
+        self._keys = keys
+        self._pack = Pack(None, "") if pack is None else pack
+
+    def of(self, slug: str, name: str, make: Callable[[], _Made], *more: object) -> _Made:
+        """One result of one substance. ``more``: what it depends on besides the substance."""
+        (made,) = self.each([slug], name, lambda _: [make()], *more).values()
+        return made
+
+    def each(
+        self,
+        slugs: Sequence[str],
+        name: str,
+        make: Callable[[Sequence[str]], list[_Made]],
+        *more: object,
+    ) -> Mapping[str, _Made]:
+        """One result of several substances, loaded as it is asked for.
+
+        ``make`` is given those that are missing, in shares that helpers may work at; it returns
+        one result for each.
+        """
+        named = digest(name, *more)
+        keys = {slug: digest(self._keys.get(slug, slug), named) for slug in slugs}
+        stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
+        missing = [slug for slug in slugs if slug not in stored]
+        fresh = shared_out(make, missing, LEAST) if missing else []
+        made = dict(zip(missing, fresh, strict=True))
+        for slug, result in made.items():
+            if slug in self._keys:
+                self._pack.put(keys[slug], pickle.dumps(result, pickle.HIGHEST_PROTOCOL))
+        return _Loaded(keys, stored, made)
+
+    def save(self, *, forget: bool) -> None:
+        """Write what was made; with ``forget``, without what this build had no use for."""
+        self._pack.save(forget=forget)
+
+
+NOTHING = Kept({})
+"""Nothing is kept: everything is made each time."""
+
+
+class _Loaded(Mapping[str, _Made], Generic[_Made]):
+    """Results by substance, in the order asked for; a stored one is read when it is wanted."""
+
+    def __init__(
+        self, order: Mapping[str, Any], stored: Mapping[str, Any], made: dict[str, _Made]
+    ) -> None:
+        self._order, self._stored, self._made = order, stored, made
+
+    def __getitem__(self, slug: str) -> _Made:
+        if slug not in self._made:
+            self._made[slug] = pickle.loads(self._stored[slug])
+        return self._made[slug]
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self._order)
+
+    def __len__(self) -> int:
+        return len(self._order)
+
+
+def kept(cache: Cache, revisions: Mapping[str, str], *common: object) -> Kept:
+    """The kept results of the substances. ``common``: what all of them depend on."""
+    shared = digest(*common)
+    keys = {slug: digest(revision, shared) for slug, revision in revisions.items()}
+    return Kept(keys, cache.pack("substances"))

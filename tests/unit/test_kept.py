@@ -1,0 +1,55 @@
+"""Results of a substance are made once, and again as soon as anything they depend on changes."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+
+from generator.cache import Cache
+from generator.kept import NOTHING, Kept, kept
+
+REVISIONS = {"water": "1", "ethanol": "2"}
+
+
+def _lengths(store: Kept, *more: object) -> tuple[list[str], dict[str, int]]:
+    """Whose length was made anew, and all lengths."""
+    made: list[str] = []
+
+    def make(slugs: Sequence[str]) -> list[int]:
+        made.extend(slugs)
+        return [len(slug) for slug in slugs]
+
+    return made, dict(store.each(list(REVISIONS), "length", make, *more))
+
+
+def test_made_once_then_found(tmp_path: Path) -> None:
+    first = kept(Cache(tmp_path), REVISIONS, "code")
+    assert _lengths(first) == (["water", "ethanol"], {"water": 5, "ethanol": 7})
+    assert _lengths(first)[0] == []
+    first.save(forget=True)
+    assert _lengths(kept(Cache(tmp_path), REVISIONS, "code")) == ([], {"water": 5, "ethanol": 7})
+
+
+def test_made_again_where_something_changed(tmp_path: Path) -> None:
+    first = kept(Cache(tmp_path), REVISIONS, "code")
+    _lengths(first, "a")
+    first.save(forget=True)
+    cases = {
+        "edited": (kept(Cache(tmp_path), {**REVISIONS, "water": "3"}, "code"), "a", ["water"]),
+        "other code": (kept(Cache(tmp_path), REVISIONS, "else"), "a", ["water", "ethanol"]),
+        "other input": (kept(Cache(tmp_path), REVISIONS, "code"), "b", ["water", "ethanol"]),
+    }
+    for store, more, again in cases.values():
+        assert _lengths(store, more)[0] == again
+
+
+def test_one_result(tmp_path: Path) -> None:
+    store = kept(Cache(tmp_path), REVISIONS)
+    assert store.of("water", "name", lambda: "Water") == "Water"
+    assert store.of("water", "name", lambda: "not made") == "Water"
+    assert store.of("ethanol", "name", lambda: "Ethanol") == "Ethanol"
+
+
+def test_without_a_store_everything_is_made_each_time() -> None:
+    assert _lengths(NOTHING)[0] == ["water", "ethanol"]
+    assert _lengths(NOTHING)[0] == ["water", "ethanol"]
