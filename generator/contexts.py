@@ -99,12 +99,16 @@ class QuantityRow:
 
 @dataclass(frozen=True, slots=True)
 class MetricRow:
-    """One quantity over the handbook's temperatures."""
+    """One quantity over the handbook's temperatures.
+
+    ``way`` is the anchor of how it was found, "" for a published one.
+    """
 
     name: str
     symbol: Markup
     unit: str
     method: str
+    way: str
     cells: tuple[Number | None, ...]
 
 
@@ -114,6 +118,29 @@ class MetricGroup:
 
     title: str
     rows: tuple[MetricRow, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class WayInput:
+    """One input of a derived quantity: value and share of the variance at each temperature."""
+
+    name: str
+    symbol: Markup
+    basis: str
+    sources: tuple[Link, ...]
+    cells: tuple[Markup, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Way:
+    """How a derived quantity was found at each of the handbook's temperatures."""
+
+    anchor: str
+    name: str
+    symbol: Markup
+    formula: str
+    method: str
+    inputs: tuple[WayInput, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -250,6 +277,7 @@ class Datasheet:
     metrics: tuple[MetricGroup, ...]
     metric_columns: int
     metric_marks: tuple[Mark, ...]
+    ways: tuple[Way, ...]
     measured: tuple[SourceGroup, ...]
     curves: tuple[CurveRow, ...]
     handling: tuple[HandlingLines, ...]

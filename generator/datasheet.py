@@ -26,6 +26,7 @@ from generator.provenance import KEY_VALUES, citations, curves, measured, number
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, drawing
 from generator.values import Value
+from generator.ways import way_anchor, ways
 from generator.wording import (
     celsius,
     celsius_label,
@@ -160,6 +161,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         metrics=metrics,
         metric_columns=len(handbook.temperatures) + 2,  # with name and unit
         metric_marks=marks_of(*(c for g in metrics for r in g.rows for c in r.cells)),
+        ways=ways(handbook, slug, links, numbered),
         measured=measured(rows, numbered, way),
         curves=curves(rows, links, numbered, way),
         handling=_handling(rows, numbered),
@@ -323,6 +325,7 @@ def _metrics(handbook: Handbook, slug: str, links: Links) -> tuple[MetricGroup, 
                         symbol_markup(quantity.symbol),
                         unit_label(quantity.unit),
                         links.method(key),
+                        way_anchor(key),
                         cells,
                     )
                 )

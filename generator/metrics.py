@@ -166,6 +166,22 @@ class Handbook:
             for v, variance in zip(inputs, variances, strict=True)
         )
 
+    def shares(self, solvent: str, key: str) -> Mapping[str, Array]:
+        """Share of each input in the variance of a derived number, at the listed temperatures.
+
+        Arrays of shape (temperatures,), 0 to 1; NaN where there is no number.
+        """
+        result, index = self._results[key], self._index[solvent]
+        row, count = self._rows[solvent], len(self.temperatures)
+        there = np.isfinite(result.values[index, :count])
+        used = (_EPS, _ALPHA) if self._without_index(row, key) else DEPENDS[key]
+        variances = {k: result.moves[k][index, :count] ** 2 for k in used}
+        total = np.sum(list(variances.values()), axis=0)
+        with np.errstate(all="ignore"):
+            return {
+                k: np.where(there & (total > 0), v / total, np.nan) for k, v in variances.items()
+            }
+
     def trend(self, solvent: str) -> Trend:
         """Observed slope of the permittivity at the substance's own reference."""
         return self._rows[solvent].slopes[-1]
@@ -218,11 +234,14 @@ class Handbook:
             tuple(marks),
         )
 
+    @staticmethod
+    def _without_index(row: Row, key: str) -> bool:
+        return key == "expected_temperature_coefficient" and has_no_moment(row)
+
     def _inputs(self, solvent: str, key: str, column: int) -> list[Value]:
-        """The inputs a number was made from; the unpolar slope does without n."""
-        row, used = self._rows[solvent], DEPENDS[key]
-        if key == "expected_temperature_coefficient" and has_no_moment(row):
-            used = (_EPS, _ALPHA)
+        """The inputs a number was made from; the slope of unpolar liquids does without n."""
+        row = self._rows[solvent]
+        used = (_EPS, _ALPHA) if self._without_index(row, key) else DEPENDS[key]
         inputs = (row.constants.get(k) or row.chosen[k][column] for k in used)
         return [v for v in inputs if v is not None]
 

@@ -205,7 +205,7 @@ def test_every_row_of_the_tables_is_shown_with_what_became_of_it(
         sheet = sheet_of(handbook, correction.solvent)
         rows = [row for group in sheet.measured for row in group.rows]
         left_out = [r for r in rows if r.status == "left out" and r.reason == correction.reason]
-        curves = [c for c in sheet.curves if c.status == "left out"]
+        curves = [c for c in sheet.curves if c.status == f"left out: {correction.reason}"]
         assert left_out or curves, correction
 
 
@@ -322,7 +322,7 @@ DATASHEET_KEYS = [
     "synonyms", "smiles", "inchi", "inchikey", "note", "structure", "reference",
     "own_reference", "permittivity", "polar_key", "polar", "polar_reason", "trend", "notices",
     "scale", "ribbon", "figure", "figure_text", "liquid_range", "key_values", "value_marks",
-    "temperatures", "reference_column", "metrics", "metric_columns", "metric_marks", "measured",
+    "temperatures", "reference_column", "metrics", "metric_columns", "metric_marks", "ways", "measured",
     "curves", "handling", "containers", "isomers", "isomers_href", "swaps", "swaps_total",
     "citations", "foot",
 ]  # fmt: skip
@@ -392,3 +392,22 @@ def test_formula_of_the_structure_is_what_the_page_says(by_path: dict[str, Page]
     formula = molecule("CC(C)=O").formula
     assert formula == "C3H6O"
     assert "C<sub>3</sub>H<sub>6</sub>O" in by_path["solvents/acetone.md"].html
+
+
+def test_every_derived_number_leads_to_the_way_it_was_found(by_path: dict[str, Page]) -> None:
+    """The link beside a derived quantity leads to its formula and to inputs that add up."""
+    body = by_path["solvents/acetone.md"].html
+    linked = re.findall(r'class="how" href="#(way-[a-z0-9-]+)"', body)
+    assert len(linked) == len(set(linked)) >= 14
+    for anchor in linked:
+        part = body.split(f'id="{anchor}"')[1].split("</details>")[0]
+        rows = [
+            re.findall(r'<span class="share">(<?)(\d+)\u202f%', row)
+            for row in re.findall(r"<tr>(.*?)</tr>", part, re.DOTALL)[1:]
+        ]
+        shares = [row for row in rows if row]
+        assert shares, anchor
+        for column in zip(*shares, strict=True):
+            total = sum(int(percent) for less, percent in column if not less)
+            assert 97 <= total <= 102, (anchor, column)
+        assert "methods.html#" in part
