@@ -15,26 +15,32 @@ Array = NDArray[np.float64]
 
 # Enough for a standard uncertainty to about 3 %, which the second shown digit does not see.
 SAMPLES = 512
-# Standard uncertainty of a value known only to lie within ± a: a/√3 (JCGM 100, 4.3.7).
-RECTANGULAR = 1 / math.sqrt(3)
+# Inputs that can be drawn beside each other.
+INPUTS = 8
 # Probabilities between which a normal distribution has ± one standard deviation.
 _CENTRAL = (0.15865525393145707, 0.8413447460685429)
 
 
-@lru_cache(maxsize=32)
-def scores(index: int, samples: int = SAMPLES) -> Array:
-    """Standard normal scores [1] of shape (samples,), the same in every run.
+def scores(index: int) -> Array:
+    """Standard normal scores [1] of shape (SAMPLES,) of input ``index``, the same in every run.
 
-    Stratified: the scores are the normal quantiles of equal slices of probability, so that their
-    mean and spread are exact, in an order that depends on ``index`` alone, so that inputs with
-    different indices are independent. JCGM 101:2008, with stratified draws.
+    JCGM 101:2008 with stratified draws: the normal quantiles of equal slices of probability in
+    an order of each input's own, then freed of what correlation chance has left between inputs,
+    so that a linear law of propagation is met exactly. Raises ``IndexError`` beyond ``INPUTS``.
     """
-    probability = (np.arange(samples) + 0.5) / samples
-    quantile = _normal_quantile(probability)
-    quantile /= np.sqrt(np.mean(quantile**2))
-    shuffled: Array = np.random.Generator(np.random.PCG64(7919 + index)).permutation(quantile)
-    shuffled.setflags(write=False)
-    return shuffled
+    return _all_scores()[index]
+
+
+@lru_cache(maxsize=1)
+def _all_scores() -> Array:
+    quantiles = _normal_quantile((np.arange(SAMPLES) + 0.5) / SAMPLES)
+    orders = (np.random.Generator(np.random.PCG64(7919 + i)) for i in range(INPUTS))
+    shuffled = np.stack([order.permutation(quantiles) for order in orders])
+    shuffled -= shuffled.mean(axis=1, keepdims=True)
+    root = np.linalg.cholesky(shuffled @ shuffled.T / SAMPLES)
+    free: Array = np.linalg.solve(root, shuffled)
+    free.setflags(write=False)
+    return free
 
 
 def _normal_quantile(probability: Array) -> Array:
