@@ -5,13 +5,22 @@ from __future__ import annotations
 import json
 import sys
 import time
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable, Iterator
+from contextlib import contextmanager
+from datetime import datetime
 from pathlib import Path
 
 import click
 
 from generator.errors import DatasetError, Problem
 
+_CONFIG = click.option(
+    "--config",
+    type=click.Path(path_type=Path, exists=True, dir_okay=False),
+    default=Path("mkdocs.yml"),
+    show_default=True,
+    help="Settings of the handbook.",
+)
 _DATA = click.option(
     "--data",
     type=click.Path(path_type=Path, file_okay=False),
@@ -88,13 +97,7 @@ def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) ->
 
 
 @main.command()
-@click.option(
-    "--config",
-    type=click.Path(path_type=Path, exists=True, dir_okay=False),
-    default=Path("mkdocs.yml"),
-    show_default=True,
-    help="Settings of the handbook.",
-)
+@_CONFIG
 @click.option(
     "--site",
     type=click.Path(path_type=Path, file_okay=False),
@@ -115,3 +118,91 @@ def build(config: Path, site: Path) -> None:
         click.echo(f"Nothing was published; {site} is as it was.", err=True)
         sys.exit(1)
     click.echo(f"{site}: built in {time.monotonic() - start:.1f} s")
+
+
+@main.command("print")
+@click.argument("solvents", metavar="SOLVENT...", nargs=-1)
+@click.option("--location", default="", help="Those with a container at this place.")
+@click.option("--all", "everything", is_flag=True, help="All substances of the handbook.")
+@click.option(
+    "--as",
+    "kind",
+    type=click.Choice(["sheets", "booklet", "labels"]),
+    default="sheets",
+    show_default=True,
+    help="One page each; the same with contents and index; shelf labels.",
+)
+@click.option("--paper", type=click.Choice(["A4", "Letter"]), help="Instead of the setting.")
+@click.option("--label-sheet", metavar="SIZE", help="Instead of the setting.")
+@click.option("--start", default=1, show_default=True, help="First free label of the first sheet.")
+@click.option("--date", type=click.DateTime(["%Y-%m-%d"]), help="Print date, today unless given.")
+@click.option(
+    "--out",
+    type=click.Path(path_type=Path, dir_okay=False),
+    help="The PDF to write, named after its kind unless given.",
+)
+@_CONFIG
+def print_(
+    solvents: tuple[str, ...],
+    location: str,
+    everything: bool,
+    kind: str,
+    paper: str | None,
+    label_sheet: str | None,
+    start: int,
+    date: datetime | None,
+    out: Path | None,
+    config: Path,
+) -> None:
+    """Print stockroom sheets, a booklet or shelf labels as PDF.
+
+    SOLVENT is a short name, name, synonym or CAS number of the handbook.
+    """
+    from generator import plugin, printing, ready, selection
+
+    if [bool(solvents), bool(location), everything].count(True) != 1:
+        raise click.UsageError("name substances, or give --location, or --all")
+    begun = time.monotonic()
+    out = out or Path(f"{kind}.pdf")
+    try:
+        known = plugin.configured(config)
+        order = printing.Order(
+            kind=kind,
+            names=solvents,
+            location=location,
+            paper=paper or known.settings.paper,
+            date=(date or datetime.now()).date(),
+            site=known.site,
+            label_sheet=label_sheet or known.label_sheet,
+            start=start,
+        )
+        with _progress(printing.STAGES) as say:
+            made = printing.produce(
+                known.data, known.settings, config.parent / ".cache", order, say
+            )  # fmt: skip
+    except selection.OrderError as error:
+        raise click.UsageError(str(error)) from error
+    except DatasetError as error:
+        _report(error.problems)
+        sys.exit(1)
+    except (ready.Refused, click.Abort) as error:
+        click.echo(str(error), err=True)
+        sys.exit(1)
+    out.write_bytes(made.pdf)
+    size, seconds = len(made.pdf) / 1e6, time.monotonic() - begun
+    click.echo(f"{out}: {made.count} substances, {size:.1f} MB, {seconds:.1f} s")
+
+
+@contextmanager
+def _progress(stages: int) -> Iterator[Callable[[str], None]]:
+    """A bar on a terminal, a line for each stage in a log."""
+    if not sys.stderr.isatty():
+        yield lambda stage: click.echo(stage, err=True)
+        return
+    with click.progressbar(length=stages, file=sys.stderr, show_eta=False) as bar:
+
+        def say(stage: str) -> None:
+            bar.label = f"{stage:<36}"
+            bar.update(1)
+
+        yield say

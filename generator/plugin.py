@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from mkdocs.config import config_options as option
+from mkdocs.config import load_config
 from mkdocs.config.base import Config, ValidationError
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
@@ -39,6 +42,7 @@ class DatasheetsConfig(Config):
     reference_temperature_c = _Temperature(default=Settings.reference_temperature_c)
     temperatures_c = option.ListOfItems(_Temperature(), default=list(Settings.temperatures_c))
     paper = option.Choice(("A4", "Letter"), default=Settings.paper)
+    label_sheet: option.Type[Any] = option.Type((str, dict), default="")
 
 
 def settings_of(config: DatasheetsConfig) -> Settings:
@@ -51,17 +55,45 @@ def settings_of(config: DatasheetsConfig) -> Settings:
     )
 
 
+@dataclass(frozen=True, slots=True)
+class Configured:
+    """What mkdocs.yml says, for a command that makes no site.
+
+    ``site`` is the address of the handbook, "" where it has none.
+    """
+
+    data: Path
+    settings: Settings
+    site: str
+    label_sheet: str | dict[str, Any]
+
+
+def configured(config_file: Path) -> Configured:
+    """Read the settings of a handbook. Raises ``ready.Refused`` when they cannot be used."""
+    config = load_config(str(config_file))
+    plugin = config.plugins.get("datasheets")
+    if not isinstance(plugin, DatasheetsPlugin):
+        raise PluginError(f"{config_file} does not name the plugin datasheets")
+    return Configured(
+        data=plugin.folder(config),
+        settings=settings_of(plugin.config),
+        site=config.site_url or "",
+        label_sheet=plugin.config.label_sheet,
+    )
+
+
 class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
     """Hands the generated pages and files to MkDocs."""
 
     _site: Site
 
-    def _folder(self, config: MkDocsConfig) -> Path:
+    def folder(self, config: MkDocsConfig) -> Path:
+        """The folder of the tables, beside mkdocs.yml."""
         return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data_
 
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Make everything before MkDocs empties the site, so that bad data leave it untouched."""
-        folder = self._folder(config)
+        folder = self.folder(config)
         try:
             self._site = build_site(folder, settings_of(self.config), folder.parent / ".cache")
         except DatasetError as error:
@@ -85,5 +117,5 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         self, server: LiveReloadServer, *, config: MkDocsConfig, builder: object
     ) -> LiveReloadServer:
         """Watch the tables in the preview."""
-        server.watch(str(self._folder(config)))
+        server.watch(str(self.folder(config)))
         return server

@@ -30,7 +30,8 @@ def typeset(template: str, data: Mapping[str, Any], date: datetime.date) -> byte
         TEMPLATES / f"{template}.typ",
         root=TEMPLATES,
         ignore_system_fonts=True,
-        sys_inputs={"data": json.dumps(data, ensure_ascii=False)},
+        # °C stays on the line of its number
+        sys_inputs={"data": json.dumps(data, ensure_ascii=False).replace(" °C", "\u00a0°C")},
         pdf_standards=["ua-1"],
         timestamp=midnight,
     )
