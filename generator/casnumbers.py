@@ -110,8 +110,8 @@ def _readings(plain: str) -> Iterator[tuple[int, int, int | None]]:
         for month in _months(word):
             yield _year(year), month, int(day) if day else None
     elif match := _MONTH_AND_YEAR.fullmatch(plain):
-        month, year, year_first, month_last = match.groups()
-        yield int(year or year_first), int(month or month_last), None
+        month_first, year_last, year_first, month_last = match.groups()
+        yield int(year_last or year_first), int(month_first or month_last), None
     elif re.fullmatch(r"\d{2,7}(\.0+)?", plain, re.ASCII):
         serial = int(float(plain))
         if _FIRST_SERIAL <= serial <= _LAST_SERIAL:
@@ -143,7 +143,7 @@ def _exists(year: int, month: int, day: int | None) -> bool:
 
 def is_date(text: str) -> bool:
     """Whether ``text`` looks like a date of any usual kind; a bare number does not."""
-    return bool(readings(text)) and not text.strip().replace(".", "").isdecimal()
+    return bool(readings(text)) and not re.fullmatch(r"\d+(\.\d+)?", text.strip())
 
 
 def from_date(text: str) -> tuple[str, ...]:

@@ -10,9 +10,10 @@ from functools import cached_property
 from pathlib import Path
 from typing import TypeVar
 
+from generator.cells import NOTE
 from generator.errors import DatasetError
 from generator.quantities import QUANTITIES
-from generator.tables import NOTE, Row, Tables, read_tables, revisions
+from generator.tables import Row, Tables, read_tables, revisions
 from generator.units import ZERO_CELSIUS, convert, convert_difference
 
 # What vacuum has: relative uncertainties are of what the liquid adds to it.

@@ -89,7 +89,7 @@ _ALL = (
         needs_temperature=True,
     ),
     _measured(
-        "density", "Density", "ρ", "g/cm3", 4, (0.3, 4.0),
+        "density", "Density", "ρ", "g/cm3", 4, (0.05, 4.0),
         "Mass of the pure liquid by volume, at 1 atm or at its own vapour pressure.",
         "Liquid range; curves only inside their stated range.",
         needs_temperature=True,
@@ -127,13 +127,13 @@ _ALL = (
         needs_temperature=True,
     ),
     _measured(
-        "viscosity", "Dynamic viscosity", "η", "mPa s", 3, (0.01, 1e6),
+        "viscosity", "Dynamic viscosity", "η", "mPa s", 3, (0.001, 1e9),
         "Dynamic (shear) viscosity of the liquid.",
         "Newtonian liquid; curves only inside their stated range.",
         needs_temperature=True,
     ),
     _measured(
-        "vapour_pressure", "Vapour pressure", "p", "kPa", 3, (0.0, 20_000.0),
+        "vapour_pressure", "Vapour pressure", "p", "kPa", 3, (0.0, 200_000.0),
         "Pressure of the vapour in equilibrium with the liquid.",
         "Curves only inside their stated range.",
         needs_temperature=True,

@@ -9,40 +9,32 @@ from __future__ import annotations
 
 import csv
 import io
-import math
-import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from datetime import date
 from difflib import get_close_matches
 from hashlib import sha256
 from pathlib import Path
 from typing import Any
 
+from generator.cells import NOTE, Fault, plain, read_cell
 from generator.errors import Problem
-from generator.schema import Field, TableSchema, read_package, read_schema
+from generator.schema import TableSchema, read_package, read_schema
 
-NOTE = "note"
 _BOM = "\ufeff"
-_UNREADABLE = "\ufffd"
-_MINUS = "\u2212"
-# Spaces that look like a space and are none.
-_SPACES = re.compile("[\u00a0\u2000-\u200a\u202f\u205f\u3000]")
-_INVISIBLE = re.compile("[\u200b-\u200d\u2060\ufeff]")
-_ERROR_CELLS = re.compile(r"#(N/A|REF!|VALUE!|DIV/0!|NAME\?|NUM!|NULL!|NV|WERT!|BEZUG!|#+)", re.I)
-_NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?", re.ASCII)
-_COMMA_NUMBER = re.compile(r"[+-]?\d+,\d+([eE][+-]?\d+)?", re.ASCII)
-_GROUPED = re.compile(r"[+-]?\d{1,3}([., ]\d{3})+([.,]\d+)?", re.ASCII)
-_DAY_FIRST = re.compile(r"(\d{1,2})[./](\d{1,2})[./](\d{4})", re.ASCII)
 _NAMES = {"\t": "tabs", ";": "semicolons", ",": "commas"}
 
 
 @dataclass(frozen=True, slots=True)
 class Row:
-    """One row: ``line`` is its first physical line in the file, ``cells`` clean text by column."""
+    """One row: ``line`` is its first physical line in the file, ``cells`` clean text by column.
+
+    ``whole`` is false where the row has too many or too few cells, so that what stands in a cell
+    may belong to another column.
+    """
 
     line: int
     cells: Mapping[str, str]
+    whole: bool = True
 
     def __getitem__(self, column: str) -> str:
         return self.cells.get(column, "")
@@ -140,7 +132,7 @@ class _Reader:
         self._schema = schema
         self._fields = {field.name: field for field in schema.fields}
         self._problems: list[Problem] = []
-        self._clean: dict[tuple[str, str], str] = {}
+        self._read: dict[tuple[str, str], tuple[str, tuple[Fault, ...]]] = {}
 
     def _say(
         self, line: int, column: str, kind: str, found: str, expected: str, hint: str,
@@ -214,12 +206,12 @@ class _Reader:
                 return
             if cells is None:
                 return
-            if any(_SPACES.sub(" ", cell).strip() for cell in cells):
+            if any(map(plain, cells)):
                 yield line, cells
             line = reader.line_num + 1
 
     def _header(self, line: int, header: Sequence[str]) -> tuple[str, ...]:
-        columns = [_SPACES.sub(" ", _INVISIBLE.sub("", name)).strip() for name in header]
+        columns = [plain(name) for name in header]
         while columns and not columns[-1]:
             columns.pop()
         missing = [name for name in self._fields if name not in columns]
@@ -234,8 +226,12 @@ class _Reader:
             self._say(
                 line, name or f"column {i + 1}", "unknown-column", name or "no name",
                 f"one of {', '.join(self._schema.columns)}",
-                f"{near[0]}" if near else "remove the column, or describe it in datapackage.json",
+                near[0] if near else "remove the column, or describe it in datapackage.json",
             )  # fmt: skip
+            if near:
+                # Read as what it must mean, so that its cells are looked at as well.
+                columns[i] = near[0]
+                missing.remove(near[0])
         for name in missing:
             self._say(line, name, "missing-column", f"no column {name}", name,
                       f"put the column {name} back: {self._fields[name].description}")  # fmt: skip
@@ -247,22 +243,22 @@ class _Reader:
             self._say(line, columns[-1], "too-many-cells", f"{len(cells)} cells, beyond the last "
                       f"column: {', '.join(beyond)}", f"{len(columns)} cells",
                       'put text that holds a separator into quotes: "a, b"')  # fmt: skip
+        whole = not beyond and len(cells) >= len(columns)
         clean = {}
         for name, cell in zip(columns, cells, strict=False):
-            field = self._fields.get(name)
-            clean[name] = self._known(line, field, cell) if field else cell.strip()
-        return Row(line, clean)
+            known = whole and name in self._fields
+            clean[name] = self._cell(line, name, cell) if known else cell.strip()
+        return Row(line, clean, whole)
 
-    def _known(self, line: int, field: Field, cell: str) -> str:
-        """The cell cleaned; a text met before, of which there was nothing to say, is known."""
-        key = field.name, cell
-        if key not in self._clean:
-            said = len(self._problems)
-            text = self._cell(line, field, cell)
-            if len(self._problems) > said:
-                return text
-            self._clean[key] = text
-        return self._clean[key]
+    def _cell(self, line: int, column: str, cell: str) -> str:
+        # The same text stands in many rows; it is looked at once.
+        key = column, cell
+        if key not in self._read:
+            self._read[key] = read_cell(self._fields[column], cell)
+        text, faults = self._read[key]
+        for fault in faults:
+            self._say(line, column, *fault)
+        return text
 
     def _ending(
         self, text: str, body: Sequence[tuple[int, Sequence[str]]], columns: tuple[str, ...]
@@ -281,96 +277,3 @@ class _Reader:
         if body and not text.endswith(("\n", "\r")) and len(body[-1][1]) >= len(columns):
             self._say(body[-1][0], columns[-1], "no-last-line-end", "the last row has no line end",
                       "a line end", "look whether the last row is whole", NOTE)  # fmt: skip
-
-    def _cell(self, line: int, field: Field, cell: str) -> str:
-        def say(kind: str, found: str, expected: str, hint: str, severity: str = "error") -> None:
-            self._say(line, field.name, kind, found, expected, hint, severity)
-
-        if _UNREADABLE in cell:
-            say("encoding", repr(cell), "UTF-8 text",
-                "save the table again as CSV UTF-8, then type the marked letters anew")  # fmt: skip
-            return cell.strip()
-        text = _INVISIBLE.sub("", _SPACES.sub(" ", cell)).strip()
-        if text != cell.strip(" \t\r\n") or _SPACES.search(cell):
-            say("odd-space", repr(cell), "plain spaces", f"{text}; nothing to do, it is read so",
-                NOTE)  # fmt: skip
-        if _ERROR_CELLS.fullmatch(text):
-            say("spreadsheet-error", text, "a value, or a blank cell",
-                "mend the formula in the spreadsheet, or leave the cell blank")  # fmt: skip
-            return ""
-        if not text:
-            if field.required:
-                say("blank", "a blank cell", field.description, f"type the {field.name}")
-            return ""
-        if field.type in ("number", "integer"):
-            return self._number(line, field, text)
-        if field.type == "date" and not _is_date(text):
-            say("wrong-type", text, "a date as year-month-day, 2026-03-31",
-                _as_date(text) or "the date as year-month-day")  # fmt: skip
-            return ""
-        if field.enum and text not in field.enum:
-            near = get_close_matches(text.lower(), field.enum, 1)
-            say("not-in-list", text, f"one of {', '.join(field.enum)}",
-                near[0] if near else f"one of {', '.join(field.enum)}")  # fmt: skip
-        elif field.pattern and not re.fullmatch(field.pattern, text):
-            say("wrong-shape", text, field.description, f"text of the shape {field.pattern}")
-        return text
-
-    def _number(self, line: int, field: Field, text: str) -> str:
-        """The number as plain text, "" where it is none."""
-
-        def say(kind: str, expected: str, hint: str, severity: str = "error") -> None:
-            self._say(line, field.name, kind, text, expected, hint, severity)
-
-        plain = text
-        if _MINUS in plain:
-            plain = plain.replace(_MINUS, "-")
-            say("minus-sign", "the hyphen as minus sign", f"{plain}; nothing to do, it is read so",
-                NOTE)  # fmt: skip
-        if field.decimal_comma:
-            plain = plain.replace(",", ".")
-        if not _NUMBER.fullmatch(plain) or not math.isfinite(float(plain)):
-            if _COMMA_NUMBER.fullmatch(plain):
-                say("decimal-comma", "a decimal point",
-                    f"{plain.replace(',', '.')} (or declare the comma: decimalChar in "
-                    "datapackage.json)")  # fmt: skip
-            elif _GROUPED.fullmatch(plain):
-                say("wrong-type", "digits without separators between thousands",
-                    "the number with a point for the decimals and nothing else")  # fmt: skip
-            else:
-                number = re.match(_NUMBER, plain)
-                say("wrong-type", "a number",
-                    f"{number[0]}, with its unit in a column of its own" if number
-                    else "the number, or a blank cell")  # fmt: skip
-            return ""
-        if field.type == "integer" and not float(plain).is_integer():
-            say("wrong-type", "a whole number", f"{float(plain):.0f}")
-            return ""
-        value = float(plain)
-        if field.low is not None and value < field.low:
-            say("out-of-bounds", f"at least {field.low:g}", field.description)
-        if field.high is not None and value > field.high:
-            say("out-of-bounds", f"at most {field.high:g}", field.description)
-        return plain
-
-
-def _is_date(text: str) -> bool:
-    try:
-        return date.fromisoformat(text).isoformat() == text
-    except ValueError:
-        return False
-
-
-def _as_date(text: str) -> str:
-    """An unambiguous date in other spellings as year-month-day, else ""."""
-    match = _DAY_FIRST.fullmatch(text)
-    if match is None:
-        return ""
-    first, second, year = map(int, match.groups())
-    readings = {(first, second), (second, first)}
-    days = [
-        f"{year:04d}-{month:02d}-{day:02d}"
-        for day, month in sorted(readings)
-        if _is_date(f"{year:04d}-{month:02d}-{day:02d}")
-    ]
-    return " or ".join(days)
