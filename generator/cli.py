@@ -13,6 +13,7 @@ from pathlib import Path
 import click
 
 from generator.errors import DatasetError, Problem
+from generator.tablecommands import sheet
 
 _CONFIG = click.option(
     "--config",
@@ -33,6 +34,9 @@ _DATA = click.option(
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
 def main() -> None:
     """Check the solvent tables, let them grow, and build the handbook from them."""
+
+
+main.add_command(sheet)
 
 
 @main.command()

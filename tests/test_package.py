@@ -145,7 +145,11 @@ def documentation() -> str:
 
 
 def _commands() -> Iterator[tuple[str, click.Command]]:
-    yield from main.commands.items()
+    for name, command in main.commands.items():
+        if isinstance(command, click.Group):
+            yield from ((f"{name} {part}", each) for part, each in command.commands.items())
+        else:
+            yield name, command
 
 
 @pytest.mark.parametrize("name", [name for name, _ in _commands()])
