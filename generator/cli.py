@@ -13,6 +13,7 @@ from pathlib import Path
 import click
 
 from generator.errors import DatasetError, Problem
+from generator.numbercommands import explain
 from generator.tablecommands import sheet
 
 _CONFIG = click.option(
@@ -37,6 +38,7 @@ def main() -> None:
 
 
 main.add_command(sheet)
+main.add_command(explain)
 
 
 @main.command()

@@ -13,18 +13,10 @@ from generator.inputs import anchor_temperature
 from generator.metrics import Handbook, Settings, compute
 from generator.quantities import QUANTITIES
 from generator.reconcile import Candidate, Decision, decide
+from generator.selection import OrderError
 from generator.uncertainty import format_value
 from generator.units import ZERO_CELSIUS
 from generator.values import MARKS, LiquidRange, Value
-
-
-class UnknownNameError(Exception):
-    """No such substance or quantity; ``near`` holds the nearest known ones."""
-
-    def __init__(self, what: str, text: str, near: tuple[str, ...]) -> None:
-        self.near = near
-        hint = f"; did you mean {' or '.join(near)}?" if near else ""
-        super().__init__(f"no {what} {text!r}{hint}")
 
 
 @dataclass(frozen=True)
@@ -46,35 +38,20 @@ class Way:
     note: str
 
 
-def find_solvent(dataset: Dataset, text: str) -> str:
-    """Slug of the substance called ``text``: slug, name, synonym or CAS number.
-
-    Raises ``UnknownNameError`` with the nearest names.
-    """
-    wanted = " ".join(text.split()).casefold()
-    names: dict[str, str] = {}
-    for slug, solvent in dataset.solvents.items():
-        for name in (slug, solvent.name, solvent.cas, solvent.cas.replace("-", "")):
-            names[name.casefold()] = slug
-    for slug, solvent in dataset.solvents.items():
-        for synonym in solvent.synonyms:
-            names.setdefault(synonym.casefold(), slug)
-    if wanted not in names:
-        raise UnknownNameError("substance", text, tuple(get_close_matches(wanted, names, 3)))
-    return names[wanted]
-
-
 def find_quantity(text: str) -> str:
-    """Key of the quantity called ``text``: key, name or symbol. Raises ``UnknownNameError``."""
+    """Key of the quantity called ``text``: key, name or symbol.
+
+    Raises ``OrderError`` with the nearest keys.
+    """
     wanted = re.sub(r"[\s-]+", "_", text.strip())
     for key, quantity in QUANTITIES.items():
         if wanted.casefold() in (key, re.sub(r"[\s–-]+", "_", quantity.name.casefold())):
             return key
         if text.strip() == quantity.symbol:
             return key
-    raise UnknownNameError(
-        "quantity", text, tuple(get_close_matches(wanted.casefold(), QUANTITIES, 3))
-    )
+    near = get_close_matches(wanted.casefold(), QUANTITIES, 3)
+    hint = f"; nearest: {', '.join(near)}" if near else ""
+    raise OrderError(f"no quantity is called {text!r}{hint}")
 
 
 def only(dataset: Dataset, slug: str) -> Dataset:

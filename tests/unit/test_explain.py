@@ -1,13 +1,17 @@
 """The way to a number says everything that went into it, and its shares add up."""
 
+import json
 import math
 
 import numpy as np
 import pytest
+from click.testing import CliRunner
 
 from generator import explain, polarity
+from generator.cli import main
 from generator.metrics import DEPENDS, Handbook, Settings
 from generator.quantities import QUANTITIES
+from generator.selection import OrderError
 from generator.units import ZERO_CELSIUS
 
 
@@ -97,11 +101,6 @@ def test_no_value_is_said_and_not_made_up(handbook: Handbook) -> None:
     assert "no value here" in "\n".join(explain.lines(handbook, way))
 
 
-@pytest.mark.parametrize("text", ["acetone", "Acetone", "67-64-1", "67641", " 2-propanone "])
-def test_substances_are_found_by_any_of_their_names(handbook: Handbook, text: str) -> None:
-    assert explain.find_solvent(handbook.dataset, text) == "acetone"
-
-
 @pytest.mark.parametrize(
     "text", ["kirkwood-function", "Kirkwood function", "kirkwood_function", "f(ε)"]
 )
@@ -109,12 +108,26 @@ def test_quantities_are_found_by_key_name_and_symbol(text: str) -> None:
     assert explain.find_quantity(text) == "kirkwood_function"
 
 
-def test_unknown_names_come_with_the_nearest(handbook: Handbook) -> None:
-    with pytest.raises(explain.UnknownNameError, match="did you mean") as error:
-        explain.find_solvent(handbook.dataset, "acetonne")
-    assert "acetone" in error.value.near
-    with pytest.raises(explain.UnknownNameError, match="permittivity"):
+def test_unknown_quantities_come_with_the_nearest() -> None:
+    with pytest.raises(OrderError, match="nearest: relative_permittivity"):
         explain.find_quantity("relative permitivity")
+
+
+def test_the_command(handbook: Handbook) -> None:
+    """Any name of a substance will do; wrong ones are usage errors, a missing value is status 1."""
+    data = str(handbook.dataset.folder)
+    run = CliRunner().invoke
+    done = run(main, ["explain", "67-64-1", "f(ε)", "--temperature", "20", "--data", data])
+    assert done.exit_code == 0, done.output
+    assert done.output.startswith("Acetone\nKirkwood function f(ε) = 0.46")
+    made = run(main, ["explain", "acetone", "density", "--json", "--data", data])
+    way = json.loads(made.output)
+    assert way["value"]["value"] == pytest.approx(0.7848, abs=0.001)
+    assert sum(c["weight"] for c in way["decision"]["candidates"]) == pytest.approx(1)
+    assert run(main, ["explain", "acetonne", "density", "--data", data]).exit_code == 2
+    gone = run(main, ["explain", "diethyl ether", "density", "--temperature", "90", "--data", data])
+    assert gone.exit_code == 1
+    assert "no value here" in gone.output
 
 
 def test_formulas_in_one_line() -> None:

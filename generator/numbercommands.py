@@ -1,0 +1,57 @@
+"""Commands about single numbers: how one came about."""
+
+from __future__ import annotations
+
+import json
+import sys
+from dataclasses import asdict
+from pathlib import Path
+
+import click
+
+from generator.errors import DatasetError
+from generator.tablecommands import DATA, report
+
+
+@click.command()
+@click.argument("solvent")
+@click.argument("quantity")
+@DATA
+@click.option(
+    "--temperature",
+    type=float,
+    help="In °C; without it, the reference temperature of the substance.",
+)
+@click.option("--json", "as_json", is_flag=True, help="The whole trail as JSON, for machines.")
+def explain(
+    solvent: str, quantity: str, data: Path, temperature: float | None, as_json: bool
+) -> None:
+    """Say how a number came about: formula, inputs and their shares, sources, weights, rejections.
+
+    SOLVENT is a name, a CAS number or the name of a datasheet; QUANTITY a name, key or symbol.
+    """
+    from generator import explain as explaining
+    from generator.dataset import load_dataset
+    from generator.metrics import Settings
+    from generator.selection import OrderError, choose
+    from generator.units import ZERO_CELSIUS
+
+    try:
+        dataset = load_dataset(data)
+        (slug,) = choose(dataset, [solvent])
+        key = explaining.find_quantity(quantity)
+    except DatasetError as error:
+        report(error.problems)
+        sys.exit(1)
+    except OrderError as error:
+        raise click.UsageError(str(error)) from error
+    kelvin = None if temperature is None else temperature + ZERO_CELSIUS
+    handbook, way = explaining.explain(dataset, Settings(), slug, key, kelvin)
+    if as_json:
+        click.echo(json.dumps(asdict(way), ensure_ascii=False, indent=1))
+    else:
+        click.echo(dataset.solvents[slug].name)
+        for line in explaining.lines(handbook, way):
+            click.echo(line)
+    if way.value is None:
+        sys.exit(1)
