@@ -154,6 +154,44 @@ class CurveForm:
 
 
 @dataclass(frozen=True, slots=True)
+class Customary:
+    """The uncertainty taken where a kind of source states none."""
+
+    kind: str
+    quantity: str
+    share: str
+    reason: str
+
+
+@dataclass(frozen=True, slots=True)
+class Rules:
+    """The numbers in the rules of the handbook, ready for print."""
+
+    reach: str
+    same: str
+    outlier: str
+    samples: str
+    coverage: str
+    polar: str
+    unpolar: str
+    surely: str
+    expansion: str
+    onsager: str
+    maxwell: str
+    customary: tuple[Customary, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ModelCheck:
+    """A model held against measured numbers."""
+
+    anchor: str
+    title: str
+    words: str
+    figure: Markup
+
+
+@dataclass(frozen=True, slots=True)
 class SourceEntry:
     """One source and how much of the handbook comes from it."""
 

@@ -9,26 +9,22 @@ from typing import Any
 
 from markupsafe import Markup
 
-from generator import thermal
 from generator.catalogue import Catalogue, Links, anchor
 from generator.comparisons import TITLES
 from generator.contexts import Foot, Link
 from generator.datasheet import POLAR
 from generator.listings import (
     Count,
-    CurveForm,
     DictionaryField,
     DictionaryTable,
     Download,
     Group,
     Home,
-    Method,
     ReviewRow,
     SourceEntry,
 )
 from generator.polarity_map import Axis, Point, polarity_map
-from generator.quantities import QUANTITIES
-from generator.wording import celsius_label, number, prose, symbol_markup, unit_label
+from generator.wording import celsius_label, number, prose
 
 ROOT = ""  # these pages stand at the top
 
@@ -163,53 +159,6 @@ def review(catalogue: Catalogue) -> tuple[ReviewRow, ...]:
             prose(finding.problem.hint),
         )
         for finding in catalogue.findings
-    )
-
-
-def math_markup(formula: str, *, block: bool = True) -> Markup:
-    """A LaTeX formula as MathML, which browsers draw without any script."""
-    from latex2mathml.converter import convert
-
-    if not formula:
-        return Markup("")
-    return Markup(convert(formula, display="block" if block else "inline"))
-
-
-def methods() -> tuple[tuple[Method, ...], tuple[Method, ...]]:
-    """Measured and derived quantities, each with its formula, validity and source."""
-    made = {"measured": [], "derived": []}  # type: dict[str, list[Method]]
-    for quantity in QUANTITIES.values():
-        unit = unit_label(quantity.unit)
-        made[quantity.kind].append(
-            Method(
-                anchor(quantity.key),
-                quantity.name,
-                symbol_markup(quantity.symbol),
-                unit or "1",
-                math_markup(quantity.formula),
-                quantity.definition,
-                quantity.validity,
-                quantity.source,
-                str(quantity.decimals),
-                f"{quantity.low:g} to {quantity.high:g} {unit}".strip().replace("-", "\u2212"),
-            )
-        )
-    return tuple(made["measured"]), tuple(made["derived"])
-
-
-def curve_forms(catalogue: Catalogue) -> tuple[CurveForm, ...]:
-    """The forms a temperature curve may have, and how many curves of the handbook have it."""
-    used = Counter(curve.form for curve in catalogue.handbook.dataset.correlations)
-    return tuple(
-        CurveForm(
-            f"form-{anchor(key)}",
-            key,
-            ", ".join(form.coefficients),
-            math_markup(form.formula),
-            form.source,
-            f"{used[key]} curves" if used[key] != 1 else "1 curve",
-        )
-        for key, form in thermal.FORMS.items()
     )
 
 

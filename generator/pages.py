@@ -11,7 +11,7 @@ from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined, Template
 
-from generator import comparisons, overviews
+from generator import comparisons, methods, overviews
 from generator.catalogue import Catalogue, catalogue
 from generator.contexts import Datasheet, Foot
 from generator.datasheet import datasheet
@@ -49,7 +49,8 @@ def render_all(
 
     ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
     polarity scale, ``slug:ribbon`` the temperature ribbon, ``slug:structure``
-    a drawing to take instead of the plain one. ``package`` is the parsed
+    a drawing to take instead of the plain one; ``accuracy:KEY`` a model against measured numbers
+    (see ``accuracy``). ``package`` is the parsed
     ``datapackage.json``; without it the data dictionary lists no tables.
     """
     book = catalogue(handbook, findings)
@@ -81,10 +82,11 @@ def _whole(
         menu_entries=menu, **shared,
     )  # fmt: skip
     yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
-    measured, derived = overviews.methods()
+    measured, derived = methods.methods()
     yield _page(
         "methods.md", "methods", "Methods",
-        measured=measured, derived=derived, forms=overviews.curve_forms(book), **shared,
+        measured=measured, derived=derived, forms=methods.curve_forms(book),
+        rules=methods.rules(book), checks=methods.model_checks(book, figures), **shared,
     )  # fmt: skip
     yield _page("sources.md", "sources", "Sources", sources=overviews.sources(book), **shared)
     yield _page(

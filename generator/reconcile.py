@@ -57,7 +57,7 @@ _USUAL_SLOPE = {
 _SLOPE_SHARE = 0.1
 _CALCULATED = "calculated"
 # Further out than this many times its own and the common spread, a value is set aside.
-_OUTLIER = 3.5
+OUTLIER = 3.5
 
 
 def liquid_range(dataset: Dataset, solvent: str) -> LiquidRange:
@@ -276,13 +276,13 @@ def _merge(
 
 
 def _without_outliers(entries: Sequence[_Entry]) -> list[_Entry]:
-    """Entries within ``_OUTLIER`` times their own and the common spread of the median."""
+    """Entries within ``OUTLIER`` times their own and the common spread of the median."""
     if len(entries) < 3:
         return list(entries)
     middle = median(e.value for e in entries)
     common = 1.4826 * median(abs(e.value - middle) for e in entries)
     kept = [
-        e for e in entries if abs(e.value - middle) <= _OUTLIER * math.hypot(common, e.uncertainty)
+        e for e in entries if abs(e.value - middle) <= OUTLIER * math.hypot(common, e.uncertainty)
     ]
     return kept or list(entries)
 
