@@ -10,7 +10,7 @@ from generator.catalogue import Catalogue
 from generator.contexts import Datasheet, Foot
 from generator.datasheet import datasheet
 from generator.selection import OrderError
-from generator.sheets import Edition, breakable, imprint, picture
+from generator.sheets import LONGEST_NAME, Edition, breakable, imprint, picture
 from generator.typesetting import qr_code, typeset
 
 PAPERS = {"A4": (210.0, 297.0), "Letter": (215.9, 279.4)}
@@ -117,7 +117,7 @@ def content(sheet: Datasheet, edition: Edition) -> dict[str, Any]:
     statements = " ".join(line.h_statements for line in sheet.handling if line.h_statements)
     permittivity = sheet.permittivity
     return {
-        "name": breakable(sheet.name),
+        "name": breakable(sheet.name, LONGEST_NAME),
         "cas": sheet.cas,
         "permittivity": f"ε = {permittivity.sentence}" if permittivity else "ε not known",
         "polar": "Polarity not known" if sheet.polar_key == "not-known" else sheet.polar,

@@ -29,7 +29,7 @@ POLARITY = (
     "expected_temperature_coefficient",
 )  # fmt: skip
 SYNONYMS_LENGTH = 150  # characters
-LONGEST_WORD = 26  # characters; a longer one may be broken anywhere
+LONGEST_NAME, LONGEST_WORD = 40, 24  # characters; a longer word may be broken anywhere
 CROP_MARGIN = 4.0  # px round a structure
 TITLE = "Solvent datasheets"
 
@@ -59,10 +59,11 @@ def sheet_of(
 ) -> dict[str, Any]:
     """All that the print templates are told of one substance, as plain data."""
     sheet = datasheet(book, slug, figures, foot)
-    return content(sheet, _polarity(book.handbook, slug), edition)
+    return content(sheet, polarity_rows(book.handbook, slug), edition)
 
 
-def _polarity(handbook: Handbook, slug: str) -> tuple[QuantityRow, ...]:
+def polarity_rows(handbook: Handbook, slug: str) -> tuple[QuantityRow, ...]:
+    """What a sheet says beside the key values, at the substance's own reference temperature."""
     return tuple(
         QuantityRow(
             QUANTITIES[key].name,
@@ -78,14 +79,14 @@ def _polarity(handbook: Handbook, slug: str) -> tuple[QuantityRow, ...]:
 def content(sheet: Datasheet, polarity: Sequence[QuantityRow], edition: Edition) -> dict[str, Any]:
     """A datasheet as the plain data of a print template. ``polarity`` adds to the key values."""
     address = edition.address(sheet.slug)
-    series = _series(sheet)
+    cells = series(sheet)
     permittivity = sheet.permittivity
     observed = sheet.trend.observed
     rows = (*sheet.key_values, *polarity)
-    marks = marks_of(*(row.number for row in rows), *series)
+    marks = marks_of(*(row.number for row in rows), *cells)
     return {
         "anchor": f"solvent-{sheet.slug}",
-        "name": breakable(sheet.name),
+        "name": breakable(sheet.name, LONGEST_NAME),
         "cas": sheet.cas,
         "cas_order": [int(part) for part in sheet.cas.split("-") if part.isdigit()],
         "family": sheet.family,
@@ -109,7 +110,7 @@ def content(sheet: Datasheet, polarity: Sequence[QuantityRow], edition: Edition)
         ],
         "series": [
             {"temperature": t, "number": _plain(cell), "reference": i == sheet.reference_column}
-            for i, (t, cell) in enumerate(zip(sheet.temperatures, series, strict=True))
+            for i, (t, cell) in enumerate(zip(sheet.temperatures, cells, strict=True))
         ],
         "key": [_row(row) for row in sheet.key_values],
         "polarity": [_row(row) for row in polarity],
@@ -150,11 +151,11 @@ def imprint(foot: Foot, edition: Edition) -> dict[str, str]:
     }
 
 
-def _series(sheet: Datasheet) -> tuple[Number | None, ...]:
+def series(sheet: Datasheet) -> tuple[Number | None, ...]:
     """The permittivity at each of the laboratory's temperatures."""
     name = QUANTITIES["relative_permittivity"].name
-    cells = [row.cells for group in sheet.metrics for row in group.rows if row.name == name]
-    return cells[0] if cells else (None,) * len(sheet.temperatures)
+    found = [row.cells for group in sheet.metrics for row in group.rows if row.name == name]
+    return found[0] if found else (None,) * len(sheet.temperatures)
 
 
 def _flash_point(sheet: Datasheet) -> str:
@@ -210,7 +211,6 @@ _LABEL = re.compile(r'aria-label="([^"]*)"')
 # The small pictures are printed smaller than shown on a page, their words no smaller than the rest.
 _LETTERING = re.compile(r'font-family="[^"]*" font-size="[^"]*"')
 _FRAME = re.compile(r'width="[\d.]+" height="[\d.]+" viewBox="[^"]*"')
-_LONG = re.compile(rf"[^\s\u200b-]{{{LONGEST_WORD},}}")
 
 
 def runs(markup: Markup) -> list[tuple[str, bool]]:
@@ -219,10 +219,9 @@ def runs(markup: Markup) -> list[tuple[str, bool]]:
     return [(html.unescape(piece), i % 2 == 1) for i, piece in enumerate(pieces) if piece]
 
 
-def breakable(text: str) -> str:
-    """Text whose longest unbroken words may be broken, so that no column is ever too narrow."""
-    half = LONGEST_WORD // 2
-    return _LONG.sub(lambda found: re.sub(rf"(.{{{half}}})", "\\1\u200b", found[0]), text)
+def breakable(text: str, longest: int = LONGEST_WORD) -> str:
+    """Text whose longest words may be broken anywhere, so that no column is ever too narrow."""
+    return re.sub(rf"[^\s-]{{{longest + 1},}}", lambda found: "\u200b".join(found[0]), text)
 
 
 def picture(svg: str, text: str) -> dict[str, str] | None:
