@@ -9,7 +9,7 @@ from __future__ import annotations
 import io
 import re
 import statistics
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from functools import lru_cache
 from importlib.metadata import version
@@ -44,10 +44,25 @@ def draw_all(inputs: Sequence[FigureInput], cache: Cache) -> dict[str, str]:
 
     What cannot be shown, because nothing is known of it, is left out.
     """
-    drawn = _kept_or_drawn(inputs, cache)
+    return {**_kept_or_drawn(inputs, cache), **_small(inputs, inputs)}
+
+
+def draw_small(
+    inputs: Sequence[FigureInput], slugs: Collection[str], cache: Cache
+) -> dict[str, str]:
+    """Scale, ribbon and structure of some substances, without the curves: what prints carry.
+
+    ``inputs`` are those of the whole handbook, which every scale shows.
+    """
+    wanted = [item for item in inputs if item.slug in slugs]
+    return {**_kept_or_drawn(wanted, cache, curves=False), **_small(inputs, wanted)}
+
+
+def _small(inputs: Sequence[FigureInput], shown: Sequence[FigureInput]) -> dict[str, str]:
+    drawn: dict[str, str] = {}
     known = [item.kirkwood[0] for item in inputs if item.kirkwood is not None]
     quartiles = statistics.quantiles(known, n=4, method="inclusive") if len(known) > 3 else []
-    for item in inputs:
+    for item in shown:
         if item.kirkwood is not None:
             drawn[f"{item.slug}:scale"] = _scale(item, quartiles)
         if item.chosen is not None:
@@ -86,10 +101,12 @@ def _ribbon(shown: FigureInput) -> str:
 # ---- drawing what is missing -------------------------------------------------------------------
 
 
-def _kept_or_drawn(inputs: Sequence[FigureInput], cache: Cache) -> dict[str, str]:
+def _kept_or_drawn(
+    inputs: Sequence[FigureInput], cache: Cache, *, curves: bool = True
+) -> dict[str, str]:
     wanted: dict[str, tuple[str, FigureInput, str]] = {}
     for item in inputs:
-        if item.chosen is not None or item.points or item.lines:
+        if curves and (item.chosen is not None or item.points or item.lines):
             wanted[item.slug] = ("curve", item, digest(_version("curve"), item, alt_text(item)))
         wanted[f"{item.slug}:structure"] = (
             "structure", item, digest(_version("structure"), item.smiles)
@@ -148,13 +165,26 @@ def _version(kind: str) -> str:
 
 @lru_cache(maxsize=1)
 def _canvas() -> tuple[Figure, Axes]:
-    """The one figure that is drawn on again and again."""
+    """The one figure that is drawn on again and again, with all that stays the same on it."""
     from matplotlib.backends.backend_svg import FigureCanvasSVG
     from matplotlib.figure import Figure
+    from matplotlib.ticker import MaxNLocator
 
     figure = Figure((8.0, 4.2), frameon=False)
     FigureCanvasSVG(figure)
-    return figure, figure.add_axes((0.09, 0.135, 0.89, 0.72))
+    axes = figure.add_axes((0.09, 0.135, 0.89, 0.72))
+    axes.patch.set_visible(False)
+    for axis in (axes.xaxis, axes.yaxis):
+        axis.set_major_locator(MaxNLocator(6, steps=[1, 2, 2.5, 5, 10]))
+    axes.ticklabel_format(useOffset=False)
+    axes.tick_params(length=0, labelcolor=COLOURS["soft"], pad=6)
+    axes.grid(color=COLOURS["rule"], linewidth=0.8)
+    axes.set_axisbelow(True)
+    axes.spines[["top", "right"]].set_visible(False)
+    axes.spines[["left", "bottom"]].set(color=COLOURS["edge"], linewidth=1.0)
+    axes.set_xlabel("Temperature / °C", color=COLOURS["ink"])
+    axes.set_ylabel("Relative permittivity ε", color=COLOURS["ink"])
+    return figure, axes
 
 
 _MARKERS = ("o", "s", "^", "D", "v", "P", "X")
@@ -176,7 +206,7 @@ def _curve(shown: FigureInput) -> str:
             }
         )
         figure, axes = _canvas()
-        axes.cla()
+        _wipe(axes)
         _window(axes, shown)
         _plot(axes, shown)
         axes.legend(
@@ -184,14 +214,20 @@ def _curve(shown: FigureInput) -> str:
             borderaxespad=0.1, handlelength=2.2, columnspacing=1.6, labelcolor=COLOURS["ink"],
         )  # fmt: skip
         drawn = io.StringIO()
-        figure.savefig(drawn, format="svg", metadata={"Date": None}, transparent=True)
+        figure.savefig(drawn, format="svg", metadata={"Date": None})
     return _tidy(drawn.getvalue(), alt_text(shown))
+
+
+def _wipe(axes: Axes) -> None:
+    """Take off what was drawn last; clearing the axes would make every tick anew."""
+    for container in list(axes.containers):
+        container.remove()
+    for artist in (*axes.lines, *axes.patches, *axes.texts):
+        artist.remove()
 
 
 def _window(axes: Axes, shown: FigureInput) -> None:
     """Axes wide enough for everything known, shaded where the substance is not liquid."""
-    from matplotlib.ticker import MaxNLocator
-
     points = [*shown.points, *([shown.chosen] if shown.chosen else [])]
     at = [p.temperature for p in points] + [t for line in shown.lines for t in line.temperatures]
     values = [p.value + side * p.uncertainty for p in points for side in (-1, 1)]
@@ -202,16 +238,6 @@ def _window(axes: Axes, shown: FigureInput) -> None:
     height = max(0.58 * (max(values) - min(values)), 0.02 * centre)
     axes.set_xlim(low, high)
     axes.set_ylim(centre - height, centre + height)
-    for axis in (axes.xaxis, axes.yaxis):
-        axis.set_major_locator(MaxNLocator(6, steps=[1, 2, 2.5, 5, 10]))
-    axes.ticklabel_format(useOffset=False)
-    axes.tick_params(length=0, labelcolor=COLOURS["soft"], pad=6)
-    axes.grid(color=COLOURS["rule"], linewidth=0.8)
-    axes.set_axisbelow(True)
-    axes.spines[["top", "right"]].set_visible(False)
-    axes.spines[["left", "bottom"]].set(color=COLOURS["edge"], linewidth=1.0)
-    axes.set_xlabel("Temperature / °C", color=COLOURS["ink"])
-    axes.set_ylabel("Relative permittivity ε", color=COLOURS["ink"])
     for end, outside, word, side in (
         (shown.liquid[0], low, "melts", "left"),
         (shown.liquid[1], high, "boils", "right"),
@@ -258,7 +284,7 @@ def _plot(axes: Axes, shown: FigureInput) -> None:
         axes.errorbar(
             [shown.chosen.temperature - ZERO_CELSIUS], [shown.chosen.value],
             [shown.chosen.uncertainty], linestyle="none", marker="o", markersize=11,
-            markerfacecolor="none", color=COLOURS["ink"], elinewidth=1.0, capsize=4,
+            markerfacecolor="none", color=COLOURS["ink"], elinewidth=1.0, capsize=0,
             label=f"handbook's value, {celsius_label(shown.chosen.temperature)}",
         )  # fmt: skip
 
