@@ -14,7 +14,7 @@ from generator.metrics import Handbook
 from generator.pictures import Line, Point
 from generator.quantities import QUANTITIES
 from generator.reconcile import REACH
-from generator.values import uncertainty_of
+from generator.values import EDGE, uncertainty_of
 from generator.wording import celsius_label, range_label, split_value
 
 _EPS = "relative_permittivity"
@@ -67,7 +67,7 @@ def _points(dataset: Dataset, slug: str) -> tuple[Point, ...]:
         Point(p.temperature, p.value, uncertainty_of(dataset, p)[0], p.source)
         for p in dataset.measurements_of(slug, _EPS)
         if p.temperature is not None
-    )  # fmt: skip
+    )
 
 
 def _lines(
@@ -95,7 +95,7 @@ def _lines(
 def _sampled(
     curve: Correlation, low: float, high: float, count: int, *, solid: bool
 ) -> Iterator[Line]:
-    if low < high:
+    if high - low > EDGE:  # printed ends of ranges are rounded
         at = tuple(float(t) for t in np.linspace(low, high, count))
         values = curve_values(curve, at, _EPS)
         bounds = QUANTITIES[_EPS]
