@@ -44,7 +44,7 @@ class Kept:
         one result for each.
         """
         named = digest(name, *more)
-        keys = {slug: digest(self._keys.get(slug, slug), named) for slug in slugs}
+        keys = {slug: digest(slug, self._keys.get(slug, ""), named) for slug in slugs}
         stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
         missing = [slug for slug in slugs if slug not in stored]
         fresh = shared_out(make, missing, LEAST) if missing else []

@@ -27,8 +27,9 @@ from generator.inputs import (
     has_no_moment,
     union,
 )
+from generator.kept import NOTHING, Kept
 from generator.quantities import QUANTITIES
-from generator.structures import Molecule, molecule
+from generator.structures import Molecule, molecules
 from generator.trends import Trend
 from generator.units import ZERO_CELSIUS
 from generator.values import ASSOCIATED, LiquidRange, Value
@@ -60,7 +61,8 @@ DEPENDS: Mapping[str, tuple[str, ...]] = {
     "debye_length_001": (_EPS,),
     "charge_relaxation_time": (_EPS, _KAPPA),
 }
-
+# Arrays that a substance's results are made of: values, spreads and what each input moves.
+_ARRAYS = sum(2 + len(inputs) for inputs in DEPENDS.values())
 
 # What an estimated permittivity only gives back as it went in.
 _MEASURED_ONLY = (
@@ -105,7 +107,7 @@ class Handbook:
     """Every number of the handbook, measured and derived alike.
 
     ``reference`` and ``temperatures`` are in kelvin. In ``_results`` the last column is each
-    substance's own reference.
+    substance's own reference. ``kept`` is where else results of one substance may be kept.
     """
 
     dataset: Dataset
@@ -116,6 +118,7 @@ class Handbook:
     _rows: Mapping[str, Row]
     _results: Mapping[str, Result]
     _index: Mapping[str, int] = field(repr=False)
+    kept: Kept = field(default=NOTHING, repr=False)
 
     @cached_property
     def sources(self) -> Mapping[str, Source]:
@@ -246,24 +249,34 @@ class Handbook:
         return [v for v in inputs if v is not None]
 
 
-def compute(dataset: Dataset, settings: Settings, cache: Cache | None = None) -> Handbook:
+def compute(
+    dataset: Dataset, settings: Settings, cache: Cache | None = None, kept: Kept = NOTHING
+) -> Handbook:
     """Choose every input and work out every metric. Structures must be readable (see checks).
 
-    ``cache`` keeps what is estimated from structures.
+    ``cache`` keeps what follows from structures, ``kept`` what follows from each substance's rows.
     """
-    kept = cache or Cache(None)
+    cache = cache or Cache(None)
     reference = settings.reference_temperature_c + ZERO_CELSIUS
     temperatures = tuple(t + ZERO_CELSIUS for t in settings.temperatures_c)
-    molecules = {slug: molecule(s.smiles) for slug, s in dataset.solvents.items()}
-    rows = {
-        slug: choose_inputs(dataset, slug, molecules[slug], reference, temperatures, kept)
-        for slug in dataset.solvents
-    }
-    ordered = list(rows.values())
-    chunks = [_work_out(ordered[i : i + _CHUNK]) for i in range(0, len(ordered), _CHUNK)]
-    results = {key: _joined([chunk[key] for chunk in chunks]) for key in DEPENDS}
-    index = {slug: i for i, slug in enumerate(rows)}
-    return Handbook(dataset, settings, molecules, reference, temperatures, rows, results, index)
+    slugs = tuple(dataset.solvents)
+    known = molecules([solvent.smiles for solvent in dataset.solvents.values()], cache)
+    structures = {slug: known[solvent.smiles] for slug, solvent in dataset.solvents.items()}
+
+    def choose(share: Sequence[str]) -> list[Row]:
+        return [
+            choose_inputs(dataset, slug, structures[slug], reference, temperatures, cache)
+            for slug in share
+        ]
+
+    rows = kept.each(slugs, "row", choose)
+    numbers = kept.each(slugs, "numbers", lambda share: _numbers([rows[slug] for slug in share]))
+    shape = (len(slugs), _ARRAYS, len(temperatures) + 1)
+    results = _results(np.array([numbers[slug] for slug in slugs]).reshape(shape))
+    index = {slug: i for i, slug in enumerate(slugs)}
+    return Handbook(
+        dataset, settings, structures, reference, temperatures, rows, results, index, kept
+    )
 
 
 def _trend_value(trend: Trend, temperature: float | None) -> Value | None:
@@ -280,12 +293,23 @@ def _trend_value(trend: Trend, temperature: float | None) -> Value | None:
     )
 
 
-def _joined(parts: Sequence[Result]) -> Result:
-    return Result(
-        np.concatenate([part.values for part in parts]),
-        np.concatenate([part.spreads for part in parts]),
-        {key: np.concatenate([part.moves[key] for part in parts]) for key in parts[0].moves},
-    )
+def _numbers(rows: Sequence[Row]) -> list[Array]:
+    """Every metric for some substances: for each, all arrays of its results one under another."""
+    numbers: list[Array] = []
+    for start in range(0, len(rows), _CHUNK):
+        results = _work_out(rows[start : start + _CHUNK])
+        arrays = [a for r in results.values() for a in (r.values, r.spreads, *r.moves.values())]
+        numbers += list(np.stack(arrays, axis=1))
+    return numbers
+
+
+def _results(numbers: Array) -> dict[str, Result]:
+    """The results of all substances from an array (substances, arrays of results, temperatures)."""
+    arrays = iter(np.moveaxis(numbers, 1, 0))
+    return {
+        key: Result(next(arrays), next(arrays), {used: next(arrays) for used in DEPENDS[key]})
+        for key in DEPENDS
+    }
 
 
 def _work_out(rows: Sequence[Row]) -> dict[str, Result]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import csv
 import functools
 import http.server
 import os
@@ -61,6 +62,36 @@ def built_site(tmp_path_factory: pytest.TempPathFactory) -> Path:
     done = datasheets("build", "--site", site)
     assert done.returncode == 0, done.stdout + done.stderr
     return site
+
+
+# Isomers, a family, associated liquids, an unpolar one, one with corrections.
+FEW = (
+    "water", "methanol", "ethanol", "1-propanol", "2-propanol", "acetone", "acetonitrile",
+    "hexane", "cis-1-2-dichloroethylene", "trans-1-2-dichloroethylene",
+)  # fmt: skip
+
+
+@pytest.fixture
+def few_tables(tmp_path: Path) -> Path:
+    """The shipped tables with the rows of ten substances, to be edited at will."""
+    folder = Path(shutil.copytree(ROOT / "data", tmp_path / "data"))
+    for table in folder.glob("*.csv"):
+        with table.open(encoding="utf-8", newline="") as file:
+            header, *rows = csv.reader(file)
+        if "solvent" in header:
+            place = header.index("solvent")
+            with table.open("w", encoding="utf-8", newline="") as file:
+                writer = csv.writer(file, lineterminator="\n")
+                writer.writerows([header, *(row for row in rows if row[place] in FEW)])
+    return folder
+
+
+@pytest.fixture
+def few(few_tables: Path) -> Path:
+    """A handbook of ten substances: tables, pages, settings."""
+    shutil.copytree(ROOT / "site_src", few_tables.parent / "site_src")
+    shutil.copy(ROOT / "mkdocs.yml", few_tables.parent)
+    return few_tables.parent
 
 
 class _Quiet(http.server.SimpleHTTPRequestHandler):

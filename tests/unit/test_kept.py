@@ -3,10 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 
 from generator.cache import Cache
+from generator.dataset import load_dataset
 from generator.kept import NOTHING, Kept, kept
+from generator.metrics import Settings, compute
+from generator.quantities import QUANTITIES
 
 REVISIONS = {"water": "1", "ethanol": "2"}
 
@@ -53,3 +57,33 @@ def test_one_result(tmp_path: Path) -> None:
 def test_without_a_store_everything_is_made_each_time() -> None:
     assert _lengths(NOTHING)[0] == ["water", "ethanol"]
     assert _lengths(NOTHING)[0] == ["water", "ethanol"]
+
+
+def test_kept_numbers_are_the_numbers(few_tables: Path, tmp_path: Path) -> None:
+    dataset = load_dataset(few_tables)
+    cache = Cache(tmp_path / "cache")
+
+    def everything(store: Kept) -> str:
+        book = compute(dataset, Settings(), cache, store)
+        return repr([
+            (slug, key, book.series(slug, key), book.at(slug, key), book.budget(slug, key))
+            for slug in dataset.solvents
+            for key in QUANTITIES
+        ])  # fmt: skip
+
+    plain = everything(NOTHING)
+    store = kept(cache, dataset.revisions)
+    assert everything(store) == plain
+    store.save(forget=True)
+    again = kept(cache, dataset.revisions)
+    assert everything(again) == plain
+    assert again.each(list(dataset.solvents), "row", lambda missing: [1 / 0 for _ in missing])
+
+
+def test_a_substance_alone_has_the_numbers_it_has_among_others(few_tables: Path) -> None:
+    dataset = load_dataset(few_tables)
+    together = compute(dataset, Settings())
+    for slug in dataset.solvents:
+        alone = compute(replace(dataset, solvents={slug: dataset.solvents[slug]}), Settings())
+        for key in QUANTITIES:
+            assert repr(alone.series(slug, key)) == repr(together.series(slug, key))
