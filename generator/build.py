@@ -40,8 +40,8 @@ def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Sit
     Raises ``DatasetError`` with every problem when the tables cannot be used.
     """
     handbook, findings = review(data, settings)
-    inputs = [figures.figure_input(handbook, slug) for slug in handbook.dataset.solvents]
-    drawn = figures.draw_all(inputs, Cache(cache_folder))
+    drawn = figures.figures_of(handbook, Cache(cache_folder))
+    drawn.prepare(tuple(handbook.dataset.solvents))
     return Site(
         pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),
         files=exports.exports(handbook, findings, data),

@@ -1,29 +1,27 @@
 """Figures as SVG text, drawn where they are missing and kept by content hash.
 
-The only module that knows matplotlib, which is imported when a figure has to be drawn and not
-before: a build in which every figure is kept never loads it.
+matplotlib is imported when a figure has to be drawn and not before: a build in which every figure
+is kept never loads it.
 """
 
 from __future__ import annotations
 
-import io
-import re
 import statistics
-from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
-from concurrent.futures import ProcessPoolExecutor
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from functools import lru_cache
 from importlib.metadata import version
-from multiprocessing import get_context
+from itertools import chain
 from pathlib import Path
 from typing import TYPE_CHECKING
-from xml.etree import ElementTree
-
-from markupsafe import escape
 
 from generator import conformers, dipoles, drawings
 from generator.cache import Cache, digest
 from generator.figuredata import FigureInput, alt_text, figure_input, short
+from generator.kept import NOTHING, Kept
+from generator.metrics import Handbook
+from generator.parallel import shared_out
 from generator.pictures import COLOURS, polarity_scale, ribbon
+from generator.plotting import canvas, house_style, svg
 from generator.quantities import QUANTITIES
 from generator.structures import drawing
 from generator.units import ZERO_CELSIUS
@@ -33,65 +31,101 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-__all__ = ["FigureInput", "alt_text", "draw_all", "figure_input"]
+__all__ = ["FigureInput", "Figures", "alt_text", "figure_input", "figures_of"]
 
-# More missing figures than this are worth the start of other processes.
+# Missing figures that are worth the start of another process.
 _ALONE = 8
 
 
-def draw_all(inputs: Sequence[FigureInput], cache: Cache) -> dict[str, str]:
+class Figures(Mapping[str, str]):
     """SVG text of every figure, by ``slug``, ``slug:scale``, ``slug:ribbon``, ``slug:structure``.
 
-    What cannot be shown, because nothing is known of it, is left out.
+    What cannot be shown, because nothing is known of it, is left out. Curves and structures are
+    there once they have been asked for by ``prepare``.
     """
-    return {**_kept_or_drawn(inputs, cache), **_small(inputs, inputs)}
+
+    def __init__(
+        self, inputs: Mapping[str, FigureInput], cache: Cache, kept: Kept = NOTHING
+    ) -> None:
+        self._inputs, self._cache, self._slugs = inputs, cache, tuple(inputs)
+        self._drawn: dict[str, str] = {}
+        known = kept.each(self._slugs, "kirkwood", lambda some: [inputs[s].kirkwood for s in some])
+        self.quartiles = _quartiles([pair[0] for pair in known.values() if pair is not None])
+        self._small: Mapping[str, Mapping[str, str | None]] = {
+            "scale": kept.each(self._slugs, "scale", self._scales, self.quartiles),
+            "ribbon": kept.each(self._slugs, "ribbon", self._ribbons),
+        }
+
+    def prepare(self, slugs: Sequence[str], *, curves: bool = True) -> None:
+        """Draw what some substances need, or find it among the kept: structures and curves."""
+        wanted = [self._inputs[slug] for slug in slugs]
+        self._drawn |= _kept_or_drawn(wanted, self._cache, curves=curves)
+
+    def __getitem__(self, name: str) -> str:
+        slug, _, kind = name.partition(":")
+        found = self._small[kind].get(slug) if kind in self._small else self._drawn.get(name)
+        if found is None:
+            raise KeyError(name)
+        return found
+
+    def __iter__(self) -> Iterator[str]:
+        small = (f"{s}:{k}" for s in self._slugs for k in self._small if self._small[k][s])
+        return chain(small, self._drawn)
+
+    def __len__(self) -> int:
+        return sum(1 for _ in self)
+
+    def _scales(self, slugs: Sequence[str]) -> list[str | None]:
+        return [_scale(self._inputs[slug], self.quartiles) for slug in slugs]
+
+    def _ribbons(self, slugs: Sequence[str]) -> list[str | None]:
+        return [_ribbon(self._inputs[slug]) for slug in slugs]
 
 
-def draw_small(
-    inputs: Sequence[FigureInput], slugs: Collection[str], cache: Cache
-) -> dict[str, str]:
-    """Scale, ribbon and structure of some substances, without the curves: what prints carry.
+def figures_of(handbook: Handbook, cache: Cache) -> Figures:
+    """The figures of a handbook."""
+    inputs = handbook.kept.each(
+        tuple(handbook.dataset.solvents),
+        "figure",
+        lambda slugs: [figure_input(handbook, slug) for slug in slugs],
+    )
+    return Figures(inputs, cache, handbook.kept)
 
-    ``inputs`` are those of the whole handbook, which every scale shows.
+
+def _quartiles(numbers: Sequence[float]) -> tuple[float, ...]:
+    """The quartiles that every scale shows, to two decimals.
+
+    Finer ones would be another number on every page whenever one substance moves.
     """
-    wanted = [item for item in inputs if item.slug in slugs]
-    return {**_kept_or_drawn(wanted, cache, curves=False), **_small(inputs, wanted)}
+    if len(numbers) < 4:
+        return ()
+    return tuple(round(q, 2) for q in statistics.quantiles(numbers, n=4, method="inclusive"))
 
 
-def _small(inputs: Sequence[FigureInput], shown: Sequence[FigureInput]) -> dict[str, str]:
-    drawn: dict[str, str] = {}
-    known = [item.kirkwood[0] for item in inputs if item.kirkwood is not None]
-    quartiles = statistics.quantiles(known, n=4, method="inclusive") if len(known) > 3 else []
-    for item in shown:
-        if item.kirkwood is not None:
-            drawn[f"{item.slug}:scale"] = _scale(item, quartiles)
-        if item.chosen is not None:
-            drawn[f"{item.slug}:ribbon"] = _ribbon(item)
-    return drawn
-
-
-def _scale(shown: FigureInput, quartiles: Sequence[float]) -> str:
-    value, own = shown.kirkwood or (0.0, 0.0)
+def _scale(shown: FigureInput, quartiles: Sequence[float]) -> str | None:
+    if shown.kirkwood is None:
+        return None
+    value, own = shown.kirkwood
     digits, spread = split_value(value, own, QUANTITIES["kirkwood_function"].decimals)
     label = f"Polarity scale: Kirkwood function of {shown.name} {digits} ± {spread}, from 0 to 0.5"
     if quartiles:
-        low, middle, high = (f"{q:.3f}" for q in quartiles)
+        low, middle, high = (f"{q:.2f}" for q in quartiles)
         label += f"; middle half of the handbook {low} to {high}, median {middle}"
     return polarity_scale(value, own, quartiles, label)
 
 
-def _ribbon(shown: FigureInput) -> str:
+def _ribbon(shown: FigureInput) -> str | None:
+    if shown.chosen is None:
+        return None
     label = f"Permittivity of {shown.name} over its liquid range, {range_label(*shown.liquid)}"
     readings = [
         f"{short(line.values[i])} at {celsius_label(line.temperatures[i])}"
         for line in shown.lines[:1]
         for i in (0, -1)
     ]
-    reference, word = None, ""
-    if shown.chosen is not None:
-        reference = (shown.chosen.temperature, shown.chosen.value)
-        word = celsius_label(reference[0])
-        readings.append(f"{short(reference[1])} at the reference of {word}")
+    reference = (shown.chosen.temperature, shown.chosen.value)
+    word = celsius_label(reference[0])
+    readings.append(f"{short(reference[1])} at the reference of {word}")
     low, high = ("" if end is None else f"{celsius(end, 0)} °C" for end in shown.liquid)
     label = f"{label}: {', '.join(readings)}"
     best = [line for i, line in enumerate(shown.lines) if i == 0 or not line.solid]
@@ -131,13 +165,7 @@ _Job = tuple[str, FigureInput]
 
 
 def _drawn(jobs: Sequence[_Job]) -> list[str]:
-    if len(jobs) <= _ALONE:
-        return _draw_batch(jobs)
-    size = min(32, -(-len(jobs) // 2))
-    batches = [jobs[i : i + size] for i in range(0, len(jobs), size)]
-    # A fresh interpreter each: a fork would copy the threads of a preview server.
-    with ProcessPoolExecutor(2, mp_context=get_context("spawn")) as pool:
-        return [svg for batch in pool.map(_draw_batch, batches) for svg in batch]
+    return shared_out(_draw_batch, jobs, _ALONE)
 
 
 def _draw_batch(jobs: Sequence[_Job]) -> list[str]:
@@ -155,7 +183,7 @@ def _version(kind: str) -> str:
     model = sorted((here.parent / "dipole_model").iterdir())
     modules = (drawings, dipoles, conformers)
     files: Mapping[str, Sequence[Path]] = {
-        "curve": (here, here.with_name("pictures.py")),
+        "curve": (here, here.with_name("plotting.py"), here.with_name("pictures.py")),
         "structure": (*(Path(str(module.__file__)) for module in modules), *model),
     }
     library = {"curve": "matplotlib", "structure": "rdkit"}[kind]
@@ -166,22 +194,12 @@ def _version(kind: str) -> str:
 @lru_cache(maxsize=1)
 def _canvas() -> tuple[Figure, Axes]:
     """The one figure that is drawn on again and again, with all that stays the same on it."""
-    from matplotlib.backends.backend_svg import FigureCanvasSVG
-    from matplotlib.figure import Figure
     from matplotlib.ticker import MaxNLocator
 
-    figure = Figure((8.0, 4.2), frameon=False)
-    FigureCanvasSVG(figure)
-    axes = figure.add_axes((0.09, 0.135, 0.89, 0.72))
-    axes.patch.set_visible(False)
+    figure, axes = canvas(8.0, 4.2, (0.09, 0.135, 0.89, 0.72))
     for axis in (axes.xaxis, axes.yaxis):
         axis.set_major_locator(MaxNLocator(6, steps=[1, 2, 2.5, 5, 10]))
     axes.ticklabel_format(useOffset=False)
-    axes.tick_params(length=0, labelcolor=COLOURS["soft"], pad=6)
-    axes.grid(color=COLOURS["rule"], linewidth=0.8)
-    axes.set_axisbelow(True)
-    axes.spines[["top", "right"]].set_visible(False)
-    axes.spines[["left", "bottom"]].set(color=COLOURS["edge"], linewidth=1.0)
     axes.set_xlabel("Temperature / °C", color=COLOURS["ink"])
     axes.set_ylabel("Relative permittivity ε", color=COLOURS["ink"])
     return figure, axes
@@ -193,18 +211,7 @@ _STYLES = ("-", "-.", (0, (7, 2)))  # the best curve, the next, all others
 
 def _curve(shown: FigureInput) -> str:
     """The figure of ε(T): points by source, curves, melting and boiling point, chosen value."""
-    import matplotlib
-
-    with matplotlib.rc_context():
-        matplotlib.rcdefaults()  # whatever the settings of this machine, the same figure
-        matplotlib.rcParams.update(
-            {
-                "svg.fonttype": "none",
-                "svg.hashsalt": "handbook",
-                "text.parse_math": False,
-                "font.size": 11.0,
-            }
-        )
+    with house_style():
         figure, axes = _canvas()
         _wipe(axes)
         _window(axes, shown)
@@ -213,9 +220,7 @@ def _curve(shown: FigureInput) -> str:
             loc="lower left", bbox_to_anchor=(-0.01, 1.0), ncols=3, frameon=False,
             borderaxespad=0.1, handlelength=2.2, columnspacing=1.6, labelcolor=COLOURS["ink"],
         )  # fmt: skip
-        drawn = io.StringIO()
-        figure.savefig(drawn, format="svg", metadata={"Date": None})
-    return _tidy(drawn.getvalue(), alt_text(shown))
+        return svg(figure, alt_text(shown), "curve")
 
 
 def _wipe(axes: Axes) -> None:
@@ -287,77 +292,6 @@ def _plot(axes: Axes, shown: FigureInput) -> None:
             markerfacecolor="none", color=COLOURS["ink"], elinewidth=1.0, capsize=0,
             label=f"handbook's value, {celsius_label(shown.chosen.temperature)}",
         )  # fmt: skip
-
-
-# ---- matplotlib's SVG, made fit for a page -----------------------------------------------------
-
-_HREF = "{http://www.w3.org/1999/xlink}href"
-_CLASSES = {colour: name for name, colour in COLOURS.items()}
-_LONG = re.compile(r"-?\d+\.\d+")
-_DROPPED = {"metadata", "defs", "clipPath"}
-_KEPT = ("x", "y", "d", "transform")
-
-
-def _tidy(text: str, label: str) -> str:
-    """A drawing without ids, its colours open to the style sheet, its text in the page's font."""
-    root = ElementTree.fromstring(text)
-    shapes = {node.get("id", ""): node for node in root.iter() if _tag(node) == "path"}
-    _, _, width, height = root.get("viewBox", "").split()
-    body = "".join(part for child in root for part in _element(child, shapes))
-    return (
-        f'<svg xmlns="http://www.w3.org/2000/svg" class="curve" width="{float(width):g}" '
-        f'height="{float(height):g}" viewBox="0 0 {float(width):g} {float(height):g}" role="img" '
-        f'aria-label="{escape(label)}" font-family="sans-serif" stroke-linejoin="round">'
-        f"{body}</svg>\n"
-    )
-
-
-def _element(node: ElementTree.Element, shapes: Mapping[str, ElementTree.Element]) -> Iterator[str]:
-    tag = _tag(node)
-    if tag in _DROPPED:
-        return
-    if tag == "g":
-        for child in node:
-            yield from _element(child, shapes)
-        return
-    given = dict(node.attrib)
-    if tag == "use":  # a marker: the shape itself, moved to its place
-        given["d"] = shapes[given[_HREF].removeprefix("#")].get("d", "")
-        given["transform"] = f"translate({given.pop('x')} {given.pop('y')})"
-        tag = "path"
-    if given.get("transform", "").startswith("rotate(-0 "):
-        del given["transform"]
-    attributes = {key: _short(given[key]) for key in _KEPT if key in given}
-    attributes |= _attributes(given.get("style", ""))
-    if attributes.get("fill") == "none" == attributes.get("stroke", "none"):
-        return  # a background
-    written = "".join(f' {key}="{value}"' for key, value in attributes.items())
-    yield f"<{tag}{written}>{escape(node.text)}</{tag}>" if tag == "text" else f"<{tag}{written}/>"
-
-
-def _tag(node: ElementTree.Element) -> str:
-    return node.tag.rpartition("}")[2]
-
-
-def _short(numbers: str) -> str:
-    """Coordinates to a hundredth of a pixel, on one line."""
-    return _LONG.sub(lambda found: f"{float(found[0]):.2f}", " ".join(numbers.split()))
-
-
-def _attributes(style: str) -> dict[str, str]:
-    """A style as attributes, which a style sheet overrules, with a class for each colour."""
-    pairs = [item.split(": ", 1) for item in style.split("; ") if item]
-    given = {key: value for key, value in pairs if key != "font-family"}
-    if given.get("stroke-dashoffset") == "0":
-        del given["stroke-dashoffset"]
-    if "stroke" in given:
-        given.setdefault("fill", "none")
-    names = [
-        f"{key[0]}-{_CLASSES[given[key]]}"
-        for key in ("stroke", "fill")
-        if given.get(key, "none") != "none"
-    ]
-    return {"class": " ".join(names), **given}
 
 
 _DRAWERS: Mapping[str, Callable[[FigureInput], str]] = {"curve": _curve, "structure": _structure}

@@ -60,8 +60,8 @@ def produce(
     book = catalogue(handbook, findings)
     slugs = _wanted(book, order)
     say("Drawing")
-    inputs = [figures.figure_input(handbook, slug) for slug in handbook.dataset.solvents]
-    drawn = figures.draw_small(inputs, set(slugs), Cache(cache))
+    drawn = figures.figures_of(handbook, Cache(cache))
+    drawn.prepare(slugs, curves=False)
     say(f"Preparing {len(slugs)} substances")
     foot = Foot(settings.laboratory, handbook.dataset.revision)
     edition = sheets.Edition(order.paper, order.date, order.site)

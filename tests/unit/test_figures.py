@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 import subprocess
 import sys
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 from xml.etree import ElementTree
@@ -13,7 +14,7 @@ import pytest
 
 from generator import figures
 from generator.cache import Cache
-from generator.figures import FigureInput, alt_text, draw_all, figure_input
+from generator.figures import FigureInput, Figures, alt_text, figure_input
 from generator.metrics import Handbook
 from generator.pictures import COLOURS, Line, Point, polarity_scale, ribbon
 
@@ -36,6 +37,13 @@ LIQUID = FigureInput(
     ),
 )
 BARE = FigureInput("bare", "Bare", "C", None, None, "not known", (None, None), (), ())
+
+
+def draw_all(inputs: Sequence[FigureInput], cache: Cache) -> dict[str, str]:
+    """Every figure of some substances."""
+    made = Figures({shown.slug: shown for shown in inputs}, cache)
+    made.prepare([shown.slug for shown in inputs])
+    return dict(made)
 
 
 @pytest.fixture(scope="module")
@@ -196,7 +204,7 @@ def test_sources_differ_by_shape_and_curves_by_line_style() -> None:
 def test_figures_are_the_same_bytes_in_any_order_and_process(drawn: dict[str, str]) -> None:
     others = [
         replace(LIQUID, slug=f"other-{i}", smiles="C" * (i + 1), chosen=Point(298.15, i + 9, 1, ""))
-        for i in range(figures._ALONE)
+        for i in range(2 * figures._ALONE)
     ]
     apart = draw_all([*others, LIQUID], Cache(None))  # enough to start other processes
     for key in ("made-up", "made-up:structure"):
@@ -211,9 +219,10 @@ def test_kept_figures_need_no_matplotlib_and_damaged_ones_are_drawn_again(tmp_pa
         "import sys\n"
         "from pathlib import Path\n"
         "from generator.cache import Cache\n"
-        "from generator.figures import FigureInput, draw_all\n"
+        "from generator.figures import FigureInput, Figures\n"
         "from generator.pictures import Line, Point\n"
-        f"made = draw_all([{LIQUID!r}], Cache(Path({str(tmp_path)!r})))\n"
+        f"made = Figures({{'made-up': {LIQUID!r}}}, Cache(Path({str(tmp_path)!r})))\n"
+        "made.prepare(['made-up'])\n"
         "assert 'matplotlib' not in sys.modules and 'rdkit' not in sys.modules\n"
         "sys.stdout.buffer.write(made['made-up'].encode())\n"
     )
