@@ -6,8 +6,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
-from generator import checks, evidence, exports, figures, pages
+from generator import checks, evidence, exports, figures, pages, sidebyside
 from generator.cache import Cache
+from generator.catalogue import catalogue
 from generator.dataset import load_dataset
 from generator.errors import DatasetError, Problem
 from generator.metrics import Handbook, Settings, compute
@@ -44,7 +45,10 @@ def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Sit
     drawn.prepare(tuple(handbook.dataset.solvents))
     return Site(
         pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),
-        files=exports.exports(handbook, findings, data),
+        files={
+            **exports.exports(handbook, findings, data),
+            sidebyside.PATH: sidebyside.data_script(catalogue(handbook, findings)),
+        },
         findings=findings,
         handbook=handbook,
     )

@@ -12,6 +12,7 @@ from markupsafe import Markup
 
 from generator.dataset import Container, Correction, Correlation, Handling, Measurement
 from generator.errors import Problem
+from generator.flammability import FlashClass, flash_class
 from generator.metrics import Handbook
 
 
@@ -40,6 +41,18 @@ class Links:
     def family(self, family: str) -> str:
         """A family in the list of all substances."""
         return f"{self.root}index.html#family-{anchor(family)}"
+
+    def compare(self, slugs: Iterable[str]) -> str:
+        """Some substances side by side."""
+        return f"{self.root}compare.html#{'+'.join(slugs)}"
+
+    def flash_classes(self) -> str:
+        """The criteria of the classes of flammable liquids."""
+        return f"{self.root}methods.html#flash-classes"
+
+    def table(self, file: str) -> str:
+        """One of the laboratory's own tables."""
+        return f"{self.root}downloads/data/{file}"
 
     def isomers(self, members: Sequence[str]) -> str:
         """A set of isomers side by side; without one, the list by formula."""
@@ -98,6 +111,11 @@ class Catalogue:
     def set_of(self, slug: str) -> tuple[str, ...]:
         """Its set of positional and stereoisomers, itself included; empty where it has none."""
         return next((members for members in self.isomer_sets if slug in members), ())
+
+    def flash_class(self, slug: str) -> FlashClass | None:
+        """Its class among flammable liquids; None where flash or boiling point is missing."""
+        ends = [self.handbook.at(slug, key) for key in ("flash_point", "boiling_point")]
+        return flash_class(*(None if value is None else value.value for value in ends))
 
     def nearest(self, slug: str, others: Sequence[str], count: int) -> tuple[str, ...]:
         """Those of ``others`` whose permittivity comes nearest, nearest first."""

@@ -9,10 +9,11 @@ from markupsafe import Markup
 
 from generator.catalogue import Catalogue, Links, anchor
 from generator.contexts import Link, Number
-from generator.datasheet import POLAR, TREND, trend_line
+from generator.datasheet import COMPARED, POLAR, TREND, trend_line
 from generator.listings import Cell, Column, Group, IsomerRow, IsomerSet, Table, TableRow
 from generator.quantities import QUANTITIES
 from generator.structures import drawing
+from generator.units import ZERO_CELSIUS
 from generator.wording import (
     aligned,
     celsius,
@@ -146,10 +147,10 @@ def _permittivity(catalogue: Catalogue, figures: Mapping[str, str]) -> Table:
         _picture_column("ribbon", "ε(T)"),
         *(
             Column(
-                f"t{i}", f"{celsius(t)} °C", Markup(""), "", "number", "",
+                f"at{t - ZERO_CELSIUS:.6g}", f"{celsius(t)} °C", Markup(""), "", "number", "",
                 abs(t - handbook.reference) < 1e-6,
             )
-            for i, t in enumerate(handbook.temperatures)
+            for t in handbook.temperatures
         ),
         _text_column("liquid", "Liquid range"),
     ]  # fmt: skip
@@ -279,6 +280,7 @@ def isomer_sets(catalogue: Catalogue) -> tuple[IsomerSet, ...]:
                 ),
                 tuple(celsius_label(handbook.own_reference(slug)) for slug in members),
                 tuple(rows),
+                links.compare(members) if len(members) <= COMPARED else "",
             )
         )
     return tuple(sorted(sets, key=lambda s: (s.formula_plain, s.anchor)))

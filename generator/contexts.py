@@ -39,8 +39,8 @@ class Mark:
 class Number:
     """A number ready for print.
 
-    ``raw`` is what sorting uses. ``pad`` holds the places that are missing behind the decimal
-    point compared with the longest number of the same column, so that the points stand in line.
+    ``raw`` is what sorting uses. ``pad`` holds classes that make up for the digits missing behind
+    the decimal point compared with the longest number of the column: the points stand in line.
     """
 
     raw: str
@@ -51,7 +51,7 @@ class Number:
     basis: str
     marks: tuple[Mark, ...]
     sources: tuple[Link, ...]
-    pad: str = ""
+    pad: tuple[str, ...] = ()
 
     @property
     def letters(self) -> str:
@@ -259,6 +259,7 @@ class Datasheet:
     structure: Markup
     reference: str
     own_reference: str
+    own_reference_c: str
     permittivity: Number | None
     polar_key: str
     polar: str
@@ -269,6 +270,7 @@ class Datasheet:
     ribbon: Markup
     figure: Markup
     figure_text: str
+    control: Markup
     liquid_range: str
     key_values: tuple[QuantityRow, ...]
     value_marks: tuple[Mark, ...]
@@ -286,5 +288,15 @@ class Datasheet:
     isomers_href: str
     swaps: tuple[Related, ...]
     swaps_total: int
+    compare_href: str
+    compare_isomers_href: str
+    compare_swaps_href: str
+    flash_class: str
+    flash_class_link: Link
+    quotation: str
+    csv_href: str
+    measurements_href: str
+    correlations_href: str
+    json_ld: Markup
     citations: tuple[Citation, ...]
     foot: Foot

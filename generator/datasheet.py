@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 
 from markupsafe import Markup
 
+from generator.bydegree import by_degree, control
 from generator.catalogue import Catalogue, Finding, Links, Rows
 from generator.contexts import (
     ContainerRow,
@@ -21,10 +22,13 @@ from generator.contexts import (
     Related,
     TrendLine,
 )
+from generator.flammability import class_label
+from generator.linked import dataset_description, identity, quotation
 from generator.metrics import POLAR_ABOVE, UNPOLAR_BELOW, Handbook
 from generator.provenance import KEY_VALUES, citations, curves, measured, numbering, trail
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, drawing
+from generator.units import ZERO_CELSIUS
 from generator.values import Value
 from generator.ways import way_anchor, ways
 from generator.wording import (
@@ -36,6 +40,7 @@ from generator.wording import (
     number,
     prose,
     range_label,
+    script_json,
     split_value,
     symbol_markup,
     unit_label,
@@ -89,6 +94,7 @@ GROUPS: tuple[tuple[str, tuple[str, ...]], ...] = (
     ),
 )
 SWAPS_SHOWN = 12
+COMPARED = 5  # as many as stand side by side
 
 
 POLAR = {
@@ -119,6 +125,9 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
     own = handbook.own_reference(slug)
     liquid = handbook.liquid_range(slug)
     key_values = _key_values(handbook, slug, links, numbered)
+    permittivity = number(handbook.at(slug, "relative_permittivity"), numbered)
+    degrees = by_degree(handbook, slug)
+    described = identity(handbook, slug, ROOT)
     metrics = _metrics(handbook, slug, links)
     siblings = catalogue.families[molecule.family]
     isomers = catalogue.isomers_of(slug)
@@ -131,7 +140,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         family_link=Link(molecule.family_label, links.family(molecule.family)),
         formula=formula_markup(molecule.formula),
         formula_plain=molecule.formula,
-        molar_mass=split_value(molecule.molar_mass, None, QUANTITIES["molar_mass"].decimals)[0],
+        molar_mass=described["molar_mass"],
         synonyms=solvent.synonyms,
         smiles=molecule.smiles,
         inchi=molecule.inchi,
@@ -143,7 +152,8 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         ),
         reference=celsius_label(handbook.reference),
         own_reference=celsius_label(own),
-        permittivity=number(handbook.at(slug, "relative_permittivity"), numbered),
+        own_reference_c=f"{own - ZERO_CELSIUS:.6g}",
+        permittivity=permittivity,
         polar_key=handbook.is_polar(slug).replace(" ", "-"),
         polar=POLAR[handbook.is_polar(slug)],
         polar_reason=_polar_reason(handbook, slug, molecule),
@@ -153,6 +163,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         ribbon=catalogue.picture(figures, slug, "ribbon"),
         figure=Markup(figures.get(slug, "")),
         figure_text=_figure_text(handbook, slug, solvent.name),
+        control=script_json(control(degrees)) if degrees else Markup(""),
         liquid_range=range_label(liquid.low, liquid.high),
         key_values=key_values,
         value_marks=marks_of(*(row.number for row in key_values)),
@@ -170,6 +181,18 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         isomers_href=links.isomers(catalogue.set_of(slug)),
         swaps=tuple(_related(catalogue, other, figures) for other in swaps),
         swaps_total=len(siblings) - 1,
+        compare_href=links.compare([slug]),
+        compare_isomers_href=links.compare([slug, *isomers][:COMPARED]),
+        compare_swaps_href=links.compare([slug, *swaps][:COMPARED]),
+        flash_class=class_label(catalogue.flash_class(slug)),
+        flash_class_link=Link("GHS, chapter 2.6", links.flash_classes()),
+        quotation=quotation(solvent, permittivity, foot),
+        csv_href=described["csv"],
+        measurements_href=links.table("measurements.csv"),
+        correlations_href=links.table("correlations.csv"),
+        json_ld=script_json(
+            dataset_description(described, key_values, foot.laboratory, foot.revision)
+        ),
         citations=citations(handbook, numbered),
         foot=foot,
     )

@@ -44,6 +44,10 @@ def exports(handbook: Handbook, findings: Sequence[Problem], data_folder: Path) 
         "values.csv": _table(VALUE_COLUMNS, _value_rows(handbook, numbers)),
         "findings.csv": _table(FINDING_COLUMNS, _finding_rows(handbook, findings)),
         "handbook.json": _json(handbook, numbers),
+        **{
+            f"solvents/{slug}.csv": _table(VALUE_COLUMNS, _value_rows(handbook, {slug: found}))
+            for slug, found in numbers.items()
+        },
         **{f"data/{name}": content for name, content in _package(data_folder)},
     }
     return {f"{FOLDER}/{name}": content for name, content in files.items()}

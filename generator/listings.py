@@ -75,6 +75,7 @@ class IsomerSet:
     structures: tuple[Markup, ...]
     temperatures: tuple[str, ...]
     rows: tuple[IsomerRow, ...]
+    compare: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,6 +105,7 @@ class Home:
     index_json: Markup
     total: int
     families: tuple[Group, ...]
+    flash_classes: tuple[tuple[str, str], ...]
     polar_map: Markup
     counts: tuple[Count, ...]
     findings: tuple[Count, ...]

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import json
 from collections import Counter
 from collections.abc import Mapping, Sequence
 from typing import Any
 
 from markupsafe import Markup
 
+from generator import flammability
 from generator.catalogue import Catalogue, Links, anchor
 from generator.comparisons import TITLES
 from generator.contexts import Foot, Link
@@ -24,7 +24,8 @@ from generator.listings import (
     SourceEntry,
 )
 from generator.polarity_map import Axis, Point, polarity_map
-from generator.wording import celsius_label, number, prose
+from generator.units import ZERO_CELSIUS
+from generator.wording import celsius_label, number, prose, script_json
 
 ROOT = ""  # these pages stand at the top
 
@@ -48,6 +49,7 @@ def home(catalogue: Catalogue, laboratory: str, foot: Foot) -> Home:
         index_json=_index_json(catalogue),
         total=len(dataset.solvents),
         families=families,
+        flash_classes=tuple((c.key, f"{c.label}: {c.criterion}") for c in flammability.CLASSES),
         polar_map=_map(catalogue),
         counts=_counts(catalogue),
         findings=_finding_counts(catalogue),
@@ -65,6 +67,8 @@ def _index_json(catalogue: Catalogue) -> Markup:
         solvent = handbook.dataset.solvents[slug]
         molecule = handbook.molecules[slug]
         permittivity = number(handbook.at(slug, "relative_permittivity"), {})
+        liquid = handbook.liquid_range(slug)
+        flash = catalogue.flash_class(slug)
         entries.append(
             {
                 "n": solvent.name,
@@ -78,10 +82,18 @@ def _index_json(catalogue: Catalogue) -> Markup:
                 "e": permittivity.value if permittivity else "",
                 "t": permittivity.temperature if permittivity else "",
                 "u": links.solvent(slug),
+                "m": _degrees(liquid.low),
+                "b": _degrees(liquid.high),
+                "h": flash.key if flash else "",
+                "o": int(bool(catalogue.rows[slug].stock)),
             }
         )
-    text = json.dumps(entries, ensure_ascii=False, separators=(",", ":"))
-    return Markup(text.replace("<", "\\u003c"))
+    return script_json(entries)
+
+
+def _degrees(temperature: float | None) -> float | None:
+    """Kelvin as °C to a tenth, as the finder compares it."""
+    return None if temperature is None else round(temperature - ZERO_CELSIUS, 1)
 
 
 def _map(catalogue: Catalogue) -> Markup:

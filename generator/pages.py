@@ -11,13 +11,13 @@ from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined, Template
 
-from generator import comparisons, methods, overviews
+from generator import comparisons, flammability, methods, overviews
 from generator.catalogue import Catalogue, catalogue
 from generator.contexts import Datasheet, Foot
-from generator.datasheet import datasheet
+from generator.datasheet import COMPARED, datasheet
 from generator.errors import Problem
 from generator.metrics import Handbook, Settings
-from generator.wording import cell_markup, marks_markup
+from generator.wording import cell_markup, marks_markup, marks_of
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,17 +76,20 @@ def _whole(
     for table in comparisons.tables(book, figures):
         yield _page(f"tables/{table.key}.md", "table", table.title,
                     t=table, menu_entries=menu, **shared)  # fmt: skip
+    sets = comparisons.isomer_sets(book)
     yield _page(
         "tables/isomers.md", "isomers", comparisons.TITLES["isomers"],
-        sets=comparisons.isomer_sets(book), groups=comparisons.same_formula(book),
-        menu_entries=menu, **shared,
+        sets=sets, marks=marks_of(*(c.number for s in sets for r in s.rows for c in r.cells)),
+        groups=comparisons.same_formula(book), menu_entries=menu, **shared,
     )  # fmt: skip
+    yield _page("compare.md", "compare", "Side by side", **shared)
     yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
     measured, derived = methods.methods()
     yield _page(
         "methods.md", "methods", "Methods",
         measured=measured, derived=derived, forms=methods.curve_forms(book),
-        rules=methods.rules(book), checks=methods.model_checks(book, figures), **shared,
+        rules=methods.rules(book), checks=methods.model_checks(book, figures),
+        flash_classes=flammability.CLASSES, flash_standard=flammability.STANDARD, **shared,
     )  # fmt: skip
     yield _page("sources.md", "sources", "Sources", sources=overviews.sources(book), **shared)
     yield _page(
@@ -105,6 +108,7 @@ _FOUND = {
     "home": 0,
     "table": 300,
     "isomers": 300,
+    "compare": 300,
     "review": 300,
     "methods": 20_000,
     "sources": 20_000,
@@ -151,6 +155,7 @@ def _environment() -> Environment:
     )
     environment.filters["cell"] = cell_markup
     environment.filters["marks"] = marks_markup
+    environment.globals["most"] = COMPARED
     return environment
 
 

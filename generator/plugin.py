@@ -12,7 +12,7 @@ from mkdocs.config.base import Config, ValidationError
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
 from mkdocs.livereload import LiveReloadServer
-from mkdocs.plugins import BasePlugin, event_priority
+from mkdocs.plugins import BasePlugin, CombinedEvent, event_priority
 from mkdocs.structure.files import File, Files
 
 from generator import ready
@@ -109,9 +109,16 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         return files
 
     @event_priority(100)
-    def on_post_build(self, *, config: MkDocsConfig) -> None:
+    def _add_search_entries(self, *, config: MkDocsConfig) -> None:
         """Write the search entries before the theme writes its index."""
         ready.add_search_entries(self._site.pages, config)
+
+    @event_priority(-100)
+    def _write_index_as_script(self, *, config: MkDocsConfig) -> None:
+        """Once the theme has written it."""
+        ready.write_index_as_script(config)
+
+    on_post_build = CombinedEvent(_add_search_entries, _write_index_as_script)
 
     def on_serve(
         self, server: LiveReloadServer, *, config: MkDocsConfig, builder: object

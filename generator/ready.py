@@ -35,7 +35,11 @@ class ReadyPage(Page):
     def read_source(self, config: MkDocsConfig) -> None:
         """There is no source to read; the search entry is written separately."""
         self.markdown = ""
-        self.meta = {"title": self._finished.title, "search": {"exclude": True}}
+        self.meta = {
+            "title": self._finished.title,
+            "kind": self._finished.kind,
+            "search": {"exclude": True},
+        }
         self.meta |= {"hide": ["navigation"]} if self._finished.kind == "datasheet" else {}
 
     def render(self, config: MkDocsConfig, files: Files) -> None:
@@ -76,8 +80,23 @@ def add_search_entries(pages: Iterable[FinishedPage], config: MkDocsConfig) -> N
         if finished.search_text:
             url = File(finished.path, None, config.site_dir, config.use_directory_urls).url
             entries.append(
-                {"location": url, "title": finished.search_title, "text": finished.search_text}
+                {
+                    "location": url,
+                    "title": finished.search_title,
+                    "text": finished.search_text,
+                    # A substance comes before the pages that only speak of it.
+                    "boost": 4 if finished.kind == "datasheet" else 1,
+                }
             )
+
+
+def write_index_as_script(config: MkDocsConfig) -> None:
+    """The theme's search index once more as a script, which a browser loads from a file as well."""
+    folder = Path(config.site_dir) / "search"
+    index = folder / "search_index.json"
+    if index.is_file():
+        text = index.read_text(encoding="utf-8")
+        (folder / "search_index.js").write_text(f"var __index = {text};\n", encoding="utf-8")
 
 
 def _search_entries(config: MkDocsConfig) -> list[dict[str, Any]] | None:

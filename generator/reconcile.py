@@ -126,6 +126,20 @@ def choose(
     return tuple(decide(dataset, solvent, key, t, liquid).value for t in temperatures)
 
 
+def choose_by_degree(
+    dataset: Dataset, solvent: str, key: str, liquid: LiquidRange
+) -> tuple[Value, ...]:
+    """The chosen value at every whole °C at which there is one."""
+    known = [p.temperature for p in dataset.measurements_of(solvent, key) if p.temperature]
+    known += [t for c in dataset.correlations_of(solvent, key) for t in (c.t_min, c.t_max)]
+    if not known:
+        return ()
+    first = math.ceil(min(known) - REACH - ZERO_CELSIUS)
+    last = math.floor(max(known) + REACH - ZERO_CELSIUS)
+    degrees = [ZERO_CELSIUS + degree for degree in range(first, last + 1)]
+    return tuple(v for v in choose(dataset, solvent, key, degrees, liquid) if v is not None)
+
+
 def decide(
     dataset: Dataset,
     solvent: str,

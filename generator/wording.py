@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import math
 import re
 from collections.abc import Mapping, Sequence
@@ -110,6 +111,12 @@ def symbol_markup(symbol: str) -> Markup:
     return Markup("{}<sub>{}</sub>{}").format(head, low, bracket + rest)
 
 
+def script_json(content: object) -> Markup:
+    """JSON that may stand inside a script element: no ``<`` ends it early."""
+    text = json.dumps(content, ensure_ascii=False, separators=(",", ":"))
+    return Markup(text.replace("<", "\\u003c"))
+
+
 def labelled(svg: str, text: str) -> Markup:
     """A drawing that says what it shows to those who do not see it."""
     return Markup(svg.replace('role="img"', f'role="img" aria-label="{escape(text)}"', 1))
@@ -130,7 +137,7 @@ def number(
     definition = quantity or QUANTITIES[value.quantity]
     text, uncertainty = split_value(value.value, value.uncertainty, definition.decimals)
     return Number(
-        raw=f"{value.value:.12g}",
+        raw=f"{value.value:.7g}",
         value=text,
         uncertainty=uncertainty,
         unit=unit_label(definition.unit),
@@ -148,24 +155,24 @@ def _marks(keys: tuple[str, ...]) -> tuple[Mark, ...]:
 
 @lru_cache(maxsize=256)
 def marks_markup(marks: tuple[Mark, ...]) -> Markup:
-    """The letters of some marks, set high, each with its meaning on hover."""
-    letter = Markup('<sup class="mark" title="{}: {}">{}</sup>')
-    return Markup("").join(letter.format(m.label, m.meaning, m.letter) for m in marks)
+    """The letters of some marks, set high; the legend of the page says what they mean."""
+    letters = "".join(mark.letter for mark in marks)
+    return Markup('<sup class="mark">{}</sup>').format(letters) if letters else Markup("")
 
 
 def cell_markup(number: Number | None, extra: str = "") -> Markup:
     """A number as a table cell: its decimal point in line, marks and uncertainty beside it.
 
-    Made here and not in a template, because a datasheet has some two hundred of them.
+    Made here and not in a template, and of as few elements as can be, because a datasheet has
+    some two hundred of them and a comparison table of a thousand substances twenty thousand.
     """
+    classes = " ".join(("n", *number.pad, extra) if number else ("n", "none", extra)).rstrip()
     if number is None:
-        return Markup(f'<td class="n none {extra}">–</td>')
-    pad = f' data-pad="{number.pad}"' if number.pad else ""
-    marks = f'<span class="m">{marks_markup(number.marks)}</span>' if number.marks else ""
-    own = f'<span class="u">±\u202f{number.uncertainty}</span>' if number.uncertainty else ""
+        return Markup(f'<td class="{classes}">–</td>')
+    own = f"<small>±\u202f{number.uncertainty}</small>" if number.uncertainty else ""
     return Markup(
-        f'<td class="n {extra}" data-v="{number.raw}"><span class="v"{pad}>{number.value}</span>'
-        f"{marks}{own}</td>"
+        f'<td class="{classes}" data-v="{number.raw}">{number.value}'
+        f"{marks_markup(number.marks)}{own}</td>"
     )
 
 
@@ -186,9 +193,15 @@ def aligned(numbers: Sequence[Number | None]) -> tuple[Number | None, ...]:
     places = [_places(item.value) if item else 0 for item in numbers]
     most = max(places, default=0)
     return tuple(
-        replace(item, pad="." * (most > 0 and own == 0) + "0" * (most - own)) if item else None
+        replace(item, pad=_padding(most, own)) if item else None
         for item, own in zip(numbers, places, strict=True)
     )
+
+
+def _padding(most: int, own: int) -> tuple[str, ...]:
+    """Classes of a cell: so many digits are missing, and the point as well."""
+    point = ("point",) if own == 0 < most else ()
+    return (*point, f"pad{most - own}") if most > own else ()
 
 
 def _places(text: str) -> int:

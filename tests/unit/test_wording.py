@@ -29,6 +29,8 @@ from generator.wording import (
     unit_label,
 )
 
+ROOT = Path(__file__).resolve().parents[2]
+
 
 def value(x: float, u: float, *marks: str, key: str = "relative_permittivity") -> Value:
     return Value(key, x, u, 298.15, "measured", ("a", "b"), marks)
@@ -90,21 +92,26 @@ def test_number_keeps_sources_marks_and_temperature() -> None:
 def test_padding_puts_decimal_points_in_line() -> None:
     column = [number(value(x, u), {}) for x, u in ((78.36, 0.05), (2.0, 1.0), (5.5, 0.1))]
     made = aligned([*column, None])
-    lengths = set()
+    places = set()
     for item in made[:3]:
         assert item is not None
-        text = item.value + item.pad
-        lengths.add(len(text) - text.index("."))
-    assert len(lengths) == 1
+        whole, point, decimals = item.value.partition(".")
+        missing = sum(int(name[3:]) for name in item.pad if name.startswith("pad"))
+        assert bool(point) != ("point" in item.pad), (whole, item.pad)
+        places.add(len(decimals) + missing)
+    assert len(places) == 1
     assert made[3] is None
+    style = (ROOT / "site_src" / "pages" / "assets" / "tables.css").read_text(encoding="utf-8")
+    for name in {name for item in made if item for name in item.pad}:
+        assert f".{name} {{" in style
 
 
 def test_cells() -> None:
     made = number(value(20.5, 0.1, "extrapolated"), {})
     cell = cell_markup(made, "ref")
     assert cell.startswith('<td class="n ref" data-v="20.5">')
-    assert 'title="extrapolated: outside the stated range of its curve">x</sup>' in cell
-    assert cell_markup(None) == '<td class="n none ">–</td>'
+    assert '20.50<sup class="mark">x</sup><small>±\u202f0.10</small></td>' in cell
+    assert cell_markup(None) == '<td class="n none">–</td>'
 
 
 def test_every_mark_has_a_letter_of_its_own() -> None:
@@ -114,7 +121,7 @@ def test_every_mark_has_a_letter_of_its_own() -> None:
 
 
 def test_every_mark_is_explained_to_the_reader() -> None:
-    page = Path(__file__).resolve().parents[2] / "site_src" / "pages" / "how-to-read.md"
+    page = ROOT / "site_src" / "pages" / "how-to-read.md"
     rows = re.findall(r"^\| (\w) \| ([\w ]+) \|", page.read_text(encoding="utf-8"), re.MULTILINE)
     assert {(m.letter, m.label) for m in MARKS} == set(rows)
 

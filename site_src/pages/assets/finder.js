@@ -1,168 +1,167 @@
-/* The finder of the home page. A classic script without requests, so that it works from a file. */
-(function () {
+/* The finder: best match first, from the first key stroke. Used on the home page and to choose
+   substances side by side. Nothing is requested, so that it works from a file. */
+(() => {
   "use strict";
 
-  var LIMIT = 24;
+  const LIMIT = 24;
 
   /* Letters and digits only: a CAS number, a name and a formula are found with or without
      hyphens, blanks and brackets. */
-  function squeeze(text) {
-    return text.toLowerCase().normalize("NFKD").replace(/[^a-z0-9\u0370-\u03ff]/g, "");
-  }
+  const squeeze = (text) =>
+    text.toLowerCase().normalize("NFKD").replace(/[^a-z0-9\u0370-\u03ff]/g, "");
 
-  function prepare(entry) {
-    return {
-      entry: entry,
-      name: squeeze(entry.n),
-      words: entry.n.toLowerCase().split(/[^a-z0-9]+/),
-      cas: squeeze(entry.c),
-      formula: entry.f.toLowerCase(),
-      synonyms: entry.s.map(squeeze),
-      key: squeeze(entry.k)
-    };
-  }
+  const prepare = (entry) => ({
+    entry,
+    name: squeeze(entry.n),
+    words: entry.n.toLowerCase().split(/[^a-z0-9]+/),
+    cas: squeeze(entry.c),
+    formula: entry.f.toLowerCase(),
+    synonyms: entry.s.map(squeeze),
+    key: squeeze(entry.k),
+  });
 
   /* Lower is better; -1 means that it does not match. An exact CAS number or name always wins. */
-  function rank(item, query, typed) {
-    if (item.cas === query || item.key === query) { return 0; }
-    if (item.name === query) { return 1; }
-    if (item.synonyms.indexOf(query) >= 0) { return 2; }
-    if (item.formula === typed) { return 3; }
-    if (item.name.indexOf(query) === 0) { return 4; }
-    if (item.words.some(function (word) { return word.indexOf(query) === 0; })) { return 5; }
-    if (item.synonyms.some(function (name) { return name.indexOf(query) === 0; })) { return 6; }
-    if (item.cas.indexOf(query) === 0) { return 7; }
-    if (item.name.indexOf(query) > 0) { return 8; }
-    if (item.synonyms.some(function (name) { return name.indexOf(query) > 0; })) { return 9; }
-    if (item.formula.indexOf(typed) >= 0) { return 10; }
-    if (item.cas.indexOf(query) > 0) { return 11; }
-    if (item.key.indexOf(query) >= 0) { return 12; }
-    return -1;
-  }
+  const rank = (item, query, typed) => [
+    item.cas === query || item.key === query,
+    item.name === query,
+    item.synonyms.includes(query),
+    item.formula === typed,
+    item.name.startsWith(query),
+    item.words.some((word) => word.startsWith(query)),
+    item.synonyms.some((name) => name.startsWith(query)),
+    item.cas.startsWith(query),
+    item.name.includes(query),
+    item.synonyms.some((name) => name.includes(query)),
+    item.formula.includes(typed),
+    item.cas.includes(query),
+    item.key.includes(query),
+  ].indexOf(true);
 
-  function search(items, text, family, polar) {
-    var query = squeeze(text);
-    var typed = text.trim().toLowerCase();
-    var found = [];
-    items.forEach(function (item, position) {
-      if (family && item.entry.g !== family) { return; }
-      if (polar && item.entry.p !== polar) { return; }
-      var grade = query ? rank(item, query, typed) : 20;
-      if (grade >= 0) { found.push([grade, query ? item.name.length : 0, position, item]); }
-    });
-    found.sort(function (a, b) { return a[0] - b[0] || a[1] - b[1] || a[2] - b[2]; });
-    return found.map(function (hit) { return hit[3].entry; });
-  }
+  const search = (items, text, fits = () => true) => {
+    const query = squeeze(text);
+    const typed = text.trim().toLowerCase();
+    return items
+      .map((item, place) => ({ item, place, grade: query ? rank(item, query, typed) : 0 }))
+      .filter(({ item, grade }) => grade >= 0 && fits(item.entry))
+      .sort((a, b) => a.grade - b.grade
+        || (query ? a.item.name.length - b.item.name.length : 0) || a.place - b.place)
+      .map(({ item }) => item.entry);
+  };
 
-  if (typeof module !== "undefined") {
-    module.exports = { prepare: prepare, search: search };
-    return;
-  }
+  const { make } = handbook;
 
-  function element(tag, name, text) {
-    var made = document.createElement(tag);
-    if (name) { made.className = name; }
-    if (text) { made.textContent = text; }
-    return made;
-  }
+  const formula = (text) => make("span", { class: "formula" },
+    ...text.split(/(\d+)/).map((part) => (/^\d+$/.test(part) ? make("sub", {}, part) : part)));
 
-  function formula(text) {
-    var holder = element("span", "formula");
-    text.split(/(\d+)/).forEach(function (part) {
-      holder.appendChild(/^\d+$/.test(part) ? element("sub", "", part) : document.createTextNode(part));
-    });
-    return holder;
-  }
+  /* The synonym that was meant, where the name itself does not show why it was found. */
+  const alias = (entry, text) => {
+    const wanted = squeeze(text);
+    if (!wanted || squeeze(entry.n).includes(wanted)) { return []; }
+    const found = entry.s.find((name) => squeeze(name).includes(wanted));
+    return found ? [make("span", { class: "alias" }, `also ${found}`)] : [];
+  };
 
-  function row(entry, query) {
-    var link = element("a");
-    link.href = entry.u;
-    link.appendChild(element("b", "", entry.n));
-    var wanted = squeeze(query);
-    var alias = wanted && squeeze(entry.n).indexOf(wanted) < 0
-      ? entry.s.filter(function (name) { return squeeze(name).indexOf(wanted) >= 0; })[0] : "";
-    if (alias) { link.appendChild(element("span", "alias", "also " + alias)); }
-    link.appendChild(element("span", "cas", entry.c));
-    link.appendChild(formula(entry.f));
-    link.appendChild(element("span", "eps", entry.e ? "ε " + entry.e + " at " + entry.t : "ε not known"));
-    link.appendChild(element("span", "polar", entry.p === "not known" ? "polarity not known" : entry.p));
-    var item = element("li");
-    item.appendChild(link);
-    return item;
-  }
-
-  function start() {
-    var input = document.getElementById("finder-input");
-    var index = document.getElementById("finder-index");
-    if (!input || !index || input.dataset.ready) { return; }
-    input.dataset.ready = "yes";
-    var items = JSON.parse(index.textContent).map(prepare);
-    var results = document.getElementById("finder-results");
-    var status = document.getElementById("finder-status");
-    var family = document.getElementById("finder-family");
-    var polar = document.getElementById("finder-polar");
-
-    function links() { return Array.prototype.slice.call(results.querySelectorAll("a")); }
-
-    function show() {
-      results.textContent = "";
-      if (!input.value.trim() && !family.value && !polar.value) {
-        status.textContent = "";
-        return;
-      }
-      var found = search(items, input.value, family.value, polar.value);
-      found.slice(0, LIMIT).forEach(function (entry) { results.appendChild(row(entry, input.value)); });
-      var more = found.length - LIMIT;
-      status.textContent = found.length
-        ? found.length + (found.length === 1 ? " substance" : " substances") + (more > 0 ? ", the first " + LIMIT + " shown" : "")
-        : "Nothing in the handbook matches.";
-    }
-
-    function move(event) {
-      var list = links();
-      var at = list.indexOf(document.activeElement);
-      if (event.key === "ArrowDown" && list.length) {
-        list[Math.min(at + 1, list.length - 1)].focus();
-      } else if (event.key === "ArrowUp" && at >= 0) {
-        (at === 0 ? input : list[at - 1]).focus();
-      } else if (event.key === "Home" && at > 0) {
-        list[0].focus();
-      } else if (event.key === "End" && at >= 0) {
-        list[list.length - 1].focus();
-      } else if (event.key === "Escape") {
-        input.value = "";
-        show();
-        input.focus();
-      } else if (event.key === "Enter" && document.activeElement === input && list.length) {
-        list[0].click();
-      } else {
-        return;
-      }
-      event.preventDefault();
-    }
-
-    input.addEventListener("input", show);
-    family.addEventListener("change", show);
-    polar.addEventListener("change", show);
-    input.addEventListener("keydown", move);
-    results.addEventListener("keydown", move);
-    /* The theme opens its own search at "/" and swallows arrows; on this page the finder is first. */
-    window.addEventListener("keydown", function (event) {
-      var tag = document.activeElement ? document.activeElement.tagName : "";
-      var typing = /^(INPUT|SELECT|TEXTAREA)$/.test(tag);
-      if (event.key === "/" && !typing && !event.ctrlKey && !event.metaKey && !event.altKey) {
+  /* Arrow keys go through the hits below a text field. */
+  const keys = (input, list, clear) => {
+    const all = () => Array.from(list.querySelectorAll("[data-hit]"));
+    const act = (event, actions) => {
+      if (actions[event.key]) {
+        actions[event.key]();
         event.preventDefault();
-        event.stopPropagation();
-        input.focus();
-        input.select();
       }
-    }, true);
-    show();
-  }
+    };
+    input.addEventListener("keydown", (event) => act(event, {
+      ArrowDown: () => all()[0]?.focus(),
+      Enter: () => all()[0]?.click(),
+      Escape: clear,
+    }));
+    list.addEventListener("keydown", (event) => {
+      const hits = all();
+      const at = hits.indexOf(document.activeElement);
+      if (at < 0) { return; }
+      act(event, {
+        ArrowDown: () => (hits[at + 1] ?? hits[at]).focus(),
+        ArrowUp: () => (hits[at - 1] ?? input).focus(),
+        Home: () => hits[0].focus(),
+        End: () => hits.at(-1).focus(),
+        Escape: () => { clear(); input.focus(); },
+      });
+    });
+  };
 
-  if (document.readyState === "loading") {
-    document.addEventListener("DOMContentLoaded", start);
-  } else {
-    start();
-  }
+  window.handbook.finder = { prepare, search, formula, alias, keys };
+
+  /* ---- the home page ---- */
+
+  const input = document.getElementById("finder-input");
+  if (!input) { return; }
+  const items = JSON.parse(document.getElementById("finder-index").textContent).map(prepare);
+  const results = document.getElementById("finder-results");
+  const status = document.getElementById("finder-status");
+  const selects = Array.from(document.querySelectorAll(".finder-filters select"));
+  const liquid = document.getElementById("finder-liquid");
+  const stock = document.getElementById("finder-stock");
+  const box = handbook.tray(document.getElementById("finder-tray"));
+
+  const chosen = () => selects.some((select) => select.value) || liquid.value || stock.checked;
+
+  /* Liquid at a temperature only where both ends of the range are known to hold it. */
+  const fits = (entry) => {
+    const at = liquid.valueAsNumber;
+    return selects.every(({ value, dataset }) =>
+      !value || (value === "?" ? entry[dataset.key] === "" : entry[dataset.key] === value))
+      && (Number.isNaN(at)
+        || (entry.m !== null && entry.b !== null && entry.m <= at && at <= entry.b))
+      && (!stock.checked || entry.o === 1);
+  };
+
+  const row = (entry) => make("li", {}, box(entry.u, entry.n), make("a", { href: entry.u, "data-hit": true },
+      make("b", {}, entry.n),
+      ...alias(entry, input.value),
+      make("span", { class: "cas" }, entry.c),
+      formula(entry.f),
+      make("span", { class: "eps" }, entry.e ? `ε ${entry.e} at ${entry.t}` : "ε not known"),
+      make("span", { class: "polar" }, entry.p === "not known" ? "polarity not known" : entry.p),
+  ));
+
+  const show = () => {
+    if (!input.value.trim() && !chosen()) {
+      results.replaceChildren();
+      status.textContent = "";
+      return;
+    }
+    const found = search(items, input.value, fits);
+    results.replaceChildren(...found.slice(0, LIMIT).map(row));
+    const open = items.filter(({ entry }) => entry.m === null || entry.b === null).length;
+    status.textContent = [
+      found.length ? `${found.length} substance${found.length === 1 ? "" : "s"}` : "Nothing in the handbook matches",
+      found.length > LIMIT ? `, the first ${LIMIT} shown` : "",
+      liquid.value && open ? `; ${open} left out, their liquid range is not known` : "",
+      ".",
+    ].join("");
+  };
+
+  const clear = () => { input.value = ""; show(); };
+
+  input.addEventListener("input", show);
+  [...selects, stock].forEach((field) => field.addEventListener("change", show));
+  liquid.addEventListener("input", show);
+  keys(input, results, clear);
+  document.getElementById("finder-clear").addEventListener("click", () => {
+    selects.forEach((select) => { select.value = ""; });
+    liquid.value = "";
+    stock.checked = false;
+    clear();
+  });
+  /* The theme opens its own search at "/"; on this page the finder comes first. */
+  addEventListener("keydown", (event) => {
+    const typing = /^(INPUT|SELECT|TEXTAREA)$/.test(document.activeElement?.tagName ?? "");
+    if (event.key === "/" && !typing && !event.ctrlKey && !event.metaKey && !event.altKey) {
+      event.preventDefault();
+      event.stopPropagation();
+      input.focus();
+      input.select();
+    }
+  }, true);
+  show();
 })();
