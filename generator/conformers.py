@@ -17,6 +17,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from generator.smiles import why_unreadable
 from generator.units import AVOGADRO, BOLTZMANN
 
 if TYPE_CHECKING:
@@ -74,7 +75,7 @@ def parse(smiles: str) -> Mol:
     with rdBase.BlockLogs():
         mol: Mol | None = Chem.MolFromSmiles(text)
     if mol is None or mol.GetNumAtoms() == 0:
-        raise ValueError(f"not a valid SMILES string: {text!r}")
+        raise ValueError(f"not a valid SMILES string: {text!r}: {why_unreadable(text)}")
     # reading the canonical form makes every later step independent of the atom order typed in
     with rdBase.BlockLogs():
         canonical: Mol | None = Chem.MolFromSmiles(Chem.MolToSmiles(mol))

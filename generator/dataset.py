@@ -19,7 +19,7 @@ from generator.units import ZERO_CELSIUS, convert, convert_difference
 # What vacuum has: relative uncertainties are of what the liquid adds to it.
 _VACUUM = {"relative_permittivity": 1.0, "refractive_index": 1.0}
 # Printed temperatures in °C are compared to this many kelvin.
-_SAME = 0.005
+SAME_TEMPERATURE = 0.005
 
 
 @dataclass(frozen=True, slots=True)
@@ -237,26 +237,23 @@ def _grouped(rows: Iterable[_Row | None]) -> dict[tuple[str, str], tuple[_Row, .
 
 def concerns(correction: Correction, row: Measurement | Correlation) -> bool:
     """Whether a correction means this row: same key, temperature and printed value."""
-    if (correction.solvent, correction.quantity, correction.source) != (
-        row.solvent,
-        row.quantity,
-        row.source,
-    ):
+    key = (correction.solvent, correction.quantity, correction.source)
+    if key != (row.solvent, row.quantity, row.source):
         return False
-    temperature = row.temperature if isinstance(row, Measurement) else None
-    if (correction.temperature is None) != (temperature is None):
-        return False
-    if temperature is not None and abs((correction.temperature or 0.0) - temperature) > _SAME:
-        return False
-    return _numbers(correction.published_value) == _numbers(row.printed)
+    one = correction.temperature
+    other = row.temperature if isinstance(row, Measurement) else None
+    if one is None or other is None:
+        return one is other and printed_alike(correction.published_value, row.printed)
+    near = abs(one - other) <= SAME_TEMPERATURE
+    return near and printed_alike(correction.published_value, row.printed)
 
 
-def _numbers(text: str) -> tuple[float, ...] | str:
-    """The numbers of a text, so that 1.0 equals 1; the text itself where it holds others."""
+def printed_alike(one: str, other: str) -> bool:
+    """Whether two cells hold the same numbers in the same order, so that 1.0 equals 1."""
     try:
-        return tuple(float(part) for part in text.split())
+        return [float(part) for part in one.split()] == [float(part) for part in other.split()]
     except ValueError:
-        return text
+        return one == other
 
 
 def load_dataset(folder: Path) -> Dataset:

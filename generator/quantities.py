@@ -89,7 +89,7 @@ _ALL = (
         needs_temperature=True,
     ),
     _measured(
-        "density", "Density", "ρ", "g/cm3", 4, (0.05, 4.0),
+        "density", "Density", "ρ", "g/cm3", 4, (0.03, 4.0),
         "Mass of the pure liquid by volume, at 1 atm or at its own vapour pressure.",
         "Liquid range; curves only inside their stated range.",
         needs_temperature=True,

@@ -23,6 +23,7 @@ from generator.schema import TableSchema, read_package, read_schema
 _BOM = "\ufeff"
 _NAMES = {"\t": "tabs", ";": "semicolons", ",": "commas"}
 
+_CUT = ("truncated", "bad-quotes")
 
 @dataclass(frozen=True, slots=True)
 class Row:
@@ -42,7 +43,11 @@ class Row:
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """The rows of one file. ``newline`` and ``delimiter`` are as found in the file."""
+    """The rows of one file. ``newline`` and ``delimiter`` are as found in the file.
+
+    ``faulty`` holds line and column of every cell with an error; ``complete`` is false where rows
+    are missing because the file is, or cannot be read to its end.
+    """
 
     schema: TableSchema
     rows: tuple[Row, ...]
@@ -52,6 +57,17 @@ class Table:
     has_bom: bool = False
 
 
+    faulty: frozenset[tuple[int, str]] = frozenset()
+    complete: bool = True
+
+    @property
+    def whole_rows(self) -> Iterator[Row]:
+        """The rows in which every cell stands under its column."""
+        return (row for row in self.rows if row.whole)
+
+    def problem(self, row: Row, column: str, fault: Fault) -> Problem:
+        """A fault in one cell of one row."""
+        return Problem(self.schema.path, row.line, column, *fault)
 @dataclass(frozen=True)
 class Tables:
     """A folder of tables as read: rows, problems with their places, and a hash of the contents."""
@@ -87,7 +103,7 @@ def read_tables(folder: Path) -> Tables:
                     f"{','.join(schema.columns)}",
                 )
             )  # fmt: skip
-            tables[name] = Table(schema, (), schema.columns)
+            tables[name] = Table(schema, (), schema.columns, complete=False)
             continue
         seal.update(f"{name}\x00{len(data)}\x00".encode() + data)
         tables[name], found = read_table(data, schema)
@@ -155,7 +171,7 @@ class _Reader:
         if not records:
             self._say(0, "", "empty-file", "nothing in the file", "a line with the column names",
                       f"first line: {','.join(self._schema.columns)}")  # fmt: skip
-            return Table(self._schema, ()), self._problems
+            return Table(self._schema, (), complete=False), self._problems
         (header_line, header), *body = records
         columns = self._header(header_line, header)
         rows = [self._row(line, cells, columns) for line, cells in body]
@@ -163,13 +179,21 @@ class _Reader:
         if delimiter != "," and rows:
             self._say(header_line, "", "separator", f"{_NAMES[delimiter]} between the cells",
                       "commas", "nothing to do; it is read as it stands", NOTE)  # fmt: skip
-        return (
-            Table(self._schema, tuple(rows), columns, delimiter, newline, has_bom),
-            self._problems,
+        errors = [problem for problem in self._problems if problem.severity != NOTE]
+        table = Table(
+            self._schema,
+            tuple(rows),
+            columns,
+            delimiter,
+            newline,
+            has_bom,
+            frozenset((problem.line, problem.column) for problem in errors),
+            not any(problem.kind in _CUT for problem in errors),
         )
 
     def _decoded(self, data: bytes) -> str:
         if data[:2] in (b"\xff\xfe", b"\xfe\xff"):
+        return table, self._problems
             self._say(1, "", "encoding", "UTF-16", "UTF-8",
                       "save the table again as CSV UTF-8")  # fmt: skip
             return data.decode("utf-16", errors="replace")

@@ -122,7 +122,7 @@ FORMS: Mapping[str, Form] = MappingProxyType(
         form.name: form
         for form in (
             Form(
-                "polynomial", ("a", "b", "c", "d", "e", "f"), 1,
+                "polynomial", ("a", "b", "c", "d", "e", "f", "g", "h"), 1,
                 r"y = a + bT + cT^2 + dT^3 + \dots",
                 "power series in the temperature",
                 _polynomial, _polynomial_slope,
