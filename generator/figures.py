@@ -154,10 +154,10 @@ def _kept_or_drawn(
         else:
             drawn[name] = found.decode()
     jobs = [wanted[name][:2] for name in missing]
-    for name, svg in zip(missing, _drawn(jobs), strict=True):
+    for name, text in zip(missing, _drawn(jobs), strict=True):
         kind, _, key = wanted[name]
-        cache.put(kind, key, svg.encode())
-        drawn[name] = svg
+        cache.put(kind, key, text.encode())
+        drawn[name] = text
     return {name: drawn[name] for name in wanted}
 
 
