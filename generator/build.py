@@ -9,10 +9,12 @@ from pathlib import Path
 from generator import checks, evidence, exports, figures, pages, sidebyside
 from generator.cache import Cache
 from generator.catalogue import catalogue
-from generator.dataset import load_dataset
+from generator.cells import ERROR, NOTE
+from generator.dataset import dataset_from
 from generator.errors import DatasetError, Problem
 from generator.metrics import Handbook, Settings, compute
 from generator.schema import read_package
+from generator.tables import read_tables
 
 
 @dataclass(frozen=True)
@@ -25,14 +27,27 @@ class Site:
     handbook: Handbook
 
 
-def review(data: Path, settings: Settings) -> tuple[Handbook, tuple[Problem, ...]]:
-    """The numbers and every finding. Raises ``DatasetError`` when a finding is an error."""
-    structural = checks.check_folder(data)
-    errors = [problem for problem in structural if problem.severity == "error"]
-    if errors:
-        raise DatasetError(errors)
-    handbook = compute(load_dataset(data), settings)
+def inspect(
+    data: Path, settings: Settings, cache: Cache | None = None
+) -> tuple[Handbook, tuple[Problem, ...]]:
+    """The numbers and all there is to say about the tables, notes on how they were read included.
+
+    Raises ``DatasetError``, which tells all of it, when some of it is an error.
+    """
+    tables = read_tables(data)
+    structural = checks.check_tables(tables, cache)
+    if any(problem.severity == ERROR for problem in structural):
+        raise DatasetError(structural)
+    handbook = compute(dataset_from(tables), settings, cache)
     return handbook, (*structural, *evidence.check_handbook(handbook))
+
+
+def review(
+    data: Path, settings: Settings, cache: Cache | None = None
+) -> tuple[Handbook, tuple[Problem, ...]]:
+    """The numbers and every finding that is published. Raises ``DatasetError`` as ``inspect``."""
+    handbook, findings = inspect(data, settings, cache)
+    return handbook, tuple(finding for finding in findings if finding.severity != NOTE)
 
 
 def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Site:
@@ -40,8 +55,9 @@ def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Sit
 
     Raises ``DatasetError`` with every problem when the tables cannot be used.
     """
-    handbook, findings = review(data, settings)
-    drawn = figures.figures_of(handbook, Cache(cache_folder))
+    cache = Cache(cache_folder)
+    handbook, findings = review(data, settings, cache)
+    drawn = figures.figures_of(handbook, cache)
     drawn.prepare(tuple(handbook.dataset.solvents))
     return Site(
         pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),

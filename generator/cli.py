@@ -49,20 +49,24 @@ def check(data: Path, as_json: bool) -> None:
 
     Exit status: 0 without errors, 1 with errors, 2 when the command was misused.
     """
-    from generator.build import review
+    from generator.build import inspect
+    from generator.cache import Cache
     from generator.metrics import Settings
 
     findings: tuple[Problem, ...]
     try:
-        findings = review(data, Settings())[1]
+        findings = inspect(data, Settings(), Cache(data.parent / ".cache"))[1]
     except DatasetError as error:
         findings = error.problems
-    errors = sum(f.severity == "error" for f in findings)
+    errors, suspects, notes = (
+        sum(finding.severity == severity for finding in findings)
+        for severity in ("error", "suspect", "note")
+    )
     if as_json:
         click.echo(json.dumps([f.as_dict() for f in findings], ensure_ascii=False, indent=1))
     else:
         _report(findings)
-        click.echo(f"{errors} errors, {len(findings) - errors} suspect values")
+        click.echo(f"Errors: {errors}. Suspect values: {suspects}. Notes: {notes}.")
     sys.exit(1 if errors else 0)
 
 

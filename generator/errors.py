@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import asdict, dataclass
 
+_ADVICE = {"error": "instead: ", "suspect": "settle by:", "note": "outcome: "}
+
 
 @dataclass(frozen=True, slots=True, order=True)
 class Problem:
@@ -12,9 +14,10 @@ class Problem:
 
     ``file`` is the name inside the data folder, ``line`` the physical line (the header is line 1,
     0 stands for the whole file), ``column`` the column's name ("" for the whole line).
-    ``kind`` is a slug such as ``cas-check-digit``. ``severity`` is ``error`` (nothing is built)
-    or ``suspect`` (published with a flag). A cross-check adds its ``evidence`` in numbers and
-    its ``strength``, by which the review list is ordered (how many times the usual spread).
+    ``kind`` is a slug such as ``cas-check-digit``. ``severity`` is ``error`` (nothing is built),
+    ``suspect`` (published with a flag) or ``note`` (read all the same, and only said). A
+    cross-check adds its ``evidence`` in numbers and its ``strength``, by which the review list is
+    ordered (how many times the usual spread).
     """
 
     file: str
@@ -48,16 +51,19 @@ class Problem:
             f"    found:    {self.found}",
             f"    expected: {self.expected}",
             f"    evidence: {self.evidence}" if self.evidence else "",
-            f"    {'instead: ' if self.severity == 'error' else 'settle by:'} {self.hint}",
+            f"    {_ADVICE.get(self.severity, 'advice:  ')} {self.hint}",
         ]
         return "\n".join(line for line in lines if line)
 
 
 class DatasetError(Exception):
-    """The tables cannot be used. ``problems`` holds every problem found, in order of place."""
+    """The tables cannot be used. ``problems`` holds every problem found, in order of place.
+
+    Its text has the errors alone: they are what must be put right.
+    """
 
     def __init__(self, problems: Iterable[Problem]) -> None:
         self.problems = tuple(sorted(problems))
-        count = len(self.problems)
-        head = f"{count} problem{'' if count == 1 else 's'} in the tables"
-        super().__init__("\n".join([head, *map(str, self.problems)]))
+        errors = [problem for problem in self.problems if problem.severity == "error"]
+        head = f"{len(errors)} error{'' if len(errors) == 1 else 's'} in the tables"
+        super().__init__("\n".join([head, *map(str, errors)]))
