@@ -12,6 +12,11 @@ from typing import Any
 from generator.errors import DatasetError, Problem
 
 DESCRIPTION = "datapackage.json"
+# The tables a handbook cannot be made without; others may be described as well.
+NEEDED = (
+    "solvents", "measurements", "correlations", "sources", "uncertainties", "corrections", "stock",
+    "handling",
+)  # fmt: skip
 _SHIPPED = Path(__file__).parents[1] / "data"
 
 
@@ -68,7 +73,7 @@ def read_package(folder: Path) -> Mapping[str, Any]:
     path = folder / DESCRIPTION
     try:
         package: dict[str, Any] = json.loads(path.read_text(encoding="utf-8-sig"))
-        read_schema(package)
+        lacking = _lacking(read_schema(package)) if folder != _SHIPPED else []
     except FileNotFoundError:
         problem = _problem(
             0, "missing-table", "no such file", f"{DESCRIPTION}, which describes the tables"
@@ -88,7 +93,24 @@ def read_package(folder: Path) -> Mapping[str, Any]:
                 )
             ]
         ) from error
+    if lacking:
+        raise DatasetError(lacking)
     return package
+
+
+def _lacking(found: Mapping[str, TableSchema]) -> list[Problem]:
+    """The tables and columns that a description must have and does not."""
+    problems = []
+    for name in NEEDED:
+        expected = shipped_schema()[name].columns
+        columns = found[name].columns if name in found else ()
+        missing = [column for column in expected if column not in columns]
+        if missing:
+            what = f"{', '.join(missing)} of the table {name}"
+            problems.append(
+                _problem(0, "bad-description", f"nothing about {what}", "every table and column")
+            )
+    return problems
 
 
 def _problem(line: int, kind: str, found: str, expected: str) -> Problem:
