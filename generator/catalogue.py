@@ -12,6 +12,7 @@ from markupsafe import Markup
 
 from generator.dataset import Container, Correction, Correlation, Handling, Measurement
 from generator.errors import Problem
+from generator.history import Event
 from generator.flammability import FlashClass, flash_class
 from generator.metrics import Handbook
 
@@ -83,6 +84,7 @@ class Rows:
     corrections: tuple[Correction, ...] = ()
     stock: tuple[Container, ...] = ()
     handling: tuple[Handling, ...] = ()
+    history: tuple[Event, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -198,6 +200,7 @@ def _rows(handbook: Handbook) -> dict[str, Rows]:
             _shared_out(dataset.solvents, dataset.corrections),
             _shared_out(dataset.solvents, dataset.stock),
             _shared_out(dataset.solvents, dataset.handling),
+            _shared_out(dataset.solvents, dataset.history),
             strict=True,
         )
     }

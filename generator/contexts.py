@@ -217,6 +217,24 @@ class Citation:
 
 
 @dataclass(frozen=True, slots=True)
+class PastLine:
+    """One thing that changed: of which sort, of which quantity, and what."""
+
+    label: str
+    quantity: str
+    what: str
+
+
+@dataclass(frozen=True, slots=True)
+class Past:
+    """What one recorded revision brought for one substance."""
+
+    date: str
+    revision: Link
+    lines: tuple[PastLine, ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Related:
     """A substance to look at beside this one."""
 
@@ -298,5 +316,6 @@ class Datasheet:
     measurements_href: str
     correlations_href: str
     json_ld: Markup
+    history: tuple[Past, ...]
     citations: tuple[Citation, ...]
     foot: Foot

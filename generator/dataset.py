@@ -12,6 +12,7 @@ from typing import TypeVar
 
 from generator.cells import NOTE
 from generator.errors import DatasetError
+from generator.history import Event, events
 from generator.quantities import QUANTITIES
 from generator.tables import Row, Tables, read_tables, revisions
 from generator.units import ZERO_CELSIUS, convert, convert_difference
@@ -173,6 +174,7 @@ class Dataset:
     handling: tuple[Handling, ...]
     usual: Mapping[tuple[str, str], Usual]
     revisions: Mapping[str, str] = field(default_factory=dict, repr=False)
+    history: tuple[Event, ...] = ()
 
     def measurements_of(self, solvent: str, quantity: str) -> tuple[Measurement, ...]:
         """The values in force of one quantity of one substance, in table order."""
@@ -287,6 +289,7 @@ def dataset_from(tables: Tables) -> Dataset:
             for row in tables["uncertainties"].rows
         },
         revisions(tables),
+        events(tables),
     )
 
 

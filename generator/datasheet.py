@@ -29,6 +29,7 @@ from generator.provenance import KEY_VALUES, citations, curves, measured, number
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, drawing
 from generator.units import ZERO_CELSIUS
+from generator.timeline import past
 from generator.values import Value
 from generator.ways import way_anchor, ways
 from generator.wording import (
@@ -181,6 +182,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         isomers_href=links.isomers(catalogue.set_of(slug)),
         swaps=tuple(_related(catalogue, other, figures) for other in swaps),
         swaps_total=len(siblings) - 1,
+        history=past(rows.history),
         compare_href=links.compare([slug]),
         compare_isomers_href=links.compare([slug, *isomers][:COMPARED]),
         compare_swaps_href=links.compare([slug, *swaps][:COMPARED]),

@@ -20,6 +20,7 @@ from generator.errors import Problem
 from generator.metrics import Handbook
 from generator.quantities import QUANTITIES
 from generator.schema import DESCRIPTION, read_package
+from generator.timeline import feed
 from generator.units import ZERO_CELSIUS
 from generator.values import Value
 
@@ -44,6 +45,11 @@ def exports(handbook: Handbook, findings: Sequence[Problem], data_folder: Path) 
         "values.csv": _table(VALUE_COLUMNS, _value_rows(handbook, numbers)),
         "findings.csv": _table(FINDING_COLUMNS, _finding_rows(handbook, findings)),
         "handbook.json": _json(handbook, numbers),
+        "changes.atom": feed(
+            handbook.dataset.history,
+            {slug: solvent.name for slug, solvent in handbook.dataset.solvents.items()},
+            handbook.settings.laboratory,
+        ),
         **{
             f"solvents/{slug}.csv": _table(VALUE_COLUMNS, _value_rows(handbook, {slug: found}))
             for slug, found in numbers.items()

@@ -262,6 +262,7 @@ def downloads(package: Mapping[str, Any]) -> tuple[Download, ...]:
         "unit, temperature, basis and sources",
         "findings.csv": "The review list",
         "handbook.json": "The whole handbook, by substance",
+        "changes.atom": "What changed, as a feed for a feed reader (Atom)",
     }
     made = [Download(Link(name, f"downloads/{name}"), what) for name, what in own.items()]
     if package:

@@ -17,6 +17,7 @@ from generator.contexts import Datasheet, Foot
 from generator.datasheet import COMPARED, datasheet
 from generator.errors import Problem
 from generator.metrics import Handbook, Settings
+from generator.timeline import timeline
 from generator.wording import cell_markup, marks_markup, marks_of
 
 
@@ -83,6 +84,7 @@ def _whole(
         groups=comparisons.same_formula(book), menu_entries=menu, **shared,
     )  # fmt: skip
     yield _page("compare.md", "compare", "Side by side", **shared)
+    yield _page("changes.md", "changes", "What changed", t=timeline(book), **shared)
     yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
     measured, derived = methods.methods()
     yield _page(
@@ -109,6 +111,7 @@ _FOUND = {
     "table": 300,
     "isomers": 300,
     "compare": 300,
+    "changes": 2_000,
     "review": 300,
     "methods": 20_000,
     "sources": 20_000,

@@ -20,6 +20,8 @@ from generator.cells import NOTE, Fault, plain, read_cell
 from generator.errors import Problem
 from generator.schema import TableSchema, read_package, read_schema
 
+HISTORY = "history"
+"""The table of recorded revisions, which does not count for the revision."""
 _BOM = "\ufeff"
 _NAMES = {"\t": "tabs", ";": "semicolons", ",": "commas"}
 
@@ -105,7 +107,8 @@ def read_tables(folder: Path) -> Tables:
             )  # fmt: skip
             tables[name] = Table(schema, (), schema.columns, complete=False)
             continue
-        seal.update(f"{name}\x00{len(data)}\x00".encode() + data)
+        if name != HISTORY:
+            seal.update(f"{name}\x00{len(data)}\x00".encode() + data)
         tables[name], found = read_table(data, schema)
         problems += found
     return Tables(folder, package, tables, tuple(problems), seal.hexdigest()[:8])

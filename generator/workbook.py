@@ -19,24 +19,19 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from generator import excel, opendocument, spreadsheet
-from generator.csvfile import CsvFile, parse
 from generator.differences import Change, Grid, grid_of
 from generator.errors import DatasetError, Problem
 from generator.merging import merge
 from generator.quantities import QUANTITIES
 from generator.schema import Field, TableSchema
 from generator.spreadsheet import DATE, NUMBER, SPARE_ROWS, TEXT, Choices, Column, Sheet
-from generator.tables import Tables, read_tables
+from generator.tablefiles import put, read_whole
+from generator.tables import Tables
 from generator.thermal import FORMS
 
 ABOUT, LISTS, BASE = "About", "_lists", "_base"
 _WRITERS = {".xlsx": excel.write, ".ods": opendocument.write}
 _CHUNK = 30_000  # characters a cell
-# Faults after which it is not sure which cell stands where.
-_SHAPELESS = {
-    "missing-table", "empty-file", "encoding", "bad-quotes", "truncated", "missing-column",
-    "unknown-column", "duplicate-column", "too-many-cells", "too-few-cells",
-}  # fmt: skip
 _WORDS = """\
 Each further sheet is one table of the handbook. Point at a column's title to read what it holds.
 Every cell is text and comes back exactly as typed: 0.9970 keeps its last zero, a CAS number stays one.
@@ -67,7 +62,7 @@ class Plan:
         with tempfile.TemporaryDirectory() as name:
             copy = Path(name) / "data"
             shutil.copytree(self.folder, copy)
-            _put(copy, self.files)
+            put(copy, self.files)
             yield copy
 
 
@@ -80,11 +75,11 @@ def write(folder: Path, path: Path) -> None:
     writer = _WRITERS.get(path.suffix.lower())
     if writer is None:
         raise ValueError(f"{path.name}: the name of a workbook ends in {' or '.join(_WRITERS)}")
-    tables, files = _whole(folder)
+    tables, files = read_whole(folder)
     grids = {name: grid_of(files[name], tables[name].schema) for name in files}
     _refuse_long_cells(grids)
     content = writer(_sheets(tables, grids), str(tables.package.get("title", folder.name)))
-    _put(path.parent, {path.name: content})
+    put(path.parent, {path.name: content})
 
 
 def read(folder: Path, path: Path) -> Plan:
@@ -93,7 +88,7 @@ def read(folder: Path, path: Path) -> Plan:
     Raises ``DatasetError`` with everything that stands against it: a table or the workbook is
     not whole, or both changed the same place.
     """
-    tables, files = _whole(folder)
+    tables, files = read_whole(folder)
     problems: list[Problem] = []
     try:
         book = spreadsheet.read(path)
@@ -119,27 +114,7 @@ def read(folder: Path, path: Path) -> Plan:
 
 def apply(plan: Plan) -> None:
     """Write the changed tables, each whole or not at all."""
-    _put(plan.folder, plan.files)
-
-
-def _put(folder: Path, files: Mapping[str, bytes]) -> None:
-    drafts = {folder / name: folder / f"{name}.new" for name in files}
-    for path, draft in drafts.items():
-        draft.write_bytes(files[path.name])
-    for path, draft in drafts.items():
-        draft.replace(path)
-
-
-def _whole(folder: Path) -> tuple[Tables, dict[str, CsvFile]]:
-    """The tables and their files, where it is sure which cell stands where."""
-    tables = read_tables(folder)
-    broken = [problem for problem in tables.problems if problem.kind in _SHAPELESS]
-    if broken:
-        raise DatasetError(broken)
-    return tables, {
-        name: parse((folder / table.schema.path).read_bytes(), table.delimiter)
-        for name, table in tables.tables.items()
-    }
+    put(plan.folder, plan.files)
 
 
 def _refuse_long_cells(grids: Mapping[str, Grid]) -> None:

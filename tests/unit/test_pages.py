@@ -32,7 +32,7 @@ FINDING = Problem(
     "look it up", severity="suspect",
 )  # fmt: skip
 OVERVIEWS = {
-    "index.md", "review.md", "methods.md", "sources.md", "data-dictionary.md", "downloads.md",
+    "index.md", "changes.md", "review.md", "methods.md", "sources.md", "data-dictionary.md", "downloads.md",
     "compare.md",
     "tables/reference.md", "tables/permittivity.md", "tables/temperature-coefficients.md",
     "tables/association.md", "tables/isomers.md",
@@ -333,7 +333,7 @@ DATASHEET_KEYS = [
     "metric_columns", "metric_marks", "ways", "measured", "curves", "handling", "containers",
     "isomers", "isomers_href", "swaps", "swaps_total", "compare_href", "compare_isomers_href",
     "compare_swaps_href", "flash_class", "flash_class_link", "quotation", "csv_href",
-    "measurements_href", "correlations_href", "json_ld", "citations", "foot",
+    "measurements_href", "correlations_href", "json_ld", "history", "citations", "foot",
 ]  # fmt: skip
 
 
