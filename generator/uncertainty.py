@@ -28,7 +28,8 @@ def scores(index: int) -> Array:
     an order of each input's own, then freed of what correlation chance has left between inputs,
     so that a linear law of propagation is met exactly. Raises ``IndexError`` beyond ``INPUTS``.
     """
-    return _all_scores()[index]
+    row: Array = _all_scores()[index]
+    return row
 
 
 @lru_cache(maxsize=1)
