@@ -8,10 +8,11 @@ from itertools import combinations
 
 import numpy as np
 
-from generator.facts import CAS, SMILES, TEMPERATURE, Curve, Point, View
+from generator.facts import TEMPERATURE, Curve, Point, View
+from generator.identity import CAS, SMILES
 from generator.outcome import Outcome, cells, relative_spread
 from generator.quantities import QUANTITIES
-from generator.units import ZERO_CELSIUS, convert
+from generator.units import ZERO_CELSIUS, convert, convert_difference
 
 EPS, N, RHO, MU = "relative_permittivity", "refractive_index", "density", "dipole_moment"
 TM, TB, TF = "melting_point", "boiling_point", "flash_point"
@@ -20,10 +21,14 @@ ROOM = 20.0 + ZERO_CELSIUS  # K
 ONE_ATMOSPHERE = 101.325  # kPa, exact
 # Two points at temperatures this far apart are of one temperature [K].
 SAME = 5.0
+# A row that was measured this close to the table's temperature is the table's row [K].
+_SAME_PRINT = 0.6
 _CURVES = {PRESSURE: "pressure-curves", VISCOSITY: "viscosity-curves"}
 _TEMPERATURES = {TM: "melting-points", TB: "boiling-points", TF: "flash-points"}
 # A calculated moment is of one conformer and one method [D].
 _CALCULATED = 0.3
+# What an estimate for a molecule of well-known parts and few shapes is off by [D].
+USUAL_ESTIMATE = 0.29
 
 
 def _own_curve(view: View) -> Iterator[Outcome]:
@@ -32,22 +37,37 @@ def _own_curve(view: View) -> Iterator[Outcome]:
             for curve in view.curves(key):
                 if np.isfinite(point.temperature) and curve.holds(point.temperature):
                     yield Outcome(
-                        "own-curve", key, (*cells(point), curve.name), view.value(point),
+                        _kind(point, curve), key,
+                        (*cells(point), curve.name), view.value(point),
                         view.curve(curve, view.temperature(point)), relative_spread(point),
                         f"point ({point.label})", curve.label,
                     )  # fmt: skip
 
 
+def _kind(point: Point, curve: Curve) -> str:
+    if curve.calculated:
+        return "worked-out"
+    return "own-curve" if point.row.source == curve.row.source else "curve"
+
+
+def inside(*curves: Curve) -> float:
+    """Room temperature, or half way between the ends where curves do not hold there [K]."""
+    low = max(curve.row.t_min for curve in curves)
+    high = min(curve.row.t_max for curve in curves)
+    # The last stretch before a critical point is no place to compare densities at.
+    inner = high - 0.15 * (high - low)
+    return ROOM if low <= ROOM <= max(inner, low) else low if low > ROOM else 0.5 * (low + high)
+
+
 def _curves(view: View) -> Iterator[Outcome]:
     for key in (EPS, RHO, VISCOSITY, PRESSURE):
         for one, other in combinations(view.curves(key), 2):
-            low = max(one.row.t_min, other.row.t_min)
-            high = min(one.row.t_max, other.row.t_max)
-            if low <= high:
-                at = float(np.clip(ROOM, low, high))
+            at = inside(one, other)
+            if one.holds(at) and other.holds(at):
                 yield Outcome(
-                    _CURVES.get(key, "curves"), key, (one.name, other.name), view.curve(one, at),
-                    view.curve(other, at), 0.0, one.label, other.label,
+                    _CURVES.get(key, "curves"), key, (one.name, other.name),
+                    view.curve(one, at), view.curve(other, at), 0.0,
+                    f"{one.label} at {at - ZERO_CELSIUS:.0f} °C", other.label,
                 )  # fmt: skip
 
 
@@ -55,10 +75,10 @@ def _points(view: View) -> Iterator[Outcome]:
     for key in (EPS, RHO, N):
         for one, other in combinations(view.points(key), 2):
             if abs(one.temperature - other.temperature) <= SAME:
+                own = float(np.hypot(relative_spread(one), relative_spread(other)))
                 yield Outcome(
                     "sources", key, (*cells(one), *cells(other)), view.value(one),
-                    view.value(other), float(np.hypot(relative_spread(one),
-                    relative_spread(other))), one.label, other.label,
+                    view.value(other), own, one.label, other.label,
                 )  # fmt: skip
 
 
@@ -67,20 +87,35 @@ def _moments(view: View) -> Iterator[Outcome]:
     for one, other in combinations(points, 2):
         yield Outcome(
             "moments", "all", (one.name, other.name), view.value(one), view.value(other),
-            float(np.hypot(_moment_spread(one), _moment_spread(other))), one.label, other.label,
+            float(np.hypot(moment_spread(one), moment_spread(other))), one.label, other.label,
             weight=max(1.0, 0.5 * min(one.value, other.value)), unit="D",
         )  # fmt: skip
+    yield from _estimate(view)
     limit = view.known.molecule.dipole_limit
     if limit is None:
         return
     for point in points:
         yield Outcome(
-            "symmetry", "all", (point.name, SMILES), np.maximum(view.value(point), limit), limit,
-            _moment_spread(point), f"μ ({point.label})", "allowed by the structure", unit="D",
+            "symmetry", "all", (point.name, SMILES), np.maximum(view.value(point), limit),
+            np.asarray(limit), moment_spread(point), f"μ ({point.label})",
+            "allowed by the structure", unit="D",
         )  # fmt: skip
 
 
-def _moment_spread(point: Point) -> float:
+def _estimate(view: View) -> Iterator[Outcome]:
+    if view.facts.estimate is None or view.structure is not None:
+        return
+    value, uncertainty = view.facts.estimate
+    for point in view.points(MU):
+        yield Outcome(
+            "estimate", "all", (point.name, SMILES), view.value(point),
+            np.asarray(value), moment_spread(point), f"μ ({point.label})",
+            "estimated from the structure", weight=max(1.0, uncertainty / USUAL_ESTIMATE), unit="D",
+        )  # fmt: skip
+
+
+def moment_spread(point: Point) -> float:
+    """Own uncertainty of a dipole moment [D]; a calculated one is of one conformer."""
     return max(point.spread, _CALCULATED) if point.calculated else point.spread
 
 
@@ -88,8 +123,8 @@ def _temperatures(view: View) -> Iterator[Outcome]:
     for key in (TM, TB, TF):
         for one, other in combinations(view.points(key), 2):
             yield Outcome(
-                _TEMPERATURES[key], "all", (one.name, other.name), view.value(one), view.value(other),
-                float(np.hypot(one.spread, other.spread)), one.label, other.label, unit="degC",
+                _TEMPERATURES[key], "all", (one.name, other.name), view.value(one),
+                view.value(other), float(np.hypot(one.spread, other.spread)), one.label, other.label, unit="degC",
             )  # fmt: skip
 
 
@@ -102,7 +137,7 @@ def _vapour(view: View) -> Iterator[Outcome]:
             yield Outcome(
                 "vapour", "all", (point.name, curve.name), view.value(point),
                 # A curve under suspicion has no inverse worth working out: it is left out whole.
-                boils - ZERO_CELSIUS, point.spread, f"boiling point ({point.label})",
+                np.asarray(boils - ZERO_CELSIUS), point.spread, f"boiling point ({point.label})",
                 f"1 atm on {curve.label}", unit="degC",
             )  # fmt: skip
 
@@ -124,59 +159,60 @@ def boiling_after(curve: Curve) -> float:
 
 def _identity(view: View) -> Iterator[Outcome]:
     who = view.facts.identity
-    if not who.relation:
-        return
-    yield Outcome(
-        "identity", "all", (SMILES, CAS), float(who.clashes and view.structure is None), 0.0, 0.0,
-        "structure typed", f"structure of the CAS number ({who.relation})",
-    )  # fmt: skip
-    if who.name_cas is not None:
+    right, wrong = np.asarray(0.0), np.asarray(1.0)
+    if who.relation:
+        clash = who.clashes and view.structure is None
         yield Outcome(
-            "name", "all", (CAS,), float(not who.name_cas), 0.0, 0.0, "CAS number typed",
-            "CAS number of the name",
+            "identity", "all", (SMILES, CAS), wrong if clash else right, right, 0.0,
+            "the structure typed", f"the one of the CAS number ({who.relation})",
         )  # fmt: skip
-    if who.name_structure is not None:
+    for reason in who.why:
+        settled = who.wrong == SMILES and view.structure is not None
         yield Outcome(
-            "name", "all", (SMILES,),
-            float(not who.name_structure and view.structure is None), 0.0, 0.0,
-            "structure typed", "structure of the name",
+            "name", "all", (who.wrong,), right if settled else wrong, right, 0.0,
+            "the structure" if who.wrong == SMILES else "the CAS number", f"that of {reason}",
         )  # fmt: skip
 
 
 def _transcripts(view: View) -> Iterator[Outcome]:
-    """Rows that name an open table as their source, against that table."""
-    prints = view.facts.prints
-    if not prints:
-        return
+    """Rows that name an open table as their source, against that table.
+
+    A row that has neither the temperature nor the value of the table is another entry of it.
+    """
     for key in view.facts.points:
-        unit = QUANTITIES[key].unit
         for point in view.points(key):
-            there = prints.get((key, point.row.source))
+            there = view.facts.prints.get((key, point.row.source))
             if there is None or point.row.correction is not None:
                 continue
+            unit = QUANTITIES[key].unit
             expected = convert(float(there.value), there.unit, unit)
-            shift = ZERO_CELSIUS if unit == "degC" else 0.0
-            yield Outcome(
-                "transcript", "all", (point.name, CAS), np.asarray(view.value(point)) + shift,
-                expected + shift, 0.0, "typed", f"printed in {point.label}",
-                unit="K" if shift else unit,
-            )  # fmt: skip
-            if there.temperature_c and np.isfinite(point.temperature):
+            zero = ZERO_CELSIUS if unit == "degC" else 0.0
+            slack = max(
+                point.row.half_width, convert_difference(there.half_width, there.unit, unit)
+            )
+            timed = bool(there.temperature_c) and np.isfinite(point.temperature)
+            at = float(there.temperature_c) + ZERO_CELSIUS if timed else np.nan
+            if not timed or abs(point.temperature - at) < _SAME_PRINT:
+                yield Outcome(
+                    "transcript", "all", (point.name, CAS), view.value(point) + zero,
+                    np.asarray(expected + zero), slack / max(abs(expected + zero), 1e-12),
+                    "typed", f"printed in {point.label}", unit="K" if zero else unit,
+                )  # fmt: skip
+            if timed and abs(point.value - expected) <= 2 * slack:
                 yield Outcome(
                     "transcript-temperature", "all", (point.name + TEMPERATURE, CAS),
-                    view.temperature(point), float(there.temperature_c) + ZERO_CELSIUS, 0.0,
+                    view.temperature(point), np.asarray(at), 0.0,
                     "typed", f"printed in {point.label}", unit="K",
                 )  # fmt: skip
     for key in view.facts.curves:
         for curve in view.curves(key):
-            there = prints.get((f"{key}~", curve.row.source))
-            if there is None:
-                continue
-            right = tuple(map(float, there.value.split())) == tuple(curve.row.coefficients)
-            yield Outcome(
-                "transcript", "all", (curve.name, CAS), 1.0 if right else 2.0, 1.0, 0.0,
-                "coefficients typed", f"printed in {curve.label}",
-            )  # fmt: skip
+            there = view.facts.prints.get((f"{key}~", curve.row.source))
+            if there is not None:
+                right = tuple(map(float, there.value.split())) == tuple(curve.row.coefficients)
+                yield Outcome(
+                    "transcript", "all", (curve.name, CAS), np.asarray(1.0 if right else 2.0),
+                    np.asarray(1.0), 0.0, "coefficients typed", f"printed in {curve.label}",
+                )  # fmt: skip
 
 
 AGREEMENT: tuple[tuple[Callable[[View], Iterator[Outcome]], frozenset[str]], ...] = (

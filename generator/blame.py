@@ -18,11 +18,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from generator.expectations import outcomes
-from generator.facts import CAS, SMILES, TEMPERATURE, Array, Facts, Point, View
+from generator.facts import TEMPERATURE, Array, Curve, Facts, Point, View
+from generator.identity import CAS, SMILES
 from generator.outcome import CHECKS, Outcome
 from generator.quantities import QUANTITIES
+from generator.reliability import proneness
 from generator.slips import Slip, slips
 from generator.spreads import LIMIT, Spreads
+from generator.units import convert
 
 # Degrees of freedom of the long-tailed cost (Student's t).
 _TAIL = 3.0
@@ -37,6 +40,15 @@ _FREEDOM = 1.0
 _SLIP_BONUS = 1.0
 # Share of a check's cost that counts beyond its cap: a slip of the point is no odd molecule.
 _BEYOND = 0.25
+# Two sources contradict each other and nothing else speaks: one is named where it is this much
+# more prone, or the clash this many times beyond its limit.
+_LEAST_LEAD, _PLAIN = 0.7, 1.8
+# Sources this close agree [spreads].
+_OF_ONE_MIND = 1.0
+SOURCE_CHECKS = frozenset(
+    {"melting-points", "boiling-points", "flash-points", "pressure-curves", "viscosity-curves",
+     "curves", "moments", "sources"}
+)  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,6 +99,11 @@ def point_of(facts: Facts, cell: str) -> Point:
     return next(p for p in facts.points[quantity_of(cell)] if p.name == name)
 
 
+def curve_of(facts: Facts, cell: str) -> Curve:
+    """The curve a cell belongs to."""
+    return next(c for c in facts.curves[quantity_of(cell)] if c.name == cell)
+
+
 def deviations(found: Sequence[Outcome], spreads: Spreads) -> Array:
     """Deviation of each outcome [spreads]."""
     return np.array([float(spreads.deviation(outcome)) for outcome in found])
@@ -98,42 +115,91 @@ def clashes(found: Sequence[Outcome], spreads: Spreads) -> list[Outcome]:
     return [o for o, d in zip(found, z, strict=True) if abs(np.nan_to_num(d)) > LIMIT]
 
 
-def blamed(
-    facts: Facts, spreads: Spreads, now: list[Outcome] | None = None, most: int = 4
-) -> tuple[Blame, ...]:
-    """The cells most likely wrong in one substance, worst first; none where nothing clashes.
-
-    ``now``: the outcomes of the facts as typed, where they are at hand.
-    """
+def blamed(facts: Facts, spreads: Spreads, most: int = 4) -> tuple[Blame, ...]:
+    """The cells most likely wrong in one substance, worst first; none where nothing clashes."""
     found: list[Blame] = []
-    dropped: set[str] = set()
+    dropped: frozenset[str] = frozenset()
     while len(found) < most:
-        view = View(facts, dropped=frozenset(dropped))
-        if now is None:
-            now = outcomes(view)
-        if SMILES in dropped or CAS in dropped:
-            now = [o for o in now if not dropped.intersection(o.members)]
+        view = View(facts, dropped=dropped)
+        now = [o for o in outcomes(view) if dropped.isdisjoint(o.members)]
         failed = clashes(now, spreads)
-        blame = _worst(view, now, failed, spreads) if failed else None
+        if not failed:
+            break
+        case = _Case(view, now, failed, spreads)
+        blame = _worst(case)
         if blame is None:
             break
-        found.append(blame)
-        dropped.add(blame.cell.removesuffix(TEMPERATURE))
-        now = None
+        if _is_decided(blame, facts, spreads):
+            found.append(blame)
+            dropped |= {blame.cell.removesuffix(TEMPERATURE), *case.linked(blame.cell)}
+        else:
+            # What cannot be decided is left alone as a whole.
+            key = quantity_of(blame.cell)
+            dropped |= {point.name for point in view.points(key)}
+            dropped |= {curve.name for curve in view.curves(key)}
     return tuple(found)
 
 
-def _worst(view: View, now: list[Outcome], failed: list[Outcome], spreads: Spreads) -> Blame | None:
-    before = float(_total(_sums(now, spreads)))
-    candidates = [c for c in view.facts.names() if any(c in o.members for o in failed)]
-    trials = [_try(view, now, cell, spreads) for cell in candidates]
-    trials.sort(key=lambda trial: trial.cost)
+def _is_decided(blame: Blame, facts: Facts, spreads: Spreads) -> bool:
+    """Whether the sources that contradict the cell clearly outnumber those that agree with it."""
+    kinds = frozenset(outcome.check for outcome in blame.failed)
+    if not kinds <= SOURCE_CHECKS:
+        return True
+    z = deviations(blame.passed, spreads)
+    close = [abs(float(d)) < _OF_ONE_MIND for d in z]
+    mates = sum(o.check in kinds and near for o, near in zip(blame.passed, close, strict=True))
+    others = len(blame.failed)
+    if mates:
+        return others >= 2 * (mates + 1)
+    return others > 1 or blame.lead >= _LEAST_LEAD or blame.strength >= _PLAIN
+
+
+class _Case:
+    """What is held against the cells of one view."""
+
+    def __init__(
+        self, view: View, now: Sequence[Outcome], failed: Sequence[Outcome], spreads: Spreads
+    ) -> None:
+        self.view, self.spreads, self.failed = view, spreads, failed
+        # What merely repeats a cell speaks only where it does not.
+        self.now = [o for o in now if not CHECKS[o.check].echo or o in failed]
+        self.echoes = {(o.check, o.members) for o in self.now if CHECKS[o.check].echo}
+        self._silent = {frozenset(o.members) for o in now if CHECKS[o.check].echo} - {
+            frozenset(members) for _, members in self.echoes
+        }
+
+    def linked(self, cell: str) -> frozenset[str]:
+        """The curves that repeat a point, and stand or fall with it."""
+        if "#" not in cell or cell.endswith(TEMPERATURE):
+            return frozenset()
+        key = quantity_of(cell)
+        return frozenset(
+            curve.name
+            for curve in self.view.curves(key)
+            if any({cell, curve.name} <= members for members in self._silent)
+        )
+
+    def seen(self, view: View, reading: str = "") -> list[Outcome]:
+        """The comparisons of another view, without what merely repeats."""
+        return [
+            o
+            for o in outcomes(view, reading)
+            if view.dropped.isdisjoint(o.members)
+            and (not CHECKS[o.check].echo or (o.check, o.members) in self.echoes)
+        ]
+
+
+def _worst(case: _Case) -> Blame | None:
+    before = float(_total(_sums(case.now, case.spreads)))
+    candidates = [c for c in case.view.facts.names() if any(c in o.members for o in case.failed)]
+    trials = sorted((_try(case, cell) for cell in candidates), key=lambda trial: trial.cost)
     best = trials[0]
     gain = before - best.cost
     if gain < LEAST_GAIN:
         return None
-    mine = [outcome for outcome in failed if best.cell in outcome.members]
-    z = np.abs(deviations(mine, spreads))
+    cells = {best.cell, *case.linked(best.cell)}
+    mine = [outcome for outcome in case.failed if cells.intersection(outcome.members)]
+    z = np.abs(deviations(mine, case.spreads))
     order = np.argsort(-z, kind="stable")
     own = best.cell.removesuffix(TEMPERATURE)
     rival = next((t for t in trials[1:] if t.cell.removesuffix(TEMPERATURE) != own), None)
@@ -143,7 +209,7 @@ def _worst(view: View, now: list[Outcome], failed: list[Outcome], spreads: Sprea
         gain=gain,
         strength=float(z.max()) / LIMIT,
         failed=tuple(mine[i] for i in order),
-        passed=tuple(o for o in now if best.cell in o.members and o not in mine),
+        passed=tuple(o for o in case.now if best.cell in o.members and o not in mine),
         slip=best.slip,
         rival=rival.cell if rival else "",
         lead=rival.cost - best.cost if rival else math.inf,
@@ -167,24 +233,26 @@ def _total(sums: dict[str, Array]) -> Array:
     return total
 
 
-def _try(view: View, now: list[Outcome], cell: str, spreads: Spreads) -> _Trial:
+def _try(case: _Case, cell: str) -> _Trial:
     """The best that can be made of a substance by changing one cell."""
-    rest = [o for o in now if cell not in o.members]
+    view, spreads = case.view, case.spreads
+    cells = {cell, *case.linked(cell)}
+    rest = [o for o in case.now if cells.isdisjoint(o.members)]
     reluctance = _RELUCTANCE[column_of(cell)] + _FREEDOM
     if cell == SMILES:
-        return _try_structure(view, rest, now, spreads, reluctance)
+        return _try_structure(case, rest, reluctance)
     if cell == CAS or "~" in cell:
-        left_out = _LEFT_OUT * (len(now) - len(rest)) if "~" in cell else 0.0
+        left_out = _LEFT_OUT * (len(case.now) - len(rest)) if "~" in cell else 0.0
         return _Trial(cell, math.nan, float(_total(_sums(rest, spreads))) + reluctance + left_out)
     point = point_of(view.facts, cell)
     temperature = cell.endswith(TEMPERATURE)
-    suggestions: list[Slip] = []
     if not temperature:
-        row = point.row
-        suggestions = list(slips(row.printed, row.printed_unit, row.quantity))
+        reluctance -= proneness(point.row.quantity, point.row.source)
+    suggestions = [] if temperature else _suggestions(view.facts, point)
     values = np.array([*_grid(point, temperature), *(s.value for s in suggestions)])
-    tried = View(view.facts, {cell: values}, view.dropped)
-    touched = [o for o in outcomes(tried, point.row.quantity) if cell in o.members]
+    changed = {cell: values, **dict.fromkeys(cells - {cell}, values / (point.value or 1.0))}
+    tried = View(view.facts, changed, view.dropped)
+    touched = [o for o in case.seen(tried, point.row.quantity) if not cells.isdisjoint(o.members)]
     total = np.broadcast_to(_total(_sums([*rest, *touched], spreads)), values.shape) + reluctance
     quantity = QUANTITIES[point.row.quantity]
     if not temperature:
@@ -201,17 +269,29 @@ def _try(view: View, now: list[Outcome], cell: str, spreads: Spreads) -> _Trial:
     return _Trial(cell, slip.value if slip else float(values[best]), lowest, slip)
 
 
-def _try_structure(
-    view: View, rest: list[Outcome], now: list[Outcome], spreads: Spreads, reluctance: float
-) -> _Trial:
-    who, listed = view.facts.identity, view.facts.listed
+def _suggestions(facts: Facts, point: Point) -> list[Slip]:
+    """What the open table prints, and what the usual slips would have made of the value."""
+    row = point.row
+    found = list(slips(row.printed, row.printed_unit, row.quantity))
+    there = facts.prints.get((row.quantity, row.source))
+    if there is not None and there.value != row.printed:
+        value = convert(float(there.value), there.unit, row.unit)
+        words = f"{there.value} {there.unit}".removesuffix(" 1")
+        found.insert(0, Slip(value, f"{row.source} prints {words}"))
+    return found
+
+
+def _try_structure(case: _Case, rest: list[Outcome], reluctance: float) -> _Trial:
+    who, listed = case.view.facts.identity, case.view.facts.listed
     if who.relation == "same":
         return _Trial(SMILES, math.nan, math.inf)
     if listed is not None:
-        seen = outcomes(View(view.facts, dropped=view.dropped, structure=listed))
-        return _Trial(SMILES, math.nan, float(_total(_sums(seen, spreads))) + reluctance)
-    left_out = _NO_ALTERNATIVE + _LEFT_OUT * (len(now) - len(rest))
-    return _Trial(SMILES, math.nan, float(_total(_sums(rest, spreads))) + reluctance + left_out)
+        seen = case.seen(View(case.view.facts, dropped=case.view.dropped, structure=listed))
+        return _Trial(SMILES, math.nan, float(_total(_sums(seen, case.spreads))) + reluctance)
+    left_out = _NO_ALTERNATIVE + _LEFT_OUT * (len(case.now) - len(rest))
+    return _Trial(
+        SMILES, math.nan, float(_total(_sums(rest, case.spreads))) + reluctance + left_out
+    )
 
 
 def _settled(touched: Sequence[Outcome], spreads: Spreads, shape: tuple[int, ...]) -> Array:

@@ -39,7 +39,7 @@ def inspect(
     if any(problem.severity == ERROR for problem in structural):
         raise DatasetError(structural)
     handbook = compute(dataset_from(tables), settings, cache)
-    return handbook, (*structural, *evidence.check_handbook(handbook))
+    return handbook, (*structural, *evidence.check_handbook(handbook, cache))
 
 
 def review(

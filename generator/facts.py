@@ -17,8 +17,8 @@ from numpy.typing import ArrayLike, NDArray
 
 from generator import thermal
 from generator.dataset import Correlation, Dataset, Measurement, Source
-from generator.identity import Identity, Print
-from generator.increments import foretold
+from generator.identity import CAS, SMILES, Identity, Print
+from generator.increments import foretold, is_rare
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, additive_refraction
 from generator.units import ZERO_CELSIUS, convert
@@ -28,11 +28,7 @@ Array = NDArray[np.float64]
 # Usual thermal expansivity of a liquid at room temperature [1/K], where no density curve says more.
 USUAL_EXPANSIVITY = 0.0011
 USUAL_EXPANSIVITY_ASSOCIATED = 0.0008
-# dn/dT of organic liquids [1/K]; they differ by about a fifth of it.
-INDEX_SLOPE = -4.5e-4
 TEMPERATURE = "@"
-SMILES = "smiles"
-CAS = "cas"
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,10 +54,14 @@ class Point:
 
 @dataclass(frozen=True, slots=True)
 class Curve:
-    """One temperature curve; ``name`` is the cell of its coefficients."""
+    """One temperature curve; ``name`` is the cell of its coefficients.
+
+    ``calculated``: worked out from a point of the same quantity, which it only repeats.
+    """
 
     name: str
     row: Correlation
+    calculated: bool = False
 
     @property
     def label(self) -> str:
@@ -77,7 +77,7 @@ class Curve:
         raw = thermal.evaluate(self.row.form, self.row.coefficients, temperature)
         unit = QUANTITIES[self.row.quantity].unit
         scale = convert(1.0, self.row.unit, unit) - convert(0.0, self.row.unit, unit)
-        return np.asarray(raw * scale)
+        return np.asarray(raw * scale, dtype=np.float64)
 
     def relative_slope(self, temperature: float) -> float:
         """d ln y/dT [1/K]."""
@@ -88,11 +88,16 @@ class Curve:
 
 @dataclass(frozen=True, slots=True)
 class Structure:
-    """What the checks need of a molecule."""
+    """What the checks need of a molecule.
+
+    ``refraction`` [cm3/mol] and ``foretold`` follow from it alone; ``group`` is the family, or
+    ``rare`` where too few liquids taught what it is made of.
+    """
 
     molecule: Molecule
     refraction: float
     foretold: Mapping[str, float]
+    group: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -100,15 +105,17 @@ class Facts:
     """Everything the tables say about one substance that a cross-check looks at.
 
     ``series`` holds, for each model of the structure, how much more (natural logarithm) than
-    foretold its neighbours in the homologous series have; ``listed`` is the structure of the
-    CAS number where another one was typed; ``prints`` what the open tables print under it.
+    foretold its neighbours in the homologous series have, and their scatter; ``estimate`` the
+    dipole moment [D] estimated from the structure, and its uncertainty; ``listed`` the structure
+    of the CAS number where another one was typed; ``prints`` what the open tables print under it.
     """
 
     slug: str
     structure: Structure
     points: Mapping[str, tuple[Point, ...]]
     curves: Mapping[str, tuple[Curve, ...]]
-    series: Mapping[str, float] = field(default_factory=dict)
+    series: Mapping[str, tuple[float, float]] = field(default_factory=dict)
+    estimate: tuple[float, float] | None = None
     identity: Identity = field(default_factory=Identity)
     prints: Mapping[tuple[str, str], Print] = field(default_factory=dict)
     listed: Structure | None = None
@@ -128,7 +135,11 @@ class Facts:
 
 def structure_of(molecule: Molecule) -> Structure:
     """The structure's own numbers."""
-    return Structure(molecule, additive_refraction(molecule.smiles), foretold(molecule))
+    numbers = foretold(molecule)
+    refraction = numbers.get("refraction") or additive_refraction(molecule.smiles)
+    return Structure(
+        molecule, refraction, numbers, "rare" if is_rare(molecule) else molecule.family
+    )
 
 
 def facts_of(dataset: Dataset, slug: str, structure: Structure) -> Facts:
@@ -145,15 +156,21 @@ def facts_of(dataset: Dataset, slug: str, structure: Structure) -> Facts:
             )
         fitted = dataset.correlations_of(slug, key)
         if fitted:
-            curves[key] = tuple(Curve(f"{key}~{i}", row) for i, row in enumerate(fitted))
+            curves[key] = tuple(
+                Curve(f"{key}~{i}", row, _is_calculated(dataset.sources.get(row.source)))
+                for i, row in enumerate(fitted)
+            )
     return Facts(slug, structure, points, curves)
 
 
 def _point(key: str, index: int, row: Measurement, source: Source | None) -> Point:
-    calculated = source is not None and source.kind == "calculated"
     temperature = math.nan if row.temperature is None else row.temperature
     spread = row.half_width if row.uncertainty is None else row.uncertainty
-    return Point(f"{key}#{index}", row.value, temperature, spread, row, calculated)
+    return Point(f"{key}#{index}", row.value, temperature, spread, row, _is_calculated(source))
+
+
+def _is_calculated(source: Source | None) -> bool:
+    return source is not None and source.kind == "calculated"
 
 
 @dataclass(frozen=True, slots=True)
@@ -175,25 +192,38 @@ class View:
         return [p for p in self.facts.points.get(key, ()) if p.name not in self.dropped]
 
     def curves(self, key: str) -> Sequence[Curve]:
-        """The curves of a quantity."""
-        return [c for c in self.facts.curves.get(key, ()) if c.name not in self.dropped]
+        """The curves of a quantity; one worked out from a point goes with the point."""
+        gone = any(p.name in self.dropped for p in self.facts.points.get(key, ()))
+        return [
+            c
+            for c in self.facts.curves.get(key, ())
+            if c.name not in self.dropped and not (c.calculated and gone)
+        ]
+
+    def sources(self, key: str) -> Sequence[Point | Curve]:
+        """The points and curves of a quantity that say something of their own."""
+        points = self.points(key)
+        return [*points, *(c for c in self.curves(key) if not (c.calculated and points))]
 
     def middle(self, key: str) -> float:
         """Median of the values of a quantity as typed, NaN where there is none."""
         values = [p.value for p in self.points(key)]
         return median(values) if values else math.nan
 
-    def value(self, point: Point) -> ArrayLike:
+    def value(self, point: Point) -> Array:
         """Value of a point [the quantity's unit]."""
-        return self.changed.get(point.name, point.value)
+        return np.asarray(self.changed.get(point.name, point.value), dtype=np.float64)
 
-    def temperature(self, point: Point) -> ArrayLike:
+    def temperature(self, point: Point) -> Array:
         """Temperature of a point [K]."""
-        return self.changed.get(point.name + TEMPERATURE, point.temperature)
+        return np.asarray(
+            self.changed.get(point.name + TEMPERATURE, point.temperature), dtype=np.float64
+        )
 
     def curve(self, curve: Curve, temperature: ArrayLike) -> Array:
-        """A curve at a temperature [K], in the quantity's unit."""
-        return curve.at(temperature) * self.changed.get(curve.name, np.float64(1.0))
+        """A curve at a temperature [K], in the quantity's unit; scaled where it is doubted."""
+        scaled: Array = curve.at(temperature) * self.changed.get(curve.name, np.float64(1.0))
+        return scaled
 
     def expansivity(self, temperature: float) -> float:
         """Thermal expansivity [1/K] from a density curve where there is one."""
@@ -205,22 +235,25 @@ class View:
         associated = self.known.molecule.is_associated
         return USUAL_EXPANSIVITY_ASSOCIATED if associated else USUAL_EXPANSIVITY
 
-    def density(self, source: Point | Curve, temperature: ArrayLike) -> ArrayLike:
+    def density(self, source: Point | Curve, temperature: ArrayLike) -> Array:
         """Density [g/cm3] after one source at a temperature [K]."""
         if isinstance(source, Curve):
             return self.curve(source, temperature)
-        own = self.temperature(source)
-        middle = float(np.clip(np.nanmedian(np.atleast_1d(temperature)), 150.0, 500.0))
-        alpha = self.expansivity(middle)
-        return np.asarray(self.value(source)) * np.exp(
-            -alpha * (np.asarray(temperature) - np.asarray(own))
-        )
+        at = np.asarray(temperature, dtype=np.float64)
+        alpha = self.expansivity(float(np.clip(np.nanmedian(np.atleast_1d(at)), 150.0, 500.0)))
+        density: Array = self.value(source) * np.exp(-alpha * (at - self.temperature(source)))
+        return density
 
     def index(self, point: Point, temperature: ArrayLike) -> Array:
         """Refractive index [1] of a point brought to a temperature [K]."""
-        return np.asarray(self.value(point)) + INDEX_SLOPE * (
-            np.asarray(temperature) - np.asarray(self.temperature(point))
-        )
+        # At constant refraction (n² − 1)/(n² + 2) goes with the density.
+        away = np.asarray(temperature, dtype=np.float64) - self.temperature(point)
+        square = self.value(point) ** 2
+        with np.errstate(all="ignore"):
+            share = (square - 1) / (square + 2)
+            share = share * np.exp(-self.expansivity(point.temperature) * away)
+            index: Array = np.sqrt((1 + 2 * share) / (1 - share))
+        return index
 
 
 def celsius(kelvin: float) -> float:

@@ -1,9 +1,12 @@
-"""What a structure alone lets expect: molar volume, boiling point, and moment in the liquid.
+"""What a structure alone lets expect: refraction, molar volume, boiling point, liquid moment.
 
-Each is a sum over the parts of the molecule, their share of it, and its family. The parts are
-counted in the canonical SMILES text and the formula, so that no molecule needs to be built. The
-contributions were fitted once to the open liquids (tests/audit/learn_spreads.py makes them again)
-and are shipped in ``reference/increments.csv``.
+Each is a sum over the parts of the molecule, their share of it, and its family: atom types by
+their surroundings (the types of Wildman and Crippen, J. Chem. Inf. Comput. Sci. 39 (1999) 868),
+rings, conjugated bonds, branches, hydrogen-bond donors. The contributions were fitted once to the
+open liquids (tests/audit/learn_spreads.py makes them again) and are shipped in
+``reference/increments.csv``.
+
+rdkit is imported inside the functions: loading this module costs nothing.
 """
 
 from __future__ import annotations
@@ -17,52 +20,85 @@ from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from generator.conformers import parse
+from generator.structures import additive_refraction
+
 if TYPE_CHECKING:
+    from rdkit.Chem import Mol
+
     from generator.structures import Molecule
 
 _TABLE = Path(__file__).parent / "reference" / "increments.csv"
-_TOKEN = re.compile(r"\[[^\]]+\]|Cl|Br|[BCNOPSFI]|[bcnops]|[=#]|%\d\d|\d")
-_ELEMENT = re.compile(r"([A-Z][a-z]?)(\d*)")
-_AROMATIC = {"b", "c", "n", "o", "p", "s", "[nH]"}
-_GROUPS = {
-    "carbonyl": re.compile(r"C\(=O\)|O=C"),
-    "hydroxyl": re.compile(r"O(?![A-Za-z(\[=#\d])|^O(?=[A-Z\[])"),
-    "nitro": re.compile(r"\[N\+\]\(=O\)|O=\[N\+\]"),
-    "sulfinyl": re.compile(r"S\(=O\)|O=S"),
-}
-# The shipped models: what each foretells, all as natural logarithms.
-MODELS = ("molar_volume", "boiling_point", "liquid_moment")
+# The shipped models: what each foretells. The refraction is foretold as a correction of the
+# additive one of Wildman and Crippen.
+MODELS = ("refraction", "molar_volume", "boiling_point", "liquid_moment")
+# A part that fewer open liquids have is rare: its contribution is hardly known.
+FEWEST = 5
+# ln of the most atoms (without hydrogen) that the contributions were taught by many liquids with.
+LARGEST = math.log(24)
+_ORTHO = "[!#1;!R]~c~c~[!#1;!R]"
 
 
+@lru_cache(maxsize=4096)
 def parts(molecule: Molecule) -> Mapping[str, float]:
     """How often each part occurs, its share by atom, the family, and the size of the molecule."""
-    counts: Counter[str] = Counter()
-    heavy = 0
-    for element, number in _ELEMENT.findall(molecule.formula):
-        counts[element] += int(number or 1)
-        heavy += int(number or 1) if element not in ("H", "D") else 0
-    tokens = _TOKEN.findall(molecule.smiles)
-    # Each ring closure is written twice.
-    counts["ring"] = sum(token.isdigit() or token[0] == "%" for token in tokens) // 2
-    counts["aromatic atom"] = sum(token in _AROMATIC for token in tokens)
-    counts["double bond"] = tokens.count("=")
-    counts["triple bond"] = tokens.count("#")
-    counts["branch"] = molecule.smiles.count("(")
-    counts["associated"] = int(molecule.is_associated)
-    for name, pattern in _GROUPS.items():
-        counts[name] = len(pattern.findall(molecule.smiles))
-    size = max(1, heavy)
+    from rdkit import Chem, rdBase
+    from rdkit.Chem import rdMolDescriptors
+
+    mol = parse(molecule.smiles)
+    with rdBase.BlockLogs():
+        whole = Chem.AddHs(mol)
+    types, labels = [0] * whole.GetNumAtoms(), [""] * whole.GetNumAtoms()
+    rdMolDescriptors._CalcCrippenContribs(whole, False, types, labels)
+    counts = Counter(labels)
+    counts.update(f"ring of {len(ring)}" for ring in mol.GetRingInfo().AtomRings())
+    counts.update(_conjugated(mol))
+    for atom in mol.GetAtoms():
+        if atom.GetAtomicNum() == 6 and atom.GetDegree() > 2:
+            if atom.GetDegree() == 4:
+                counts["branched twice"] += 1
+            elif not atom.IsInRing():
+                counts["branched once"] += 1
+        if atom.GetAtomicNum() in (7, 8):
+            counts[f"{atom.GetSymbol()}H"] += atom.GetTotalNumHs()
+    counts["ortho pair"] = len(mol.GetSubstructMatches(_pattern(_ORTHO)))
+    heavy = max(1, mol.GetNumHeavyAtoms())
     found = {name: float(count) for name, count in counts.items() if count}
-    shares = {f"{name} by atom": count / size for name, count in found.items()}
     return {
         **found,
-        **shares,
+        **{f"{name} by atom": count / heavy for name, count in found.items()},
         f"family {molecule.family}": 1.0,
-        f"family {molecule.family} by atom": 1.0 / size,
-        "ln atoms": math.log(size),
+        f"family {molecule.family} by atom": 1.0 / heavy,
+        "ln atoms": math.log(heavy),
         "ln molar mass": math.log(molecule.molar_mass),
         "molecule": 1.0,
     }
+
+
+def _conjugated(mol: Mol) -> list[str]:
+    """Single bonds between unsaturated neighbours, by the elements they join."""
+    return [
+        "conjugated " + "-".join(sorted(map(_letter, (bond.GetBeginAtom(), bond.GetEndAtom()))))
+        for bond in mol.GetBonds()
+        if bond.GetIsConjugated() and bond.GetBondTypeAsDouble() == 1.0
+    ]
+
+
+def _letter(atom: object) -> str:
+    symbol = str(atom.GetSymbol())  # type: ignore[attr-defined]
+    return symbol.lower() if atom.GetIsAromatic() else symbol  # type: ignore[attr-defined]
+
+
+@lru_cache(maxsize=8)
+def _pattern(smarts: str) -> Mol:
+    from rdkit import Chem
+
+    return Chem.MolFromSmarts(smarts)
+
+
+def turns(molecule: Molecule) -> bool:
+    """Whether a bond between two unsaturated groups turns, so that no one symmetry holds."""
+    return any(name.startswith("conjugated C") for name in parts(molecule))
 
 
 def size(molecule: Molecule) -> float:
@@ -77,27 +113,42 @@ def series_key(molecule: Molecule) -> str:
 
 
 @lru_cache(maxsize=1)
-def _contributions() -> Mapping[str, tuple[float, ...]]:
+def _contributions() -> Mapping[str, tuple[int, tuple[float, ...]]]:
+    """Liquids that taught a part, and its contribution to each model."""
     with _TABLE.open(encoding="utf-8", newline="") as file:
-        rows = list(csv.DictReader(file))
-    return {row["part"]: tuple(float(row[model]) for model in MODELS) for row in rows}
+        return {
+            row["part"]: (int(row["liquids"]), tuple(float(row[model]) for model in MODELS))
+            for row in csv.DictReader(file)
+        }
+
+
+def is_organic(molecule: Molecule) -> bool:
+    """Whether there is carbon in it."""
+    return "C" in re.findall(r"[A-Z][a-z]?", molecule.formula)
+
+
+def is_rare(molecule: Molecule) -> bool:
+    """Whether too few open liquids are like the molecule to foretell much about it."""
+    known, found = _contributions(), parts(molecule)
+    rare = any(name not in known or known[name][0] < FEWEST for name in found)
+    return rare or found["ln atoms"] > LARGEST
 
 
 @lru_cache(maxsize=4096)
 def foretold(molecule: Molecule) -> Mapping[str, float]:
-    """Molar volume at 20 °C [cm3/mol], boiling point [K] and Onsager moment of the liquid [D].
+    """What the structure lets expect, by model.
 
-    Empty for a molecule without carbon or with an element the open liquids did not teach. How
-    far off each may be stands in ``reference/spreads.csv``.
+    Molar refraction [cm3/mol], molar volume at 20 °C [cm3/mol], boiling point [K] and Onsager
+    moment of the liquid [D]. Empty for a molecule without carbon. How far off each may be stands
+    in ``reference/spreads.csv``.
     """
     known = _contributions()
-    counts = parts(molecule)
-    if "C" not in counts or any(
-        name not in known for name in counts if not name.startswith("family")
-    ):
+    if not is_organic(molecule):
         return {}
     sums = [0.0] * len(MODELS)
-    for name, count in counts.items():
-        for i, contribution in enumerate(known.get(name, ())):
+    for name, count in parts(molecule).items():
+        for i, contribution in enumerate(known[name][1] if name in known else ()):
             sums[i] += count * contribution
-    return {model: math.exp(total) for model, total in zip(MODELS, sums, strict=True)}
+    found = {model: math.exp(total) for model, total in zip(MODELS, sums, strict=True)}
+    found["refraction"] *= additive_refraction(molecule.smiles)
+    return found

@@ -148,14 +148,8 @@ def _identity(cas: str) -> _Identity | None:
 
 
 def _from_large(cas: str) -> _Identity | None:
-    data = _large_bytes()
-    # Searching the bytes for one number takes a tenth of the time of the index; once somebody
-    # has asked for many and the index is there, it is used.
-    if _large_index.cache_info().currsize:
-        position = _large_index().get(cas, -1)
-    else:
-        position = _column_position(data, cas.encode(), 1)
-    return _parsed(_line_around(data, position)) if position >= 0 else None
+    position = _large_index().get(cas, -1)
+    return _parsed(_line_around(_large_bytes(), position)) if position >= 0 else None
 
 
 def _column_position(data: bytes, wanted: bytes, column: int) -> int:

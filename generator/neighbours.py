@@ -1,7 +1,8 @@
 """Homologous series: how much more than foretold the neighbours of a substance have.
 
 The structure's own forecast leaves a remainder that members of one series share. The median
-remainder of the nearest members corrects it, so that a step out of the series stands out.
+remainder of the nearest members corrects it, so that a step out of the series stands out; how
+far the members lie apart says how much the correction is worth.
 """
 
 from __future__ import annotations
@@ -19,15 +20,22 @@ from generator.units import ZERO_CELSIUS
 
 # Neighbours looked at, the fewest that count, and how far in ln(size) they may lie.
 _MOST, _FEWEST, _REACH = 7, 3, 0.6
+# Members further apart than the forecast is good for say nothing (ln units).
+_USEFUL = {"refraction": 0.006, "molar_volume": 0.015, "boiling_point": 0.02, "liquid_moment": 0.2}
+_LEAST = 0.002
 
 
-def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, float]]:
-    """For each substance and model: the median of ln(measured/foretold) of its neighbours."""
+def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, tuple[float, float]]]:
+    """For each substance and model: what its neighbours have beyond the forecast.
+
+    The median of their ln(measured/foretold), and the standard error of that median; only where
+    it is worth more than no correction at all.
+    """
     groups: dict[str, list[tuple[float, Facts, Mapping[str, float]]]] = defaultdict(list)
     for facts in everything:
         key = series_key(facts.structure.molecule)
         groups[key].append((size(facts.structure.molecule), facts, remainders(facts)))
-    shifts: dict[str, dict[str, float]] = {facts.slug: {} for facts in everything}
+    shifts: dict[str, dict[str, tuple[float, float]]] = {facts.slug: {} for facts in everything}
     for members in groups.values():
         for own_size, facts, _ in members:
             near = sorted(
@@ -36,9 +44,14 @@ def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, float]]:
                 if other is not facts and abs(other_size - own_size) <= _REACH
             )
             for model in MODELS:
-                values = [remainder[model] for *_, remainder in near if model in remainder]
-                if len(values) >= _FEWEST:
-                    shifts[facts.slug][model] = median(values[:_MOST])
+                values = [r[model] for *_, r in near if model in r][:_MOST]
+                if len(values) < _FEWEST:
+                    continue
+                middle = median(values)
+                apart = 1.4826 * median(abs(value - middle) for value in values)
+                if apart < _USEFUL[model]:
+                    error = max(apart, _LEAST) * 1.25 / math.sqrt(len(values))
+                    shifts[facts.slug][model] = middle, error
     return shifts
 
 
@@ -53,21 +66,26 @@ def remainders(facts: Facts) -> Mapping[str, float]:
 
 
 def observed(facts: Facts) -> Mapping[str, float]:
-    """What the models foretell, as the tables have it: V at 20 °C, T_b [K], Onsager moment [D]."""
-    view, found = View(facts), {}
+    """What the models foretell, as the tables have it: R and V at 20 °C, T_b [K], moment [D]."""
+    view, found = View(facts), dict[str, float]()
     boils = view.middle(TB)
     if math.isfinite(boils):
         found["boiling_point"] = boils + ZERO_CELSIUS
     mass = facts.structure.molecule.molar_mass
-    volumes = [
-        mass / float(view.density(source, ROOM))
-        for source in (*view.points("density"), *view.curves("density"))
-        if source.holds(ROOM, 40.0)
-    ]
+    densities = [d for d in view.sources("density") if d.holds(ROOM, 40.0)]
+    volumes = [mass / float(view.density(source, ROOM)) for source in densities]
     volumes = [v for v in volumes if math.isfinite(v) and v > 0]
     if not volumes:
         return found
     volume = found["molar_volume"] = median(volumes)
+    refractions = [
+        float(polarity.molar_refraction(n.value, mass / float(view.density(d, n.temperature))))
+        for n in view.points("refractive_index")
+        for d in densities
+        if n.holds(ROOM, 40.0)
+    ]
+    if refractions:
+        found["refraction"] = median(refractions)
     n = polarity.refractive_index_from_refraction(facts.structure.refraction, volume)
     moments = [
         float(polarity.onsager_dipole_moment(p.value, n, volume, p.temperature))

@@ -1,8 +1,10 @@
 """How far apart the two sides of a cross-check usually lie: learnt from the data themselves.
 
-The robust spread (median, 1.4826 MAD) of each check over the handbook at hand, never below what
-was learnt once from the open liquids and is shipped in ``reference/spreads.csv``. A handbook with
-few substances leans on the shipped numbers, a large one on its own.
+The spread of each check over the handbook at hand is robust: half of all residuals, and four
+fifths of them, lie where a normal distribution of that spread would have them, whichever is
+wider; wrong entries are rarer than that and do not widen it. It never falls below what was
+learnt once from the open liquids and is shipped in ``reference/spreads.csv``. A handbook with few
+substances leans on the shipped numbers, a large one on its own.
 """
 
 from __future__ import annotations
@@ -17,6 +19,7 @@ from pathlib import Path
 
 import numpy as np
 
+from generator.facts import Array
 from generator.outcome import CHECKS, Outcome
 
 _TABLE = Path(__file__).parent / "reference" / "spreads.csv"
@@ -28,6 +31,8 @@ PRIOR_COUNT = 60
 # A group with fewer comparisons than this has no spread of its own.
 FEWEST = 12
 ALL = ""
+# What makes the half and the four fifths of |residual| a standard deviation (normal distribution).
+_HALF, _FOUR_FIFTHS = 1.4826, 1 / 1.2816
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,12 +63,13 @@ class Threshold:
 
 
 def robust(residuals: Iterable[float]) -> Spread:
-    """Median and 1.4826 × median absolute deviation [as residuals]."""
+    """Median, and the spread that half and four fifths of all ask for [as residuals]."""
     values = np.array([r for r in residuals if math.isfinite(r)])
     if not values.size:
         return Spread(0.0, 0.0, 0)
     middle = float(np.median(values))
-    return Spread(middle, float(1.4826 * np.median(np.abs(values - middle))), values.size)
+    half, most = np.quantile(np.abs(values - middle), [0.5, 0.8])
+    return Spread(middle, float(max(_HALF * half, _FOUR_FIFTHS * most)), values.size)
 
 
 @lru_cache(maxsize=1)
@@ -85,18 +91,23 @@ class Spreads:
     table: Mapping[tuple[str, str], Spread]
 
     def of(self, check: str, group: str) -> Spread:
-        """Spread of a group, or of the whole check where the group has too few comparisons."""
-        found = self.table.get((check, group)) or self.table.get((check, ALL))
+        """Spread of a group; where it has too few comparisons, of rare ones or the whole check."""
+        groups = (group, "rare", ALL)
+        found = next((s for g in groups if (s := self.table.get((check, g))) is not None), None)
         if found is None:
             return Spread(0.0, math.inf, 0)
         return Spread(found.median, max(found.spread, CHECKS[check].resolution), found.count)
 
-    def deviation(self, outcome: Outcome) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
+    def scale(self, outcome: Outcome) -> float:
+        """What counts as one spread for an outcome, its own uncertainty included."""
+        usual = self.of(outcome.check, outcome.group)
+        return math.hypot(usual.spread * outcome.weight, outcome.own)
+
+    def deviation(self, outcome: Outcome) -> Array:
         """Residual in spreads; NaN where there is nothing to compare."""
         usual = self.of(outcome.check, outcome.group)
-        scale = math.hypot(usual.spread * outcome.weight, outcome.own)
         centre = usual.median * (outcome.weight if CHECKS[outcome.check].relative else 1.0)
-        return np.asarray((outcome.residual - centre) / scale)
+        return np.asarray((outcome.residual - centre) / self.scale(outcome))
 
 
 def learn(outcomes: Iterable[Outcome]) -> dict[tuple[str, str], Spread]:
@@ -106,11 +117,22 @@ def learn(outcomes: Iterable[Outcome]) -> dict[tuple[str, str], Spread]:
         residual = float(outcome.residual) / outcome.weight
         residuals[outcome.check, outcome.group].append(residual)
         residuals[outcome.check, ALL].append(residual)
-    return {
+    found = {
         key: robust(values)
         for key, values in sorted(residuals.items())
         if len(values) >= FEWEST or key[1] == ALL
     }
+    return {
+        (check, group): usual if group == ALL else _leaning(usual, found, check)
+        for (check, group), usual in found.items()
+    }
+
+
+def _leaning(usual: Spread, found: Mapping[tuple[str, str], Spread], check: str) -> Spread:
+    """The spread of a group; a small one leans on the other groups of its check."""
+    others = float(np.median([s.spread for (c, g), s in found.items() if c == check and g != ALL]))
+    share = usual.count / (usual.count + FEWEST)
+    return Spread(usual.median, share * usual.spread + (1 - share) * others, usual.count)
 
 
 def spreads_for(outcomes: Iterable[Outcome]) -> Spreads:
