@@ -55,12 +55,13 @@ def produce(
     names what is not there, or labels and paper do not go together.
     """
     layout = labels.layout_of(order.label_sheet, order.paper)
+    kept = Cache(cache)
     say("Reading and checking the tables")
-    handbook, findings = build.review(data, settings)
+    handbook, findings = build.review(data, settings, kept)
     book = catalogue(handbook, findings)
     slugs = _wanted(book, order)
     say("Drawing")
-    drawn = figures.figures_of(handbook, Cache(cache))
+    drawn = figures.figures_of(handbook, kept)
     drawn.prepare(slugs, curves=False)
     say(f"Preparing {len(slugs)} substances")
     foot = Foot(settings.laboratory, handbook.dataset.revision)
