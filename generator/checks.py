@@ -7,12 +7,12 @@ table has to be asked by itself. A fault that follows from another one is not to
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from difflib import get_close_matches
 from pathlib import Path
 
 from generator.cache import Cache
-from generator.cells import Fault
+from generator.cells import ERROR, Fault
 from generator.curvechecks import check_correlations
 from generator.decisionchecks import check_corrections, decisions, settled
 from generator.errors import Problem
@@ -38,24 +38,25 @@ def check_folder(folder: Path, cache_folder: Path | None = None) -> tuple[Proble
 
 def check_tables(tables: Tables, cache: Cache | None = None) -> tuple[Problem, ...]:
     """Everything wrong with tables that have been read, in order of place."""
-    found = [*tables.problems]
-    found += (problem for table in tables.tables.values() for problem in _keys(table))
-    references = [*_references(tables)]
-    found += references
+    keys = [problem for table in tables.tables.values() for problem in _keys(table)]
+    found = [*tables.problems, *keys, *_references(tables, {problem.file for problem in keys})]
     found += check_solvents(tables["solvents"], cache or Cache(None))
-    measurements, corrections = tables["measurements"], tables["corrections"]
+    measurements, correlations = tables["measurements"], tables["correlations"]
     rows = [*typed_rows(measurements)]
     ends = ends_of(iter(rows))
-    decided = decisions(corrections, measurements, tables["correlations"])
+    decided = decisions(tables["corrections"], measurements, correlations)
     done = settled(decided)
     found += check_measurements(measurements, rows, ends, done[False])
-    found += check_correlations(tables["correlations"], ends, done[True])
-    unsure = {p.line for p in references if p.file == corrections.schema.path}
-    found += check_corrections(corrections, decided, unsure)
+    found += check_correlations(correlations, ends, done[True])
+    wrong = {(problem.file, problem.line) for problem in found if problem.severity == ERROR}
+    found += check_corrections(tables["corrections"], decided, wrong)
     found += _uncertainties(tables["uncertainties"])
     found += _stock(tables["stock"])
     found += _handling(tables["handling"])
-    return tuple(sorted(found))
+    # A cell that could not be read is not asked what it says.
+    read = {(p.file, p.line, p.column) for p in tables.problems if p.severity == ERROR}
+    rest = [p for p in found[len(tables.problems) :] if (p.file, p.line, p.column) not in read]
+    return tuple(sorted([*tables.problems, *rest]))
 
 
 # --- keys and references --------------------------------------------------------------------------
@@ -86,12 +87,17 @@ def _keys(table: Table) -> Iterator[Problem]:
         yield table.problem(row, key[0], fault)
 
 
-def _references(tables: Tables) -> Iterator[Problem]:
-    """Cells that name a row of another table which is not there, once for each name."""
+def _references(tables: Tables, doubled: Collection[str]) -> Iterator[Problem]:
+    """Cells that name a row of another table which is not there, once for each name.
+
+    ``doubled``: files in which a key stands twice, so that another one is missing.
+    """
     for table in tables.tables.values():
         for reference in table.schema.references:
             target = tables.tables.get(reference.table)
-            if target is not None and _can_be_trusted(target, reference.column):
+            if target is None or target.schema.path in doubled:
+                continue
+            if _can_be_trusted(target, reference.column):
                 yield from _unknown(table, reference, target)
 
 

@@ -15,21 +15,21 @@ from generator.tables import Row, Table
 from generator.typed import number, quantity_of
 
 _KEY = ("solvent", "quantity", "source")
+# Where points and curves stand.
+_FILES = ("measurements.csv", "correlations.csv")
 
 
 @dataclass(frozen=True, slots=True)
 class Decided:
     """A correction with the rows it may mean, and the one it does mean if there is one.
 
-    ``curve`` says that the row stands in the table of curves. ``known`` is false where the tables
-    could not be read well enough to tell.
+    ``curve`` says that a row stands in the table of curves.
     """
 
     row: Row
     candidates: tuple[tuple[Row, bool], ...]
     meant: Row | None
     curve: bool
-    known: bool
 
 
 def decisions(corrections: Table, measurements: Table, correlations: Table) -> list[Decided]:
@@ -38,19 +38,11 @@ def decisions(corrections: Table, measurements: Table, correlations: Table) -> l
     for table, curve in ((measurements, False), (correlations, True)):
         for row in table.whole_rows:
             rows[tuple(row[column] for column in _KEY)].append((row, curve))
-    legible = measurements.complete and correlations.complete
-    faulty = {
-        curve: {line for line, _ in table.faulty}
-        for table, curve in ((measurements, False), (correlations, True))
-    }
-    own_faulty = {line for line, _ in corrections.faulty}
     found = []
     for row in corrections.whole_rows:
         candidates = tuple(rows.get(tuple(row[column] for column in _KEY), ()))
         meant, curve = next((c for c in candidates if _means(row, *c)), (None, False))
-        clear = legible and row.line not in own_faulty and 1 not in faulty[False] | faulty[True]
-        clear = clear and not any(c.line in faulty[curve] for c, curve in candidates)
-        found.append(Decided(row, candidates, meant, curve, clear))
+        found.append(Decided(row, candidates, meant, curve))
     return found
 
 
@@ -80,12 +72,14 @@ def settled(decided: Sequence[Decided]) -> Mapping[bool, frozenset[int]]:
 
 
 def check_corrections(
-    table: Table, decided: Sequence[Decided], unsure: Collection[int]
+    table: Table, decided: Sequence[Decided], wrong: Collection[tuple[str, int]]
 ) -> Iterator[Problem]:
     """Everything wrong with the rows of corrections.
 
-    ``unsure``: lines that name an unknown substance or source, which says enough.
+    ``wrong``: file and line of every other error, line 0 or 1 for a whole table. A value that is
+    missing because of one of them is not called gone.
     """
+    whole = not any((file, line) in wrong for file in _FILES for line in (0, 1))
     for decision in decided:
         row = decision.row
         quantity = quantity_of(table, row)
@@ -93,8 +87,9 @@ def check_corrections(
             yield quantity
             continue
         faults = list(_replacement(decision, quantity))
-        gone = decision.meant is None and decision.known and row.line not in unsure
-        if gone and quantity is not None:
+        places = [(_FILES[curve], other.line) for other, curve in decision.candidates]
+        clear = whole and not any(p in wrong for p in [(table.schema.path, row.line), *places])
+        if decision.meant is None and clear and quantity is not None:
             faults.append(_expired(decision))
         yield from (table.problem(row, column, fault) for column, fault in faults)
 
@@ -102,7 +97,7 @@ def check_corrections(
 def _replacement(decision: Decided, quantity: Quantity | None) -> Iterator[tuple[str, Fault]]:
     row, new = decision.row, decision.row["replacement"]
     if row["action"] != "replace":
-        if new and row["action"]:
+        if new and row["action"] in ("exclude", "keep"):
             hint = f"leave it blank, or make the action replace instead of {row['action']}"
             yield "replacement", Fault("needless-replacement", new, "a blank cell", hint)
     elif decision.curve:
@@ -142,8 +137,7 @@ def _expired(decision: Decided) -> tuple[str, Fault]:
         expected = f"the temperature of line {moved[0].line} of the measurements"
         return "temperature_c", Fault("expired-correction", found, expected, hint)
     now = [
-        f"{c['coefficients'] if curve else c['value']} (line {c.line} of "
-        f"{'correlations.csv' if curve else 'measurements.csv'})"
+        f"{c['coefficients'] if curve else c['value']} (line {c.line} of {_FILES[curve]})"
         for c, curve in decision.candidates
     ]
     name = QUANTITIES[row["quantity"]].name.lower()

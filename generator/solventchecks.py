@@ -17,9 +17,10 @@ from generator.structures import inchikey
 from generator.tables import Row, Table
 
 _RELATIONS = {
-    "different": "another substance",
-    "isomer": "an isomer of it",
-    "stereo": "another arrangement of the same atoms in space",
+    "different": "another substance than",
+    "isomer": "an isomer of",
+    "stereo": "another stereoisomer than",
+    "": "not known as",
 }
 
 
@@ -35,6 +36,7 @@ def check_solvents(table: Table, cache: Cache) -> Iterator[Problem]:
             yield table.problem(row, "cas", fault)
         elif number in numbers:
             yield table.problem(row, "cas", _duplicate("cas", number, *numbers[number]))
+            continue
         elif number:
             numbers[number] = row.line, row["solvent"]
         if not row["smiles"]:
@@ -48,7 +50,7 @@ def check_solvents(table: Table, cache: Cache) -> Iterator[Problem]:
         if clash:
             column, *parts = clash
             yield table.problem(row, column, Fault(*parts))
-        if structure in structures:
+        elif structure in structures:
             line, slug = structures[structure]
             yield table.problem(row, "smiles", _duplicate("structure", row["smiles"], line, slug))
         elif structure:
@@ -144,19 +146,32 @@ def _clash(row: Row) -> tuple[str, ...]:
         row["solvent"], row["name"], row["cas"], row["smiles"], synonyms, "", row.line
     )
     who = identity.identify(solvent)
-    if not who.clashes or (who.relation in ("isomer", "stereo") and not who.why):
+    wrong, why = who.wrong, ", ".join(who.why)
+    if who.relation == "stereo" and not why:
+        wrong = _wrong_by_name(solvent)
+        why = f"the name {row['name']}" if wrong else ""
+    if not wrong or (who.relation in ("isomer", "stereo") and not why):
         return ()
-    relation = _RELATIONS.get(who.relation, "a substance it does not list under this number")
-    why = f"; {', '.join(who.why)} speak against it" if who.why else ""
-    if who.wrong == identity.CAS:
-        found = f"{row['cas']}, while the structure {row['smiles']} is {relation}{why}"
+    found = f"{row['cas']} beside {row['smiles']}, {_RELATIONS[who.relation]} {row['cas']}"
+    if why:
+        found += f"; against the {'number' if wrong == identity.CAS else 'structure'}: {why}"
+    if wrong == identity.CAS:
         hint = who.likely_cas or "look the number up by name and structure"
-        return "cas", "structure-cas-mismatch", found, "the number of this structure", hint
-    found = f"{row['smiles']}, {relation} than {row['cas']}{why}"
+        return "cas", "structure-cas-mismatch", found, "the number of the structure", hint
     hint = f"{who.listed}, the structure of {row['cas']}"
     if who.likely_cas:
         hint += f"; or the CAS number {who.likely_cas}, if the structure is right"
     return "smiles", "structure-cas-mismatch", found, f"the structure of {row['cas']}", hint
+
+
+def _wrong_by_name(solvent: Solvent) -> str:
+    """Which of two stereoisomers the name means: the wrong one of ``cas`` and ``smiles``, or ""."""
+    entries = library.find(solvent.name)
+    own = any(entry.cas == solvent.cas for entry in entries)
+    drawn = any(_structure(entry.smiles) == _structure(solvent.smiles) for entry in entries)
+    if own == drawn:
+        return ""
+    return identity.SMILES if own else identity.CAS
 
 
 @lru_cache(maxsize=1)

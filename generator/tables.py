@@ -23,9 +23,9 @@ from generator.schema import TableSchema, read_package, read_schema
 HISTORY = "history"
 """The table of recorded revisions, which does not count for the revision."""
 _BOM = "\ufeff"
+_CUT = ("truncated", "bad-quotes")
 _NAMES = {"\t": "tabs", ";": "semicolons", ",": "commas"}
 
-_CUT = ("truncated", "bad-quotes")
 
 @dataclass(frozen=True, slots=True)
 class Row:
@@ -57,8 +57,6 @@ class Table:
     delimiter: str = ","
     newline: str = "\n"
     has_bom: bool = False
-
-
     faulty: frozenset[tuple[int, str]] = frozenset()
     complete: bool = True
 
@@ -70,6 +68,8 @@ class Table:
     def problem(self, row: Row, column: str, fault: Fault) -> Problem:
         """A fault in one cell of one row."""
         return Problem(self.schema.path, row.line, column, *fault)
+
+
 @dataclass(frozen=True)
 class Tables:
     """A folder of tables as read: rows, problems with their places, and a hash of the contents."""
@@ -151,6 +151,7 @@ class _Reader:
         self._schema = schema
         self._fields = {field.name: field for field in schema.fields}
         self._problems: list[Problem] = []
+        self._width = 0
         self._read: dict[tuple[str, str], tuple[str, tuple[Fault, ...]]] = {}
 
     def _say(
@@ -193,10 +194,10 @@ class _Reader:
             frozenset((problem.line, problem.column) for problem in errors),
             not any(problem.kind in _CUT for problem in errors),
         )
+        return table, self._problems
 
     def _decoded(self, data: bytes) -> str:
         if data[:2] in (b"\xff\xfe", b"\xfe\xff"):
-        return table, self._problems
             self._say(1, "", "encoding", "UTF-16", "UTF-8",
                       "save the table again as CSV UTF-8")  # fmt: skip
             return data.decode("utf-16", errors="replace")
@@ -238,6 +239,8 @@ class _Reader:
             line = reader.line_num + 1
 
     def _header(self, line: int, header: Sequence[str]) -> tuple[str, ...]:
+        # Blank columns behind the last are passed over, in every row.
+        self._width = len(header)
         columns = [plain(name) for name in header]
         while columns and not columns[-1]:
             columns.pop()
@@ -265,10 +268,11 @@ class _Reader:
         return tuple(columns)
 
     def _row(self, line: int, cells: Sequence[str], columns: tuple[str, ...]) -> Row:
-        beyond = [cell for cell in cells[len(columns) :] if cell.strip()]
+        beyond = any(map(plain, cells[len(columns) :])) or len(cells) > self._width
         if beyond:
             self._say(line, columns[-1], "too-many-cells", f"{len(cells)} cells, beyond the last "
-                      f"column: {', '.join(beyond)}", f"{len(columns)} cells",
+                      f"column: {', '.join(cells[len(columns) :]) or 'blank'}",
+                      f"{len(columns)} cells",
                       'put text that holds a separator into quotes: "a, b"')  # fmt: skip
         whole = not beyond and len(cells) >= len(columns)
         clean = {}
