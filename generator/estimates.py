@@ -23,6 +23,8 @@ EXPANSION_SPREAD = 0.15
 # not associate; and n² those of molecules without a moment (a test holds both against the data).
 PERMITTIVITY_SPREAD = 0.20
 UNPOLAR_SPREAD = 0.015
+# Standard uncertainty of a value known only to lie within ± a: a/√3 (JCGM 100, 4.3.7).
+_RECTANGULAR = 1 / math.sqrt(3)
 _STEP = 0.5  # of an input's uncertainty, for its slope
 _KIND = "dipole-estimate"
 
@@ -36,7 +38,12 @@ def expansivity(boiling: float, temperature: float) -> float:
 
 
 def dipole_moment(structure: Molecule, cache: Cache) -> tuple[float, float] | None:
-    """Dipole moment [D] and standard uncertainty from the structure; None outside the model."""
+    """Dipole moment [D] and standard uncertainty from the structure; None outside the model.
+
+    Of saturated hydrocarbons only the limit of their moments is known.
+    """
+    if structure.dipole_limit is not None:
+        return structure.dipole_limit / 2, structure.dipole_limit / 2 * _RECTANGULAR
     key = digest(structure.smiles, dipoles.fingerprint())
     kept = cache.get(_KIND, key)
     if kept is not None:

@@ -64,7 +64,8 @@ def stated_or_usual(
     """Standard uncertainty [unit of ``key``] of a table entry, and its mark.
 
     The stated one; else what is customary for the kind of source (table ``uncertainties``); else
-    the rounding half-width ``floor`` as a marked lower bound. Never below the rounding.
+    the rounding half-width ``floor`` as a marked lower bound. Never below the rounding, but that
+    a bare 0 was not rounded to whole units.
     """
     if stated is not None:
         return stated, None
@@ -72,7 +73,7 @@ def stated_or_usual(
     usual = dataset.usual_uncertainty(kind, key, value)
     if usual is None:
         return floor, LOWER_BOUND
-    return max(usual, floor), USUAL
+    return max(usual, floor if value else 0.0), USUAL
 
 
 def uncertainty_of(dataset: Dataset, point: Measurement) -> tuple[float, str | None]:
