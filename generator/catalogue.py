@@ -206,7 +206,7 @@ def _rows(handbook: Handbook) -> dict[str, Rows]:
     }
 
 
-class _TableRow(Protocol):
+class _HasSolvent(Protocol):
     @property
     def solvent(self) -> str: ...
 
@@ -214,7 +214,7 @@ class _TableRow(Protocol):
     def line(self) -> int: ...
 
 
-_Row = TypeVar("_Row", bound=_TableRow)
+_Row = TypeVar("_Row", bound=_HasSolvent)
 
 
 def _shared_out(slugs: Iterable[str], rows: Iterable[_Row]) -> list[tuple[_Row, ...]]:
@@ -229,8 +229,10 @@ def _shared_out(slugs: Iterable[str], rows: Iterable[_Row]) -> list[tuple[_Row, 
 def _owners(handbook: Handbook) -> dict[tuple[str, int], str]:
     """Which substance a row of a table belongs to."""
     dataset = handbook.dataset
+
+class _HasPlace(_HasSolvent, Protocol):
     owners = {("solvents.csv", s.line): slug for slug, s in dataset.solvents.items()}
-    tables: Mapping[str, Sequence[_TableRow]] = {
+    tables: Mapping[str, Sequence[_HasPlace]] = {
         "measurements.csv": dataset.measurements,
         "correlations.csv": dataset.correlations,
         "corrections.csv": dataset.corrections,
