@@ -210,6 +210,8 @@ class _HasSolvent(Protocol):
     @property
     def solvent(self) -> str: ...
 
+
+class _HasPlace(_HasSolvent, Protocol):
     @property
     def line(self) -> int: ...
 
@@ -229,8 +231,6 @@ def _shared_out(slugs: Iterable[str], rows: Iterable[_Row]) -> list[tuple[_Row, 
 def _owners(handbook: Handbook) -> dict[tuple[str, int], str]:
     """Which substance a row of a table belongs to."""
     dataset = handbook.dataset
-
-class _HasPlace(_HasSolvent, Protocol):
     owners = {("solvents.csv", s.line): slug for slug, s in dataset.solvents.items()}
     tables: Mapping[str, Sequence[_HasPlace]] = {
         "measurements.csv": dataset.measurements,
