@@ -140,11 +140,12 @@ def _datasheet_page(sheet: Datasheet) -> Page:
 
 def search_text(sheet: Datasheet) -> str:
     """What the site search knows of a substance: names, numbers and formula as plain text."""
-    parts = [sheet.cas, sheet.formula_plain, *sheet.synonyms, sheet.family, sheet.inchikey]
+    # What it is called as a whole stands first: site_src/pages/assets/search.js takes it apart.
+    called = " · ".join((sheet.cas, sheet.formula_plain, sheet.inchikey, *sheet.synonyms))
+    parts = [sheet.family, sheet.polar]
     if sheet.permittivity:
         parts.append(f"relative permittivity {sheet.permittivity.sentence}")
-    parts.append(sheet.polar)
-    return " · ".join(part for part in parts if part)
+    return f"{called} — {', '.join(parts)}"
 
 
 @lru_cache(maxsize=1)

@@ -80,13 +80,7 @@ def add_search_entries(pages: Iterable[FinishedPage], config: MkDocsConfig) -> N
         if finished.search_text:
             url = File(finished.path, None, config.site_dir, config.use_directory_urls).url
             entries.append(
-                {
-                    "location": url,
-                    "title": finished.search_title,
-                    "text": finished.search_text,
-                    # A substance comes before the pages that only speak of it.
-                    "boost": 4 if finished.kind == "datasheet" else 1,
-                }
+                {"location": url, "title": finished.search_title, "text": finished.search_text}
             )
 
 

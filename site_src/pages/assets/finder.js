@@ -115,7 +115,9 @@
       && (!stock.checked || entry.o === 1);
   };
 
-  const row = (entry) => make("li", {}, box(entry.u, entry.n), make("a", { href: entry.u, "data-hit": true },
+  const row = (entry) => make("li", {}, box(entry.u, entry.n), make("a", {
+    href: `solvents/${entry.u}.html`, "data-hit": true,
+  },
       make("b", {}, entry.n),
       ...alias(entry, input.value),
       make("span", { class: "cas" }, entry.c),
