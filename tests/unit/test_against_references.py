@@ -180,3 +180,31 @@ def test_nothing_is_infinite(handbook: Handbook) -> None:
                     assert math.isfinite(value.value), (slug, key)
                     assert math.isfinite(value.uncertainty), (slug, key)
                     assert value.uncertainty >= 0
+
+
+# Orientation polarizabilities as tables of solvatochromism print them, after Lippert, Z.
+# Elektrochem. 61, 962 (1957) and Mataga, Kaifu, Koizumi, Bull. Chem. Soc. Jpn. 29, 465 (1956);
+# typed from memory.
+PUBLISHED_POLARIZABILITIES = {
+    "water": 0.320,
+    "methanol": 0.309,
+    "acetonitrile": 0.305,
+    "ethanol": 0.289,
+    "acetone": 0.284,
+    "n-n-dimethylformamide": 0.275,
+    "dimethyl-sulfoxide": 0.264,
+    "dichloromethane": 0.217,
+    "tetrahydrofuran": 0.210,
+    "ethyl-acetate": 0.200,
+    "diethyl-ether": 0.167,
+    "chloroform": 0.148,
+    "toluene": 0.014,
+    "hexane": 0.0,
+}
+
+
+@pytest.mark.parametrize("slug", PUBLISHED_POLARIZABILITIES)
+def test_orientation_polarizabilities_as_published(handbook: Handbook, slug: str) -> None:
+    found = handbook.at(slug, "lippert_mataga_polarizability")
+    assert found is not None
+    assert found.value == pytest.approx(PUBLISHED_POLARIZABILITIES[slug], abs=0.003)
