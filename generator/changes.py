@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from generator import build, exports, sheets
+from generator import build, exports, sheets, versions
 from generator.cache import Cache
 from generator.catalogue import catalogue
 from generator.cells import ERROR, NOTE
@@ -116,6 +116,17 @@ def state(folder: Path, settings: Settings, cache: Cache | None = None) -> State
     except DatasetError as error:
         handbook, findings = None, error.problems
     return State(tables.revision, grids, handbook, findings)
+
+
+def between(old: str, new: str, data: Path, settings: Settings, cache: Path | None) -> Changes:
+    """What differs between two versions by name (see ``versions.opened``).
+
+    Raises ``UnknownVersionError``, and ``DatasetError`` when tables are not whole.
+    """
+    with versions.opened(old, data) as before, versions.opened(new, data) as after:
+        # The newer one last, so that the results kept for the next build are its own.
+        states = [state(folder, settings, Cache(cache)) for folder in (before, after)]
+        return compare(*states)
 
 
 def compare(old: State, new: State) -> Changes:

@@ -12,11 +12,11 @@ from generator.history import CLASS, ENTRY, FINDING, NOTE, NUMBER, Event
 from generator.quantities import QUANTITIES
 from generator.units import ZERO_CELSIUS
 from generator.values import Value
-from generator.wording import celsius_label, prose, split_value, unit_label
+from generator.wording import MINUS, celsius_label, prose, split_value, unit_label
 
 _WHOLE = "The tables as a whole"
 # A number that moved less than this is not worth a line in the record [standard uncertainties].
-_RECORDED = 0.05
+_RECORDED = 0.5
 
 
 def text(changes: Changes) -> str:
@@ -101,8 +101,14 @@ def _move_line(moves: Sequence[Move]) -> str:
 def _move(move: Move) -> str:
     at = "" if move.temperature is None else f"at {celsius_label(move.temperature)}: "
     unit = unit_label(QUANTITIES[move.quantity].unit)
-    shift = "" if move.shift is None else f" ({move.shift:+.1f} u)".replace("-", "\u2212")
-    return f"{at}{_value(move.old)} → {_value(move.new)}" + f" {unit}" * bool(unit) + shift
+    return f"{at}{_value(move.old)} → {_value(move.new)}" + f" {unit}" * bool(unit) + _shift(move)
+
+
+def _shift(move: Move) -> str:
+    if move.shift is None:
+        return ""
+    digits = f"{move.shift:+.1f}".replace("-", MINUS)
+    return f" ({digits} u)" if digits[1:] != "0.0" else " (within 0.1 u)"
 
 
 def _value(value: Value | None) -> str:

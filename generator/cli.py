@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import sys
 import time
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from datetime import datetime
 from pathlib import Path
@@ -14,22 +14,7 @@ import click
 
 from generator.errors import DatasetError, Problem
 from generator.numbercommands import explain
-from generator.tablecommands import sheet
-
-_CONFIG = click.option(
-    "--config",
-    type=click.Path(path_type=Path, exists=True, dir_okay=False),
-    default=Path("mkdocs.yml"),
-    show_default=True,
-    help="Settings of the handbook.",
-)
-_DATA = click.option(
-    "--data",
-    type=click.Path(path_type=Path, file_okay=False),
-    default=Path("data"),
-    show_default=True,
-    help="Folder of the tables.",
-)
+from generator.tablecommands import CONFIG, DATA, changes_, report, sheet
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
@@ -38,11 +23,12 @@ def main() -> None:
 
 
 main.add_command(sheet)
+main.add_command(changes_)
 main.add_command(explain)
 
 
 @main.command()
-@_DATA
+@DATA
 @click.option("--json", "as_json", is_flag=True, help="Findings as JSON, for machines.")
 def check(data: Path, as_json: bool) -> None:
     """Report everything wrong or doubtful in the tables, all at once.
@@ -65,19 +51,14 @@ def check(data: Path, as_json: bool) -> None:
     if as_json:
         click.echo(json.dumps([f.as_dict() for f in findings], ensure_ascii=False, indent=1))
     else:
-        _report(findings)
+        report(findings)
         click.echo(f"Errors: {errors}. Suspect values: {suspects}. Notes: {notes}.")
     sys.exit(1 if errors else 0)
 
 
-def _report(findings: Iterable[Problem]) -> None:
-    for finding in findings:
-        click.echo(f"{finding}\n")
-
-
 @main.command()
 @click.argument("names", metavar="NAME-OR-CAS...", nargs=-1)
-@_DATA
+@DATA
 @click.option("--dry-run", is_flag=True, help="Show the rows, write nothing.")
 @click.option(
     "--all-liquids",
@@ -97,7 +78,7 @@ def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) ->
     try:
         plan = additions.plan(data, names, all_liquids=all_liquids)
     except DatasetError as error:
-        _report(error.problems)
+        report(error.problems)
         sys.exit(1)
     click.echo(plan.summary(rows=dry_run))
     if plan.refusals:
@@ -107,7 +88,7 @@ def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) ->
 
 
 @main.command()
-@_CONFIG
+@CONFIG
 @click.option(
     "--site",
     type=click.Path(path_type=Path, file_okay=False),
@@ -135,6 +116,12 @@ def build(config: Path, site: Path) -> None:
 @click.option("--location", default="", help="Those with a container at this place.")
 @click.option("--all", "everything", is_flag=True, help="All substances of the handbook.")
 @click.option(
+    "--changed",
+    metavar="OLD",
+    help="Those whose sheet says something else than in OLD: a published handbook, a folder of "
+    "tables, or a git revision.",
+)
+@click.option(
     "--as",
     "kind",
     type=click.Choice(["sheets", "booklet", "labels"]),
@@ -151,11 +138,12 @@ def build(config: Path, site: Path) -> None:
     type=click.Path(path_type=Path, dir_okay=False),
     help="The PDF to write, named after its kind unless given.",
 )
-@_CONFIG
+@CONFIG
 def print_(
     solvents: tuple[str, ...],
     location: str,
     everything: bool,
+    changed: str | None,
     kind: str,
     paper: str | None,
     label_sheet: str | None,
@@ -168,14 +156,20 @@ def print_(
 
     SOLVENT is a short name, name, synonym or CAS number of the handbook.
     """
-    from generator import plugin, printing, ready, selection
+    from generator import changes, plugin, printing, ready, selection, versions
 
-    if [bool(solvents), bool(location), everything].count(True) != 1:
-        raise click.UsageError("name substances, or give --location, or --all")
+    if [bool(solvents), bool(location), everything, bool(changed)].count(True) != 1:
+        raise click.UsageError("name substances, or give --location, --changed or --all")
     begun = time.monotonic()
     out = out or Path(f"{kind}.pdf")
     try:
         known = plugin.configured(config)
+        if changed:
+            cache, now = config.parent / ".cache", str(known.data)
+            solvents = changes.between(changed, now, known.data, known.settings, cache).outdated
+            if not solvents:
+                click.echo(f"no sheet says anything else than in {changed}")
+                return
         order = printing.Order(
             kind=kind,
             names=solvents,
@@ -190,10 +184,10 @@ def print_(
             made = printing.produce(
                 known.data, known.settings, config.parent / ".cache", order, say
             )  # fmt: skip
-    except selection.OrderError as error:
+    except (selection.OrderError, versions.UnknownVersionError) as error:
         raise click.UsageError(str(error)) from error
     except DatasetError as error:
-        _report(error.problems)
+        report(error.problems)
         sys.exit(1)
     except (ready.Refused, click.Abort) as error:
         click.echo(str(error), err=True)

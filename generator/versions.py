@@ -51,8 +51,9 @@ def _revision(name: str, data: Path) -> Iterator[tuple[str, bytes]]:
         raise UnknownVersionError(
             f"{name} is no folder of tables, no published site, and no git revision of {data}"
         )
-    prefix = _git(data, "rev-parse", "--show-prefix").decode().strip()
-    archive = _git(data, "archive", "--format=tar", f"{commit.decode().strip()}:{prefix}")
+    top = Path(_git(data, "rev-parse", "--show-toplevel").decode().strip())
+    inside = _git(data, "rev-parse", "--show-prefix").decode().strip().rstrip("/")
+    archive = _git(top, "archive", "--format=tar", f"{commit.decode().strip()}:{inside}")
     if not archive:
         return
     with tarfile.open(fileobj=io.BytesIO(archive)) as files:
