@@ -5,6 +5,8 @@ The tables are small and partly invented; each fault of the corpus is one edit o
 
 from __future__ import annotations
 
+import csv
+import io
 import json
 import shutil
 from collections.abc import Callable
@@ -13,9 +15,12 @@ from pathlib import Path
 
 import pytest
 from click.testing import CliRunner
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from generator.checks import check_folder
 from generator.cli import main
+from generator.dataset import load_dataset
 from generator.errors import DatasetError, Problem
 from generator.schema import shipped_file, shipped_schema
 from generator.tables import read_tables
@@ -432,6 +437,53 @@ def test_a_correction_settles_what_would_be_an_error(tables: Path) -> None:
     with (tables / "corrections.csv").open("a", encoding="utf-8") as file:
         file.write("water,relative_permittivity,handbook,20,801,replace,80.1,Shifted,2026-03-02\n")
     assert _found(tables) == ()
+
+
+@pytest.mark.parametrize(
+    ("case", "advice"),
+    [
+        (Case(M, ("0.0001", "1.5"), 3, "uncertainty", "large-uncertainty"), "percent"),
+        (Case(C, ("-14,80", "-240,80"), 3, "coefficients", "curve-out-of-bounds"), "signs"),
+    ],
+    ids=["uncertainty in percent", "curve off at one end"],
+)
+def test_what_is_only_doubtful_is_published_with_a_flag(
+    tables: Path, case: Case, advice: str
+) -> None:
+    case.apply(tables)
+    (found,) = _found(tables)
+    assert (found.file, found.line, found.column) == (case.file, case.line, case.column)
+    assert (found.kind, found.severity) == (case.kind, "suspect")
+    assert advice in found.hint
+
+
+@settings(
+    max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture]
+)
+@given(
+    st.sampled_from(sorted(TABLES)),
+    st.integers(0, 1000),
+    st.integers(0, 1000),
+    st.text(max_size=8)
+    | st.sampled_from(
+        ["0", "-1", "1e300", "nan", "K", "m**1e9", "10**10**10", "delta_degC", "kg kg"]
+    )
+    | st.sampled_from(
+        ["1 2 3 4", "rackett", "wagner", "[U]", "0-0-0", "Jan 85", "acetone", "keep"]
+    ),
+)
+def test_no_cell_makes_the_check_stumble(
+    tables: Path, file: str, row: int, column: int, text: str
+) -> None:
+    """Whatever a cell holds: it is told, or the tables can be used."""
+    rows = list(csv.reader(io.StringIO(TABLES[file])))
+    cells = rows[1 + row % (len(rows) - 1)]
+    cells[column % len(cells)] = text
+    with (tables / file).open("w", encoding="utf-8", newline="") as out:
+        csv.writer(out, lineterminator="\n").writerows(rows)
+    if not any(problem.severity == "error" for problem in _found(tables)):
+        assert load_dataset(tables).solvents
+    (tables / file).write_text(TABLES[file], encoding="utf-8")
 
 
 @pytest.mark.build
