@@ -443,7 +443,16 @@ def test_a_correction_settles_what_would_be_an_error(tables: Path) -> None:
     ("case", "advice"),
     [
         (Case(M, ("0.0001", "1.5"), 3, "uncertainty", "large-uncertainty"), "percent"),
-        (Case(C, ("-14,80", "-240,80"), 3, "coefficients", "curve-out-of-bounds"), "signs"),
+        (
+            Case(
+                C,
+                ("-0.79069 0.00072997,0,99", "-0.6,0,180"),
+                2,
+                "coefficients",
+                "curve-out-of-bounds",
+            ),
+            "signs",
+        ),
     ],
     ids=["uncertainty in percent", "curve off at one end"],
 )
