@@ -12,9 +12,11 @@ from markupsafe import Markup
 
 from generator.dataset import Container, Correction, Correlation, Handling, Measurement
 from generator.errors import Problem
-from generator.history import Event
 from generator.flammability import FlashClass, flash_class
+from generator.history import Event
 from generator.metrics import Handbook
+
+SWAPS_SHOWN = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,6 +88,14 @@ class Rows:
     handling: tuple[Handling, ...] = ()
     history: tuple[Event, ...] = ()
 
+    @property
+    def places(self) -> str:
+        """Where in the tables the rows stand, and what is recorded of earlier ones."""
+        tables = (
+            self.measurements, self.correlations, self.corrections, self.stock, self.handling
+        )  # fmt: skip
+        return repr(([[row.line for row in rows] for rows in tables], self.history))
+
 
 @dataclass(frozen=True, slots=True)
 class Catalogue:
@@ -100,6 +110,7 @@ class Catalogue:
     isomer_sets: tuple[tuple[str, ...], ...]
     rows: Mapping[str, Rows]
     _by_slug: Mapping[str, tuple[Finding, ...]]
+    _kirkwood: Mapping[str, float | None]
 
     def findings_of(self, slug: str) -> tuple[Finding, ...]:
         """What the checks have to say about one substance."""
@@ -119,25 +130,25 @@ class Catalogue:
         ends = [self.handbook.at(slug, key) for key in ("flash_point", "boiling_point")]
         return flash_class(*(None if value is None else value.value for value in ends))
 
-    def nearest(self, slug: str, others: Sequence[str], count: int) -> tuple[str, ...]:
-        """Those of ``others`` whose permittivity comes nearest, nearest first."""
-        own = self._kirkwood(slug)
+    def swaps_of(self, slug: str) -> tuple[str, ...]:
+        """What one might swap a substance for: its family by permittivity, nearest first.
+
+        Isomers are left out, since a sheet shows them by themselves.
+        """
+        own, isomers = self._kirkwood[slug], self.isomers_of(slug)
 
         def distance(other: str) -> tuple[float, str]:
-            theirs = self._kirkwood(other)
+            theirs = self._kirkwood[other]
             known = own is not None and theirs is not None
             return (abs(theirs - own) if known else 1.0, self._name(other))  # type: ignore[operator]
 
-        ranked = sorted((s for s in others if s != slug), key=distance)
-        return tuple(ranked[:count])
+        family = self.families[self.handbook.molecules[slug].family]
+        ranked = sorted((s for s in family if s != slug and s not in isomers), key=distance)
+        return tuple(ranked[:SWAPS_SHOWN])
 
     def picture(self, figures: Mapping[str, str], slug: str, kind: str) -> Markup:
         """One of the small pictures of a substance, empty where there is none."""
         return Markup(figures.get(f"{slug}:{kind}", ""))
-
-    def _kirkwood(self, slug: str) -> float | None:
-        value = self.handbook.at(slug, "kirkwood_function")
-        return None if value is None else value.value
 
     def _name(self, slug: str) -> str:
         return self.handbook.dataset.solvents[slug].name.casefold()
@@ -175,7 +186,13 @@ def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
         isomer_sets=tuple(tuple(members) for members in positions.values() if len(members) > 1),
         rows=_rows(handbook),
         _by_slug={slug: tuple(found) for slug, found in by_slug.items()},
+        _kirkwood={slug: _value(handbook, slug, "kirkwood_function") for slug in in_order},
     )
+
+
+def _value(handbook: Handbook, slug: str, key: str) -> float | None:
+    value = handbook.at(slug, key)
+    return None if value is None else value.value
 
 
 _PREFIXES = re.compile(

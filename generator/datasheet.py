@@ -28,8 +28,8 @@ from generator.metrics import POLAR_ABOVE, UNPOLAR_BELOW, Handbook
 from generator.provenance import KEY_VALUES, citations, curves, measured, numbering, trail
 from generator.quantities import QUANTITIES
 from generator.structures import Molecule, drawing
-from generator.units import ZERO_CELSIUS
 from generator.timeline import past
+from generator.units import ZERO_CELSIUS
 from generator.values import Value
 from generator.ways import way_anchor, ways
 from generator.wording import (
@@ -94,7 +94,6 @@ GROUPS: tuple[tuple[str, tuple[str, ...]], ...] = (
         ),
     ),
 )
-SWAPS_SHOWN = 12
 COMPARED = 5  # as many as stand side by side
 
 
@@ -130,9 +129,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
     degrees = by_degree(handbook, slug)
     described = identity(handbook, slug, ROOT)
     metrics = _metrics(handbook, slug, links)
-    siblings = catalogue.families[molecule.family]
-    isomers = catalogue.isomers_of(slug)
-    swaps = catalogue.nearest(slug, [s for s in siblings if s not in isomers], SWAPS_SHOWN)
+    isomers, swaps = catalogue.isomers_of(slug), catalogue.swaps_of(slug)
     return Datasheet(
         slug=slug,
         name=solvent.name,
@@ -178,11 +175,10 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         curves=curves(rows, links, numbered, way),
         handling=_handling(rows, numbered),
         containers=_containers(rows),
-        isomers=tuple(_related(catalogue, other, figures) for other in isomers),
+        isomers=tuple(related(catalogue, other, figures) for other in isomers),
         isomers_href=links.isomers(catalogue.set_of(slug)),
-        swaps=tuple(_related(catalogue, other, figures) for other in swaps),
-        swaps_total=len(siblings) - 1,
-        history=past(rows.history),
+        swaps=tuple(related(catalogue, other, figures) for other in swaps),
+        swaps_total=len(catalogue.families[molecule.family]) - 1,
         compare_href=links.compare([slug]),
         compare_isomers_href=links.compare([slug, *isomers][:COMPARED]),
         compare_swaps_href=links.compare([slug, *swaps][:COMPARED]),
@@ -195,6 +191,7 @@ def datasheet(catalogue: Catalogue, slug: str, figures: Mapping[str, str], foot:
         json_ld=script_json(
             dataset_description(described, key_values, foot.laboratory, foot.revision)
         ),
+        history=past(rows.history),
         citations=citations(handbook, numbered),
         foot=foot,
     )
@@ -382,7 +379,8 @@ def _containers(rows: Rows) -> tuple[ContainerRow, ...]:
     )  # fmt: skip
 
 
-def _related(catalogue: Catalogue, slug: str, figures: Mapping[str, str]) -> Related:
+def related(catalogue: Catalogue, slug: str, figures: Mapping[str, str]) -> Related:
+    """All that the sheets of other substances show of one."""
     handbook = catalogue.handbook
     solvent = handbook.dataset.solvents[slug]
     return Related(

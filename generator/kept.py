@@ -26,6 +26,10 @@ class Kept:
         self._keys = keys
         self._pack = Pack(None, "") if pack is None else pack
 
+    def key(self, slug: str) -> str:
+        """Hash of all that a substance's own numbers depend on, "" where nothing is kept."""
+        return self._keys.get(slug, "")
+
     def of(self, slug: str, name: str, make: Callable[[], _Made], *more: object) -> _Made:
         """One result of one substance. ``more``: what it depends on besides the substance."""
         (made,) = self.each([slug], name, lambda _: [make()], *more).values()
@@ -44,7 +48,7 @@ class Kept:
         one result for each.
         """
         named = digest(name, *more)
-        keys = {slug: digest(slug, self._keys.get(slug, ""), named) for slug in slugs}
+        keys = {slug: digest(slug, self.key(slug), named) for slug in slugs}
         stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
         missing = [slug for slug in slugs if slug not in stored]
         fresh = shared_out(make, missing, LEAST) if missing else []

@@ -4,19 +4,22 @@ from __future__ import annotations
 
 import html
 import re
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined, Template
 
 from generator import comparisons, flammability, methods, overviews
+from generator.cache import digest
 from generator.catalogue import Catalogue, catalogue
 from generator.contexts import Datasheet, Foot
-from generator.datasheet import COMPARED, datasheet
+from generator.datasheet import COMPARED, datasheet, related
 from generator.errors import Problem
+from generator.kept import LEAST
 from generator.metrics import Handbook, Settings
+from generator.parallel import shared_out
 from generator.timeline import timeline
 from generator.wording import cell_markup, marks_markup, marks_of
 
@@ -27,7 +30,9 @@ class Page:
 
     ``path`` is where a Markdown source of it would stand; ``html`` is the body with its H1;
     ``toc`` lists its headings as (level, id, text). ``search_title`` and ``search_text`` are
-    plain text for the site search, empty where the page shall not be found.
+    plain text for the site search, empty where the page shall not be found. ``key`` is a hash of
+    all the page shows; without one it is made anew each time. A page that stands unchanged in
+    the published site is known by everything but its ``html``, which is empty.
     """
 
     path: str
@@ -37,6 +42,10 @@ class Page:
     search_title: str
     search_text: str
     kind: str
+    key: str = ""
+
+
+NO_PAGES: Mapping[str, Page] = {}
 
 
 def render_all(
@@ -45,22 +54,84 @@ def render_all(
     settings: Settings,
     figures: Mapping[str, str],
     package: Mapping[str, Any] | None = None,
+    known: Mapping[str, Page] = NO_PAGES,
+    prepare: Callable[[Sequence[str]], None] = lambda slugs: None,
 ) -> tuple[Page, ...]:
     """Every generated page of the handbook.
 
     ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
     polarity scale, ``slug:ribbon`` the temperature ribbon, ``slug:structure``
-    a drawing to take instead of the plain one; ``accuracy:KEY`` a model against measured numbers
-    (see ``accuracy``). ``package`` is the parsed
-    ``datapackage.json``; without it the data dictionary lists no tables.
+    a drawing to take instead of the plain one. ``package`` is the parsed
+    ``datapackage.json``; without it the data dictionary lists no tables. ``known`` are the pages
+    of the published site by path; those that would come out the same are given back.
+    ``prepare`` is told which substances need their figures.
     """
     book = catalogue(handbook, findings)
-    foot = Foot(settings.laboratory, handbook.dataset.revision)
-    described = package or {}
+    whole = _whole(book, settings, figures, package or {}, _foot(book, settings))
+    keys = {_path(slug): (slug, key) for slug, key in _sheet_keys(book, settings, figures)}
+    stale = [
+        slug
+        for path, (slug, key) in keys.items()
+        if path not in known or not key or known[path].key != key
+    ]
+    prepare(stale)
+
+    def sheets(slugs: Sequence[str]) -> list[Page]:
+        return [
+            _datasheet_page(datasheet(book, slug, figures, _foot(book, settings, slug)))
+            for slug in slugs
+        ]
+
+    made = {page.path: page for page in shared_out(sheets, stale, LEAST)}
     return (
-        *_whole(book, settings, figures, described, foot),
-        *(_datasheet_page(datasheet(book, slug, figures, foot)) for slug in book.in_order),
+        *(_or_known(page, known) for page in whole),
+        *(
+            replace(made[path], key=key) if path in made else known[path]
+            for path, (_, key) in keys.items()
+        ),
     )
+
+
+def _or_known(page: Page, known: Mapping[str, Page]) -> Page:
+    page = replace(page, key=digest(page))
+    standing = known.get(page.path)
+    return standing if standing is not None and standing.key == page.key else page
+
+
+def _foot(book: Catalogue, settings: Settings, slug: str = "") -> Foot:
+    """The foot of a page: a datasheet carries the revision of its own rows."""
+    dataset = book.handbook.dataset
+    revision = dataset.revisions.get(slug, "")[: len(dataset.revision)]
+    return Foot(settings.laboratory, revision or dataset.revision)
+
+
+def _sheet_keys(
+    book: Catalogue, settings: Settings, figures: Mapping[str, str]
+) -> Iterator[tuple[str, str]]:
+    """For each substance a hash of all that its datasheet shows, its own rows and the others'."""
+    faces = {slug: digest(related(book, slug, figures)) for slug in book.in_order}
+    for slug in book.in_order:
+        own = book.handbook.kept.key(slug)
+        isomers, swaps = book.isomers_of(slug), book.swaps_of(slug)
+        yield (
+            slug,
+            own
+            and digest(
+                own,
+                _foot(book, settings, slug),
+                book.rows[slug].places,
+                book.findings_of(slug),
+                book.set_of(slug)[:1],
+                len(book.families[book.handbook.molecules[slug].family]),
+                [faces[other] for other in (slug, *isomers, *swaps)],
+                len(isomers),
+                figures.get(f"{slug}:ribbon"),
+            ),
+        )
+
+
+def _path(slug: str) -> str:
+    return f"solvents/{slug}.md"
 
 
 def _whole(
@@ -83,8 +154,8 @@ def _whole(
         sets=sets, marks=marks_of(*(c.number for s in sets for r in s.rows for c in r.cells)),
         groups=comparisons.same_formula(book), menu_entries=menu, **shared,
     )  # fmt: skip
-    yield _page("compare.md", "compare", "Side by side", **shared)
     yield _page("changes.md", "changes", "What changed", t=timeline(book), **shared)
+    yield _page("compare.md", "compare", "Side by side", **shared)
     yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
     measured, derived = methods.methods()
     yield _page(
@@ -110,8 +181,8 @@ _FOUND = {
     "home": 0,
     "table": 300,
     "isomers": 300,
-    "compare": 300,
     "changes": 2_000,
+    "compare": 300,
     "review": 300,
     "methods": 20_000,
     "sources": 20_000,
@@ -128,7 +199,7 @@ def _page(path: str, kind: str, title: str, **context: Any) -> Page:
 def _datasheet_page(sheet: Datasheet) -> Page:
     body = _template("datasheet").render(s=sheet)
     return Page(
-        f"solvents/{sheet.slug}.md",
+        _path(sheet.slug),
         f"{sheet.name} {sheet.cas}",
         body,
         headings(body),

@@ -117,13 +117,13 @@ def read_tables(folder: Path) -> Tables:
 def revisions(tables: Tables) -> dict[str, str]:
     """Hash of what the tables say about each substance, wherever in them its rows stand.
 
-    The sources that the rows name are part of it.
+    The sources that the rows name are part of it; what is on record of earlier revisions is not.
     """
     sources = dict(_said(tables["sources"], "source"))
     shares: dict[str, list[str]] = {row["solvent"]: [] for row in tables["solvents"].rows}
     named: dict[str, set[str]] = {slug: set() for slug in shares}
-    for table in tables.tables.values():
-        if "solvent" in table.schema.columns:
+    for key, table in tables.tables.items():
+        if key != HISTORY and "solvent" in table.schema.columns:
             for (slug, text), row in zip(_said(table, "solvent"), table.rows, strict=True):
                 if slug in shares:
                     shares[slug].append(text)
