@@ -468,7 +468,7 @@ def test_a_place_gives_its_substances_or_the_places_there_are(handbook: Handbook
 def test_the_command_wants_one_choice_of_substances(arguments: list[str]) -> None:
     done = CliRunner().invoke(main, ["print", *arguments])
     assert done.exit_code == 2
-    assert "name substances, or give --location, or --all" in done.output
+    assert "name substances, or give --location, --changed or --all" in done.output
 
 
 @pytest.mark.build
