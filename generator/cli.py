@@ -192,6 +192,7 @@ def print_(
     except (ready.Refused, click.Abort) as error:
         click.echo(str(error), err=True)
         sys.exit(1)
+    out.parent.mkdir(parents=True, exist_ok=True)
     out.write_bytes(made.pdf)
     size, seconds = len(made.pdf) / 1e6, time.monotonic() - begun
     click.echo(f"{out}: {made.count} substances, {size:.1f} MB, {seconds:.1f} s")
