@@ -88,36 +88,57 @@ def _all(handbook: Handbook) -> Iterator[Comparison]:
     )
 
 
+Pair = tuple[float, float]
+
+
 def _permittivities(handbook: Handbook) -> tuple[Cloud, ...]:
     """Measured ε and ε after Onsager at each substance's own reference."""
-    found: dict[bool, list[tuple[float, float]]] = {False: [], True: []}
-    for slug, structure in handbook.molecules.items():
-        values = [
-            handbook.at(slug, key)
-            for key in ("relative_permittivity", "dipole_moment", "refractive_index")
-        ]
-        volume = handbook.at(slug, "molar_volume")
-        measured = [v for v in values if v is not None and v.basis != "estimated"]
-        if len(measured) < len(values) or volume is None or structure.dipole_limit is not None:
-            continue
-        eps, moment, index = measured
-        predicted = polarity.onsager_permittivity(
-            moment.value, index.value, volume.value, eps.temperature or handbook.reference
+    slugs = tuple(handbook.dataset.solvents)
+    pairs = handbook.kept.each(
+        slugs, "onsager", lambda some: [_permittivity(handbook, slug) for slug in some]
+    )
+    return tuple(
+        Cloud(
+            label,
+            tuple(
+                pair
+                for slug, pair in pairs.items()
+                if pair and handbook.molecules[slug].is_associated == associated
+            ),
         )
-        found[structure.is_associated].append((eps.value, float(predicted)))
-    return (
-        Cloud("not associated", tuple(found[False])),
-        Cloud("associated", tuple(found[True])),
+        for label, associated in (("not associated", False), ("associated", True))
     )
 
 
+def _permittivity(handbook: Handbook, slug: str) -> Pair | None:
+    values = [
+        handbook.at(slug, key)
+        for key in ("relative_permittivity", "dipole_moment", "refractive_index", "molar_volume")
+    ]
+    known = [v for v in values if v is not None and v.basis != "estimated"]
+    if len(known) < len(values) or handbook.molecules[slug].dipole_limit is not None:
+        return None
+    eps, moment, index, volume = known
+    predicted = polarity.onsager_permittivity(
+        moment.value, index.value, volume.value, eps.temperature or handbook.reference
+    )
+    return eps.value, float(predicted)
+
+
 def _refractions(handbook: Handbook) -> Cloud:
-    points = []
-    for slug, structure in handbook.molecules.items():
-        refraction = handbook.at(slug, "molar_refraction")
-        if refraction is not None:
-            points.append((refraction.value, additive_refraction(structure.smiles)))
-    return Cloud("liquids of this handbook", tuple(points))
+    pairs = handbook.kept.each(
+        tuple(handbook.dataset.solvents),
+        "refraction",
+        lambda some: [_refraction(handbook, slug) for slug in some],
+    )
+    return Cloud("liquids of this handbook", tuple(pair for pair in pairs.values() if pair))
+
+
+def _refraction(handbook: Handbook, slug: str) -> Pair | None:
+    measured = handbook.at(slug, "molar_refraction")
+    if measured is None:
+        return None
+    return measured.value, additive_refraction(handbook.molecules[slug].smiles)
 
 
 def _moments() -> Cloud:

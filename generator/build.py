@@ -6,7 +6,16 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
-from generator import checks, evidence, exports, figures, pages, sidebyside
+from generator import (
+    accuracy,
+    checks,
+    evidence,
+    exports,
+    figures,
+    modelfigures,
+    pages,
+    sidebyside,
+)
 from generator.cache import Cache
 from generator.catalogue import catalogue
 from generator.cells import ERROR, NOTE
@@ -57,7 +66,8 @@ def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Sit
     """
     cache = Cache(cache_folder)
     handbook, findings = review(data, settings, cache)
-    drawn = figures.figures_of(handbook, cache)
+    models = modelfigures.draw(accuracy.comparisons(handbook), cache)
+    drawn = figures.figures_of(handbook, cache, models)
     drawn.prepare(tuple(handbook.dataset.solvents))
     return Site(
         pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),

@@ -35,20 +35,26 @@ __all__ = ["FigureInput", "Figures", "alt_text", "figure_input", "figures_of"]
 
 # Missing figures that are worth the start of another process.
 _ALONE = 8
+NONE: Mapping[str, str] = {}
 
 
 class Figures(Mapping[str, str]):
     """SVG text of every figure, by ``slug``, ``slug:scale``, ``slug:ribbon``, ``slug:structure``.
 
     What cannot be shown, because nothing is known of it, is left out. Curves and structures are
-    there once they have been asked for by ``prepare``.
+    there once they have been asked for by ``prepare``. ``whole`` are figures about the handbook as
+    a whole, by names of their own.
     """
 
     def __init__(
-        self, inputs: Mapping[str, FigureInput], cache: Cache, kept: Kept = NOTHING
+        self,
+        inputs: Mapping[str, FigureInput],
+        cache: Cache,
+        kept: Kept = NOTHING,
+        whole: Mapping[str, str] = NONE,
     ) -> None:
         self._inputs, self._cache, self._slugs = inputs, cache, tuple(inputs)
-        self._drawn: dict[str, str] = {}
+        self._drawn = dict(whole)
         known = kept.each(self._slugs, "kirkwood", lambda some: [inputs[s].kirkwood for s in some])
         self.quartiles = _quartiles([pair[0] for pair in known.values() if pair is not None])
         self._small: Mapping[str, Mapping[str, str | None]] = {
@@ -82,14 +88,14 @@ class Figures(Mapping[str, str]):
         return [_ribbon(self._inputs[slug]) for slug in slugs]
 
 
-def figures_of(handbook: Handbook, cache: Cache) -> Figures:
-    """The figures of a handbook."""
+def figures_of(handbook: Handbook, cache: Cache, whole: Mapping[str, str] = NONE) -> Figures:
+    """The figures of a handbook; ``whole`` are those about it as a whole."""
     inputs = handbook.kept.each(
         tuple(handbook.dataset.solvents),
         "figure",
         lambda slugs: [figure_input(handbook, slug) for slug in slugs],
     )
-    return Figures(inputs, cache, handbook.kept)
+    return Figures(inputs, cache, handbook.kept, whole)
 
 
 def _quartiles(numbers: Sequence[float]) -> tuple[float, ...]:

@@ -61,7 +61,8 @@ def render_all(
 
     ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
     polarity scale, ``slug:ribbon`` the temperature ribbon, ``slug:structure``
-    a drawing to take instead of the plain one. ``package`` is the parsed
+    a drawing to take instead of the plain one, ``accuracy:KEY`` a model against measured numbers.
+    ``package`` is the parsed
     ``datapackage.json``; without it the data dictionary lists no tables. ``known`` are the pages
     of the published site by path; those that would come out the same are given back.
     ``prepare`` is told which substances need their figures.
