@@ -10,7 +10,6 @@ from functools import lru_cache
 _BOM = "\ufeff"
 _INVISIBLE = "\u200b\u200c\u200d\u2060\ufeff"
 _LINE_END = re.compile(r"\r\n|\r|\n")
-_DELIMITERS = ",;\t"
 
 
 @dataclass(frozen=True, slots=True)
@@ -109,7 +108,7 @@ def parse(data: bytes, delimiter: str) -> CsvFile:
     )
 
 
-@lru_cache(maxsize=len(_DELIMITERS))
+@lru_cache(maxsize=4)
 def _cell(delimiter: str) -> re.Pattern[str]:
     plain = rf"[^{re.escape(delimiter)}\r\n]*"
     return re.compile(rf'"(?:[^"]|"")*"{plain}|{plain}')

@@ -15,7 +15,7 @@ from generator.schema import DESCRIPTION
 from generator.tablefiles import put, read_whole
 from generator.tables import HISTORY, Tables
 
-NOTE, ENTRY, NUMBER, CLASS, FINDING = KINDS = ("note", "entry", "number", "class", "finding")
+NOTE, ENTRY, NUMBER, CLASS, FINDING = ("note", "entry", "number", "class", "finding")
 
 
 @dataclass(frozen=True, slots=True)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime
-from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -89,19 +88,13 @@ def read(path: Path) -> dict[str, list[list[str]]]:
 
     try:
         book = CalamineWorkbook.from_path(path)
-        return {name: [_texts(row) for row in _sheet_rows(book, name)] for name in book.sheet_names}
+        found = {
+            name: book.get_sheet_by_name(name).to_python(skip_empty_area=False)
+            for name in book.sheet_names
+        }
     except (CalamineError, OSError) as error:
         raise ValueError(str(error)) from error
-
-
-def _sheet_rows(book: object, name: str) -> Iterable[Iterable[object]]:
-    sheet = book.get_sheet_by_name(name)  # type: ignore[attr-defined]
-    rows: Iterable[Iterable[object]] = sheet.to_python(skip_empty_area=False)
-    return rows
-
-
-def _texts(row: Iterable[object]) -> list[str]:
-    return [_text(value) for value in row]
+    return {name: [[_text(value) for value in row] for row in rows] for name, rows in found.items()}
 
 
 def _text(value: object) -> str:

@@ -101,34 +101,29 @@ def past(events: Iterable[Event]) -> tuple[Past, ...]:
     )
 
 
-def feed(
-    events: Sequence[Event], names: Mapping[str, str], laboratory: str, site: str = ""
-) -> bytes:
+def feed(events: Sequence[Event], names: Mapping[str, str], laboratory: str) -> bytes:
     """The revisions as an Atom feed (RFC 4287), the newest first.
 
-    ``names`` leads from short names to names. ``site`` is the address of the handbook; without
-    one the links are relative to the feed. Identifiers depend on what is recorded alone.
+    ``names`` leads from short names to names. Links are relative to the feed, so that it works
+    wherever the handbook stands; identifiers depend on what is recorded alone.
     """
     root = ET.Element("feed", xmlns=_ATOM)
     first = f"{events[0].date} {events[0].revision}" if events else laboratory
     own = uuid.uuid5(uuid.NAMESPACE_OID, f"solvent handbook, {first}")
     revisions = _revisions(events)
     newest = max((event.date for event in events), default="1970-01-01")
-    base = f"{site.rstrip('/')}/" if site else "../"
     _add(root, "id", own.urn)
     _add(root, "title", f"{laboratory}: what changed")
     _add(root, "updated", f"{newest}T00:00:00Z")
     _add(_add(root, "author"), "name", laboratory)
-    _add(root, "link", rel="alternate", type="text/html", href=f"{base}{PAGE}.html")
-    if site:
-        _add(root, "link", rel="self", type="application/atom+xml", href=f"{base}{FEED}")
+    _add(root, "link", rel="alternate", type="text/html", href=f"../{PAGE}.html")
     for revision, found in reversed(revisions.items()):
         day = found[0].date
         entry = _add(root, "entry")
         _add(entry, "id", uuid.uuid5(own, f"{day} {revision}").urn)
         _add(entry, "title", _title(revision, found, names))
         _add(entry, "updated", f"{day}T00:00:00Z")
-        address = f"{base}{PAGE}.html#{_anchor(revision)}"
+        address = f"../{PAGE}.html#{_anchor(revision)}"
         _add(entry, "link", rel="alternate", type="text/html", href=address)
         _content(entry, found, names)
     return (

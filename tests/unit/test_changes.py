@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import datetime
 import io
 import json
 import shutil
@@ -12,11 +13,12 @@ from collections.abc import Callable, Iterable
 from pathlib import Path
 
 import pytest
+import xlsxwriter
 from click.testing import CliRunner
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from generator import changes, changetext, history, versions
+from generator import changes, changetext, history, spreadsheet, versions, workbook
 from generator.changes import State, compare
 from generator.cli import main
 from generator.differences import CELL
@@ -339,3 +341,29 @@ def test_sheet_commands(lab: Path, tmp_path: Path) -> None:
     assert f"line {line}" not in stale.output
     wrong = run(main, ["sheet", "out", str(tmp_path / "tables.txt"), "--data", str(lab)])
     assert wrong.exit_code == 2
+
+
+def test_sheet_in_shows_then_writes_then_tells_what_the_check_says(
+    lab: Path, tmp_path: Path
+) -> None:
+    """A CAS number that a program took for a date is written as it came, and named."""
+    book, saved = tmp_path / "tables.ods", tmp_path / "saved.xlsx"
+    workbook.write(lab, book)
+    made = xlsxwriter.Workbook(str(saved))
+    for name, rows in spreadsheet.read(book).items():
+        page = made.add_worksheet(name)
+        for i, row in enumerate(rows):
+            for j, text in enumerate(row):
+                day = datetime.date(2067, 6, 1) if text == "67-64-1" else None
+                date = made.add_format({"num_format": "d/m/yyyy"}) if day else None
+                page.write_datetime(i, j, day, date) if day else page.write_string(i, j, text)
+    made.close()
+    run, before = CliRunner().invoke, (lab / "solvents.csv").read_bytes()
+    tried = run(main, ["sheet", "in", str(saved), "--data", str(lab), "--dry-run"])
+    assert tried.exit_code == 1
+    assert "cas: 67-64-1 → 2067-06-01" in tried.output
+    assert "column cas" in tried.output.partition("then have errors")[2]
+    assert (lab / "solvents.csv").read_bytes() == before
+    done = run(main, ["sheet", "in", str(saved), "--data", str(lab)])
+    assert done.exit_code == 1
+    assert (lab / "solvents.csv").read_bytes() == before.replace(b"67-64-1", b"2067-06-01")

@@ -78,7 +78,7 @@ def test_each_datasheet_carries_its_own_revisions(handbook: Handbook) -> None:
 
 def test_feed_is_valid_atom() -> None:
     """RFC 4287: what sections 4.1.1 and 4.1.2 ask of a feed and of its entries."""
-    root = ET.fromstring(feed(EVENTS, NAMES, "Laboratory & co", "https://example.org/book/"))
+    root = ET.fromstring(feed(EVENTS, NAMES, "Laboratory & co"))
     assert root.tag == f"{{{ATOM['a']}}}feed"
     for part in ("id", "title", "updated"):
         assert len(root.findall(f"a:{part}", ATOM)) == 1
@@ -102,7 +102,7 @@ def test_feed_is_valid_atom() -> None:
         link = entry.find("a:link", ATOM)
         assert link is not None
         assert link.get("rel") == "alternate"
-        assert str(link.get("href")).startswith("https://example.org/book/changes.html#revision-")
+        assert str(link.get("href")).startswith("../changes.html#revision-")
         datetime.fromisoformat(entry.findtext("a:updated", "", ATOM))
     text = "".join(entries[1].itertext())
     assert "Looked up <again> & found" in text
@@ -121,10 +121,7 @@ def test_feed_ids_stay_when_revisions_are_added() -> None:
     assert feed(EVENTS, NAMES, "One") == feed(EVENTS, NAMES, "One")
 
 
-def test_feed_without_an_address_or_a_revision() -> None:
-    root = ET.fromstring(feed(EVENTS, NAMES, "Laboratory"))
-    links = [str(link.get("href")) for link in root.iter(f"{{{ATOM['a']}}}link")]
-    assert all(link.startswith("../changes.html") for link in links)
+def test_feed_of_nothing_is_a_feed() -> None:
     empty = ET.fromstring(feed((), {}, "Laboratory"))
     assert empty.findtext("a:updated", "", ATOM)
     assert not empty.findall("a:entry", ATOM)
