@@ -138,7 +138,7 @@ class Way:
     anchor: str
     name: str
     symbol: Markup
-    formula: str
+    formula: Markup
     method: str
     inputs: tuple[WayInput, ...]
 

@@ -13,16 +13,7 @@ from generator.catalogue import Catalogue, anchor
 from generator.listings import CurveForm, Customary, Method, ModelCheck, Rules
 from generator.metrics import POLAR_ABOVE, SURELY_POLAR, UNPOLAR_BELOW
 from generator.quantities import QUANTITIES
-from generator.wording import symbol_markup, unit_label
-
-
-def math_markup(formula: str, *, block: bool = True) -> Markup:
-    """A LaTeX formula as MathML, which browsers draw without any script."""
-    from latex2mathml.converter import convert
-
-    if not formula:
-        return Markup("")
-    return Markup(convert(formula, display="block" if block else "inline"))
+from generator.wording import math_markup, symbol_markup, unit_label
 
 
 def methods() -> tuple[tuple[Method, ...], tuple[Method, ...]]:

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 from generator.catalogue import Links, Rows
 from generator.contexts import Citation, CurveRow, Link, SourceGroup, SourceValue
 from generator.dataset import Correction, Correlation, Measurement, concerns
+from generator.explain import decision_at, note
 from generator.metrics import Handbook
 from generator.quantities import QUANTITIES
-from generator.reconcile import Candidate, decide
-from generator.values import LiquidRange
+from generator.reconcile import Candidate
 from generator.wording import (
     celsius_label,
     printed_label,
@@ -30,14 +31,12 @@ Trail = Mapping[tuple[str, int], Candidate]
 
 def trail(handbook: Handbook, slug: str) -> Trail:
     """What became of each row at the substance's own reference, by file and line."""
-    liquid = handbook.liquid_range(slug)
     found: dict[tuple[str, int], Candidate] = {}
     for key in KEY_VALUES:
-        timed = QUANTITIES[key].needs_temperature
-        at = handbook.own_reference(slug) if timed else None
-        within = liquid if timed else LiquidRange(None, None)
-        for candidate in decide(handbook.dataset, slug, key, at, within).candidates:
-            found[candidate.file, candidate.line] = candidate
+        done = note(handbook, slug, handbook.at(slug, key))
+        for candidate in decision_at(handbook, slug, key).candidates:
+            told = replace(candidate, remark=done) if done else candidate
+            found[candidate.file, candidate.line] = told
     return found
 
 

@@ -9,12 +9,11 @@ from markupsafe import Markup
 
 from generator.catalogue import Links, anchor
 from generator.contexts import Link, Way, WayInput
-from generator.explain import plain_formula
 from generator.metrics import DEPENDS, Handbook
 from generator.quantities import QUANTITIES
 from generator.uncertainty import format_value
 from generator.values import Value
-from generator.wording import symbol_markup
+from generator.wording import math_markup, symbol_markup
 
 
 def way_anchor(key: str) -> str:
@@ -53,7 +52,7 @@ def ways(
                 way_anchor(key),
                 quantity.name,
                 symbol_markup(quantity.symbol),
-                plain_formula(quantity.formula),
+                math_markup(quantity.formula, block=False),
                 links.method(key),
                 rows,
             )

@@ -117,6 +117,16 @@ def script_json(content: object) -> Markup:
     return Markup(text.replace("<", "\\u003c"))
 
 
+@lru_cache(maxsize=128)
+def math_markup(formula: str, *, block: bool = True) -> Markup:
+    """A LaTeX formula as MathML, which browsers draw without any script."""
+    from latex2mathml.converter import convert
+
+    if not formula:
+        return Markup("")
+    return Markup(convert(formula, display="block" if block else "inline"))
+
+
 def labelled(svg: str, text: str) -> Markup:
     """A drawing that says what it shows to those who do not see it."""
     return Markup(svg.replace('role="img"', f'role="img" aria-label="{escape(text)}"', 1))
