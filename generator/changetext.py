@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from typing import Any
@@ -173,8 +174,11 @@ def _celsius(temperature: float | None) -> float | None:
     return None if temperature is None else round(temperature - ZERO_CELSIUS, 6)
 
 
-def _plain(value: Value | None) -> dict[str, float] | None:
-    return None if value is None else {"value": value.value, "uncertainty": value.uncertainty}
+def _plain(value: Value | None) -> dict[str, float | None] | None:
+    if value is None:
+        return None
+    own = value.uncertainty if math.isfinite(value.uncertainty) else None
+    return {"value": value.value, "uncertainty": own}
 
 
 # --- for the record -----------------------------------------------------------------------------
