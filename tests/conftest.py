@@ -6,13 +6,14 @@ import csv
 import functools
 import http.server
 import os
+import re
 import shutil
 import subprocess
 import sys
 import threading
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import pytest
 
@@ -94,7 +95,19 @@ def few(few_tables: Path) -> Path:
     return few_tables.parent
 
 
+def content_policy() -> tuple[str, str]:
+    """The header that README.md gives: its name and its content."""
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    (line,) = re.findall(r"^Content-Security-Policy: .*$", text, flags=re.MULTILINE)
+    name, _, content = line.partition(": ")
+    return name, content
+
+
 class _Quiet(http.server.SimpleHTTPRequestHandler):
+    def end_headers(self) -> None:
+        self.send_header(*content_policy())
+        super().end_headers()
+
     def log_message(self, format: str, *args: object) -> None:  # noqa: A002
         pass
 
@@ -128,14 +141,17 @@ def chromium() -> Iterator[Browser]:
 
 
 @pytest.fixture
-def browser_page(chromium: Browser, site_url: str, built_site: Path) -> Iterator[Page]:
-    """A fresh page at the site's address; relative addresses work in ``page.goto``.
+def open_page(chromium: Browser, site_url: str, built_site: Path) -> Iterator[Callable[..., Page]]:
+    """Opens fresh pages; relative addresses work in ``page.goto``.
 
-    A request to anywhere else is stopped, and fails the test, as does an error on the console.
+    ``base_url`` is the served site unless given; further options are those of a browser context.
+    A request to anywhere else is stopped, and fails the test, as does an error on the console,
+    which is also where a browser reports what the policy of README.md forbids.
     """
     allowed = (site_url, built_site.as_uri(), "data:", "blob:")
     strangers: list[str] = []
     errors: list[str] = []
+    pages: list[Page] = []
 
     def guard(route: Route) -> None:
         if route.request.url.startswith(allowed):
@@ -144,15 +160,34 @@ def browser_page(chromium: Browser, site_url: str, built_site: Path) -> Iterator
             strangers.append(route.request.url)
             route.abort()
 
-    context = chromium.new_context(base_url=site_url)
-    context.route("**/*", guard)
-    page = context.new_page()
-    page.on("console", lambda m: errors.append(m.text) if m.type == "error" else None)
-    page.on("pageerror", lambda error: errors.append(str(error)))
-    page.set_default_timeout(10_000)
-    yield page
-    # Let anything still on its way be seen before judging.
-    page.wait_for_load_state("networkidle")
-    context.close()
+    def opened(base_url: str = site_url, **options: Any) -> Page:
+        context = chromium.new_context(base_url=base_url, **options)
+        context.route("**/*", guard)
+        page = context.new_page()
+        page.on("console", lambda m: errors.append(m.text) if m.type == "error" else None)
+        page.on("pageerror", lambda error: errors.append(str(error)))
+        page.set_default_timeout(10_000)
+        pages.append(page)
+        return page
+
+    yield opened
+    for page in pages:
+        # Let anything still on its way be seen before judging.
+        page.wait_for_load_state("networkidle")
+        page.context.close()
     assert not strangers, f"requests that leave the site: {strangers}"
     assert not errors, f"errors on the console: {errors}"
+
+
+@pytest.fixture
+def browser_page(open_page: Callable[..., Page]) -> Page:
+    """A fresh page of the served site."""
+    return open_page()
+
+
+@pytest.fixture(params=["http", "file"])
+def page_either_way(
+    request: pytest.FixtureRequest, open_page: Callable[..., Page], built_site: Path
+) -> Page:
+    """A fresh page of the site, once from a server and once from the disk."""
+    return open_page() if request.param == "http" else open_page(f"{built_site.as_uri()}/")

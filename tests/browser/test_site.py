@@ -14,8 +14,6 @@ if TYPE_CHECKING:
 
 pytestmark = [pytest.mark.browser, pytest.mark.filterwarnings("default::ResourceWarning")]
 
-PHONE = {"width": 360, "height": 740}
-
 
 def _row(project: Path, slug: str) -> dict[str, str]:
     with (project / "data" / "solvents.csv").open(encoding="utf-8", newline="") as file:
@@ -84,27 +82,3 @@ def test_site_search_gives_a_whole_cas_number_first(
     link = first.locator("a").first.evaluate("a => a.href")
     browser_page.goto(link)
     assert row["name"].lower() in browser_page.locator("h1").inner_text().lower()
-
-
-def _kinds_of_page(site: Path) -> list[str]:
-    """Every page but the datasheets, and the datasheet with the longest name."""
-    pages = [p for p in site.rglob("*.html") if p.name != "404.html"]
-    folders: dict[Path, list[Path]] = {}
-    for path in pages:
-        folders.setdefault(path.parent, []).append(path)
-    datasheets = max(folders.values(), key=len)
-    longest = max(datasheets, key=lambda p: len(p.name))
-    assert len(datasheets) >= 100
-    kept = [p for p in pages if p not in datasheets] + [longest]
-    return sorted(p.relative_to(site).as_posix() for p in kept)
-
-
-def test_no_page_scrolls_sideways_on_a_phone(browser_page: Page, built_site: Path) -> None:
-    browser_page.set_viewport_size(PHONE)
-    too_wide = {}
-    for address in _kinds_of_page(built_site):
-        browser_page.goto(address)
-        width = browser_page.evaluate("document.documentElement.scrollWidth")
-        if width > PHONE["width"]:
-            too_wide[address] = width
-    assert not too_wide
