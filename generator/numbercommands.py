@@ -1,4 +1,4 @@
-"""Commands about single numbers: how one came about."""
+"""Commands about numbers: how one came about, and tables of chosen ones."""
 
 from __future__ import annotations
 
@@ -55,3 +55,51 @@ def explain(
             click.echo(line)
     if way.value is None:
         sys.exit(1)
+
+
+@click.command()
+@click.argument("quantities", metavar="QUANTITY...", nargs=-1, required=True)
+@DATA
+@click.option("--temperature", type=float, default=25.0, show_default=True, help="In °C.")
+@click.option("--family", default="", help="Only families with this word in their name.")
+@click.option("--uncertainties", is_flag=True, help="The standard uncertainty beside each value.")
+@click.option(
+    "--out",
+    type=click.Path(path_type=Path, dir_okay=False),
+    help="A CSV file to write instead of the table on the terminal.",
+)
+def table(
+    quantities: tuple[str, ...],
+    data: Path,
+    temperature: float,
+    family: str,
+    uncertainties: bool,
+    out: Path | None,
+) -> None:
+    """A table of chosen quantities at one temperature, the first one sorted downwards.
+
+    QUANTITY is a name, key or symbol.
+    """
+    from generator import frames
+    from generator.dataset import load_dataset
+    from generator.explain import find_quantity
+    from generator.metrics import Settings, compute
+    from generator.selection import OrderError
+
+    try:
+        keys = [find_quantity(quantity) for quantity in quantities]
+        handbook = compute(load_dataset(data), Settings(temperatures_c=(temperature,)))
+    except DatasetError as error:
+        report(error.problems)
+        sys.exit(1)
+    except OrderError as error:
+        raise click.UsageError(str(error)) from error
+    made = frames.table(
+        frames.values(handbook), keys, temperature, family=family, uncertainties=uncertainties
+    )
+    if out is None:
+        shown = made.to_string(float_format="{:.5g}".format, na_rep="–", index_names=False)
+        click.echo(shown if len(made) else "No substance has any of them there.")
+    else:
+        made.to_csv(out)
+        click.echo(f"{out}: {len(made)} substances")
