@@ -192,10 +192,10 @@ def derivative(form: str, coefficients: Sequence[float], temperature: ArrayLike)
 def turning_point(
     form: str, coefficients: Sequence[float], low: float, high: float
 ) -> float | None:
-    """Temperature [K] between ``low`` and ``high`` [K] where a curve has its extremum, or None.
+    """Temperature [K] in a range where a curve has its extremum, or None.
 
-    ``form`` [name in FORMS], ``coefficients`` [as the form asks]. The outermost one where there
-    are several.
+    ``form`` [name in FORMS], ``coefficients`` [as the form asks], the range from ``low`` [K] to
+    ``high`` [K]. The outermost one where there are several.
     """
     grid = np.linspace(low, high, 201)
     slopes = derivative(form, coefficients, grid)
