@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -21,6 +21,7 @@ from generator.catalogue import catalogue
 from generator.cells import ERROR, NOTE
 from generator.dataset import dataset_from
 from generator.errors import DatasetError, Problem
+from generator.kept import code, kept
 from generator.metrics import Handbook, Settings, compute
 from generator.schema import read_package
 from generator.tables import read_tables
@@ -37,44 +38,72 @@ class Site:
 
 
 def inspect(
-    data: Path, settings: Settings, cache: Cache | None = None
+    data: Path,
+    settings: Settings,
+    cache: Cache | None = None,
+    say: Callable[[str], None] = lambda stage: None,
 ) -> tuple[Handbook, tuple[Problem, ...]]:
     """The numbers and all there is to say about the tables, notes on how they were read included.
 
-    Raises ``DatasetError``, which tells all of it, when some of it is an error.
+    ``say`` is told each stage before it starts. Raises ``DatasetError``, which tells all there is
+    to say, when some of it is an error.
     """
+    cache = cache or Cache(None)
+    say("Reading and checking the tables")
     tables = read_tables(data)
     structural = checks.check_tables(tables, cache)
     if any(problem.severity == ERROR for problem in structural):
         raise DatasetError(structural)
-    handbook = compute(dataset_from(tables), settings, cache)
-    return handbook, (*structural, *evidence.check_handbook(handbook, cache))
+    dataset = dataset_from(tables)
+    say(f"Working out the numbers of {len(dataset.solvents)} substances")
+    common = code(), settings, sorted(dataset.usual.items())
+    handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
+    say("Cross-checking them")
+    suspects = evidence.check_handbook(handbook, cache)
+    handbook.kept.save(forget=False)
+    return handbook, (*structural, *suspects)
 
 
 def review(
-    data: Path, settings: Settings, cache: Cache | None = None
+    data: Path,
+    settings: Settings,
+    cache: Cache | None = None,
+    say: Callable[[str], None] = lambda stage: None,
 ) -> tuple[Handbook, tuple[Problem, ...]]:
     """The numbers and every finding that is published. Raises ``DatasetError`` as ``inspect``."""
-    handbook, findings = inspect(data, settings, cache)
+    handbook, findings = inspect(data, settings, cache, say)
     return handbook, tuple(finding for finding in findings if finding.severity != NOTE)
 
 
-def build_site(data: Path, settings: Settings, cache_folder: Path | None) -> Site:
+def build_site(
+    data: Path,
+    settings: Settings,
+    cache_folder: Path | None,
+    known: Mapping[str, pages.Page] = pages.NO_PAGES,
+    say: Callable[[str], None] = lambda stage: None,
+) -> Site:
     """Make the whole handbook from the tables in ``data``.
 
-    Raises ``DatasetError`` with every problem when the tables cannot be used.
+    ``known`` are the pages of the published site by path: those that would come out the same are
+    given back without a body. Raises ``DatasetError`` with every problem when the tables cannot
+    be used.
     """
     cache = Cache(cache_folder)
-    handbook, findings = review(data, settings, cache)
+    handbook, findings = review(data, settings, cache, say)
     models = modelfigures.draw(accuracy.comparisons(handbook), cache)
     drawn = figures.figures_of(handbook, cache, models)
-    drawn.prepare(tuple(handbook.dataset.solvents))
-    return Site(
-        pages=pages.render_all(handbook, findings, settings, drawn, read_package(data)),
-        files={
-            **exports.exports(handbook, findings, data),
-            sidebyside.PATH: sidebyside.data_script(catalogue(handbook, findings)),
-        },
-        findings=findings,
-        handbook=handbook,
-    )
+
+    def prepare(slugs: Sequence[str]) -> None:
+        if slugs:
+            say(f"Writing the datasheets of {len(slugs)} substances")
+            drawn.prepare(slugs)
+
+    say("Writing tables and files")
+    made = pages.render_all(handbook, findings, settings, drawn, read_package(data), known, prepare)
+    files = {
+        **exports.exports(handbook, findings, data),
+        sidebyside.PATH: sidebyside.data_script(catalogue(handbook, findings)),
+    }
+    handbook.kept.save(forget=True)
+    cache.sweep()
+    return Site(pages=made, files=files, findings=findings, handbook=handbook)

@@ -29,6 +29,34 @@ def digest(*parts: object) -> str:
     return hashlib.sha256(joined.encode()).hexdigest()[:_KEY_BYTES]
 
 
+def tree(top: Path) -> list[tuple[str, str]]:
+    """Path and hash of every file below a folder, or of one file, in order.
+
+    Files under a dot or ``~`` belong to editors and other programs and are passed over.
+    """
+    if not top.is_dir():
+        return [("", hash_of(top))]
+    return [(path.relative_to(top).as_posix(), hash_of(path)) for path in sorted(files_in(top))]
+
+
+def files_in(top: Path) -> Iterator[Path]:
+    """Every file below a folder, those passed over that belong to other programs."""
+    for folder, inner, names in os.walk(top):
+        inner[:] = [name for name in inner if not name.startswith((".", "__pycache__"))]
+        for name in names:
+            if not name.startswith((".", "~")):
+                yield Path(folder, name)
+
+
+def hash_of(path: Path) -> str:
+    """Hash of the content of a file, "" where it cannot be read."""
+    try:
+        with path.open("rb") as file:
+            return hashlib.file_digest(file, "sha256").hexdigest()
+    except OSError:
+        return ""
+
+
 class Cache:
     """A folder of results. Without a folder nothing is kept."""
 

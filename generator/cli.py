@@ -12,8 +12,9 @@ from pathlib import Path
 
 import click
 
+from generator.buildcommands import build
 from generator.errors import DatasetError, Problem
-from generator.numbercommands import explain
+from generator.numbercommands import explain, table
 from generator.tablecommands import CONFIG, DATA, changes_, report, sheet
 
 
@@ -22,9 +23,11 @@ def main() -> None:
     """Check the solvent tables, let them grow, and build the handbook from them."""
 
 
+main.add_command(build)
 main.add_command(sheet)
 main.add_command(changes_)
 main.add_command(explain)
+main.add_command(table)
 
 
 @main.command()
@@ -85,30 +88,6 @@ def add(names: tuple[str, ...], data: Path, dry_run: bool, all_liquids: bool) ->
         sys.exit(1)
     if not dry_run:
         additions.apply(plan)
-
-
-@main.command()
-@CONFIG
-@click.option(
-    "--site",
-    type=click.Path(path_type=Path, file_okay=False),
-    default=Path("site"),
-    show_default=True,
-    help="Folder the finished handbook is put in.",
-)
-def build(config: Path, site: Path) -> None:
-    """Check the tables and build the handbook; the last good one stays if anything fails."""
-    from generator.publish import publish
-    from generator.ready import Refused, run_mkdocs
-
-    start = time.monotonic()
-    try:
-        publish(site, lambda folder: run_mkdocs(config, folder))
-    except (Refused, click.Abort) as error:
-        click.echo(str(error), err=True)
-        click.echo(f"Nothing was published; {site} is as it was.", err=True)
-        sys.exit(1)
-    click.echo(f"{site}: built in {time.monotonic() - start:.1f} s")
 
 
 @main.command("print")

@@ -8,13 +8,16 @@ works out one substance anew, and a build from kept results is the build from no
 from __future__ import annotations
 
 import pickle
+import sys
 from collections.abc import Callable, Iterator, Mapping, Sequence
+from pathlib import Path
 from typing import Any, Generic, TypeVar
 
-from generator.cache import Cache, Pack, digest
+from generator.cache import Cache, Pack, digest, tree
 from generator.parallel import shared_out
 
 _Made = TypeVar("_Made")
+_PACKAGE = Path(__file__).parent
 # Fewer substances than this for each helper are not worth starting one.
 LEAST = 25
 
@@ -85,6 +88,27 @@ class _Loaded(Mapping[str, _Made], Generic[_Made]):
 
     def __len__(self) -> int:
         return len(self._order)
+
+
+def code() -> str:
+    """Hash of this package, of the Python that runs it, and of what is installed beside it.
+
+    Templates are left out: no number depends on them.
+    """
+    installed = sorted(
+        entry.name
+        for folder in dict.fromkeys(sys.path)
+        if Path(folder).is_dir()
+        for entry in Path(folder).iterdir()
+        if entry.name.endswith(".dist-info")
+    )
+    parts = [part for part in tree(_PACKAGE) if not part[0].startswith("templates/")]
+    return digest(sys.version, installed, parts)
+
+
+def templates() -> str:
+    """Hash of the templates."""
+    return digest(tree(_PACKAGE / "templates"))
 
 
 def kept(cache: Cache, revisions: Mapping[str, str], *common: object) -> Kept:

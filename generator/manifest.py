@@ -11,48 +11,41 @@ import hashlib
 import json
 import os
 import shutil
-import sys
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import asdict, dataclass, field
 from pathlib import Path
 from typing import Any
 
-from generator.cache import Cache, digest
+from generator.cache import Cache, digest, files_in, hash_of, tree
+from generator.kept import code, templates
 from generator.parallel import processors
 
 _KIND = "site"
-_PACKAGE = Path(__file__).parent
 
 
 @dataclass(frozen=True, slots=True)
 class Manifest:
     """One finished site.
 
-    ``inputs`` is the hash of everything under ``watched``, ``files`` the hash of each file of the
-    site by its path. ``pages`` is what the build itself wants to know again of each page.
+    ``watched`` are the files and folders it was made from, ``inputs`` is a hash of all of them and
+    ``frame`` of those that every page depends on; ``files`` holds the hash of each file of the
+    site by its path; ``pages`` what the build itself wants to know again of each page, and
+    ``summary`` what there is to tell of the whole.
     """
 
+    watched: Sequence[str] = ()
     inputs: str = ""
-    watched: tuple[str, ...] = ()
+    frame: str = ""
     files: Mapping[str, str] = field(default_factory=dict)
     pages: Mapping[str, Any] = field(default_factory=dict)
-
-
-NONE = Manifest()
-"""Nothing is known of an earlier site."""
+    summary: Mapping[str, Any] = field(default_factory=dict)
 
 
 def read(cache: Cache, site: Path) -> Manifest:
     """What is known of the site in a folder."""
     stored = cache.get(_KIND, _key(site))
-    if stored is None:
-        return NONE
-    try:
-        known = json.loads(stored)
-        return Manifest(known["inputs"], tuple(known["watched"]), known["files"], known["pages"])
-    except (ValueError, KeyError, TypeError):  # of another version
-        return NONE
+    return Manifest() if stored is None else Manifest(**json.loads(stored))
 
 
 def write(cache: Cache, site: Path, made: Manifest) -> None:
@@ -61,62 +54,27 @@ def write(cache: Cache, site: Path, made: Manifest) -> None:
 
 
 def _key(site: Path) -> str:
-    return digest(str(site.resolve()))
-
-
-# ---- what a site is made from ------------------------------------------------------------------
+    # Another version of this class keeps its records apart.
+    return digest(str(site.resolve()), Manifest.__slots__)
 
 
 def fingerprint(watched: Iterable[str | Path]) -> str:
     """Hash of files, of folders with everything in them, of this code and the packages it uses."""
-    return digest(code(), [(str(path), _tree(Path(path))) for path in watched])
-
-
-def code() -> str:
-    """Hash of this package, of the Python that runs it, and of what is installed beside it."""
-    installed = sorted(
-        entry.name
-        for folder in dict.fromkeys(sys.path)
-        if Path(folder).is_dir()
-        for entry in Path(folder).iterdir()
-        if entry.name.endswith(".dist-info")
-    )
-    day = os.environ.get("SOURCE_DATE_EPOCH", "")
-    return digest(sys.version, installed, day, _tree(_PACKAGE))
-
-
-def _tree(top: Path) -> list[tuple[str, str]]:
-    """Path and hash of every file that counts, in order; hidden ones belong to other programs."""
-    if top.is_file():
-        return [("", _hash_of(top))]
-    return [(path.relative_to(top).as_posix(), _hash_of(path)) for path in sorted(_files(top))]
-
-
-def _files(top: Path) -> Iterator[Path]:
-    for folder, inner, names in os.walk(top):
-        inner[:] = [name for name in inner if not name.startswith((".", "__pycache__"))]
-        for name in names:
-            if not name.startswith((".", "~")):
-                yield Path(folder, name)
-
-
-def _hash_of(path: Path) -> str:
-    try:
-        with path.open("rb") as file:
-            return hashlib.file_digest(file, "sha256").hexdigest()
-    except OSError:
-        return ""
-
-
-# ---- what it holds -----------------------------------------------------------------------------
+    day = os.environ.get("SOURCE_DATE_EPOCH")
+    return digest(day, code(), templates(), [(str(path), tree(Path(path))) for path in watched])
 
 
 def contents(site: Path) -> dict[str, str]:
     """Path and hash of every file of a site, those under a dot left out."""
-    paths = {path.relative_to(site).as_posix(): path for path in _files(site)}
+    paths = {path.relative_to(site).as_posix(): path for path in files_in(site)}
     # Hashing lets go of the interpreter: threads are enough.
     with ThreadPoolExecutor(processors()) as pool:
-        return dict(sorted(zip(paths, pool.map(_hash_of, paths.values()), strict=True)))
+        return dict(sorted(zip(paths, pool.map(hash_of, paths.values()), strict=True)))
+
+
+def same(content: bytes, recorded: str | None) -> bool:
+    """Whether a file with this content has the hash on record."""
+    return hashlib.sha256(content).hexdigest() == recorded
 
 
 def take_over(site: Path, fresh: Path, paths: Iterable[str]) -> None:

@@ -2,23 +2,24 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from mkdocs.config import config_options as option
-from mkdocs.config import load_config
 from mkdocs.config.base import Config, ValidationError
 from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.exceptions import PluginError
 from mkdocs.livereload import LiveReloadServer
 from mkdocs.plugins import BasePlugin, CombinedEvent, event_priority
-from mkdocs.structure.files import File, Files
+from mkdocs.structure.files import Files
 
 from generator import ready
 from generator.build import Site, build_site
 from generator.errors import DatasetError
 from generator.metrics import Settings
+from generator.pages import NO_PAGES, Page
 from generator.units import ZERO_CELSIUS
 
 
@@ -70,10 +71,8 @@ class Configured:
 
 def configured(config_file: Path) -> Configured:
     """Read the settings of a handbook. Raises ``ready.Refused`` when they cannot be used."""
-    config = load_config(str(config_file))
-    plugin = config.plugins.get("datasheets")
-    if not isinstance(plugin, DatasheetsPlugin):
-        raise PluginError(f"{config_file} does not name the plugin datasheets")
+    config = ready.load(config_file)
+    plugin = plugin_of(config)
     return Configured(
         data=plugin.folder(config),
         settings=settings_of(plugin.config),
@@ -82,41 +81,77 @@ def configured(config_file: Path) -> Configured:
     )
 
 
+def plugin_of(config: MkDocsConfig) -> DatasheetsPlugin:
+    """This plugin among those of a handbook. Raises ``ready.Refused`` when it is not named."""
+    plugin = config.plugins.get("datasheets")
+    if not isinstance(plugin, DatasheetsPlugin):
+        raise PluginError(f"{config.config_file_path} does not name the plugin datasheets")
+    return plugin
+
+
 class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
     """Hands the generated pages and files to MkDocs."""
 
-    _site: Site
+    _site: Site | None = None
+    _standing: Collection[str] = ()
+
+    def __init__(self) -> None:
+        self.places: dict[str, str] = {}
+        """Where in the site each generated page is, by its path."""
 
     def folder(self, config: MkDocsConfig) -> Path:
         """The folder of the tables, beside mkdocs.yml."""
         return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data_
 
+    def make(
+        self,
+        config: MkDocsConfig,
+        known: Mapping[str, Page] = NO_PAGES,
+        say: Callable[[str], None] = lambda stage: None,
+    ) -> Site:
+        """The site after the tables, see ``build.build_site``; raises ``DatasetError``."""
+        cache = Path(config.config_file_path or "mkdocs.yml").resolve().parent / ".cache"
+        return build_site(self.folder(config), settings_of(self.config), cache, known, say)
+
+    def hand_over(self, site: Site, standing: Collection[str]) -> None:
+        """Take pages and files made beforehand; those files that stand are not written."""
+        self._site, self._standing = site, standing
+
+    def on_config(self, config: MkDocsConfig) -> MkDocsConfig:
+        """Without the address of the site its map would be empty, and dated."""
+        if not config.site_url:
+            config.theme.static_templates.discard("sitemap.xml")
+        return config
+
     def on_pre_build(self, *, config: MkDocsConfig) -> None:
         """Make everything before MkDocs empties the site, so that bad data leave it untouched."""
-        folder = self.folder(config)
-        try:
-            self._site = build_site(folder, settings_of(self.config), folder.parent / ".cache")
-        except DatasetError as error:
-            raise PluginError(str(error)) from error
+        if self._site is None:
+            try:
+                self._site = self.make(config)
+            except DatasetError as error:
+                raise PluginError(str(error)) from error
         config.extra["data_revision"] = self._site.handbook.dataset.revision
 
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
         """Add the generated pages and files."""
+        assert self._site is not None
         for page in self._site.pages:
-            ready.add_page(page, config, files)
+            self.places[page.path] = ready.add_page(page, config, files)
         for path, content in self._site.files.items():
-            files.append(File.generated(config, path, content=content))
+            ready.add_file(path, content, config, files, stands=path in self._standing)
         return files
 
     @event_priority(100)
     def _add_search_entries(self, *, config: MkDocsConfig) -> None:
         """Write the search entries before the theme writes its index."""
+        assert self._site is not None
         ready.add_search_entries(self._site.pages, config)
 
     @event_priority(-100)
     def _write_index_as_script(self, *, config: MkDocsConfig) -> None:
         """Once the theme has written it."""
         ready.write_index_as_script(config)
+        self._site = None  # a preview makes it anew
 
     on_post_build = CombinedEvent(_add_search_entries, _write_index_as_script)
 

@@ -28,10 +28,11 @@ class PublishError(Exception):
     """Nothing was published; the message says why in one line."""
 
 
-def publish(site: Path, make: Callable[[Path], None]) -> None:
+def publish(site: Path, make: Callable[[Path], bool]) -> bool:
     """Let ``make`` fill a new folder beside ``site``, then exchange the two.
 
-    When ``make`` raises, ``site`` stays as it was and the half-made folder is removed. Raises
+    When ``make`` raises, or returns False because there is nothing to do, ``site`` stays as it
+    was and the new folder is removed. Returns whether something was published. Raises
     ``PublishError`` when another build is at work, or when ``site`` is not the place for one.
     """
     site = site.resolve()
@@ -45,10 +46,12 @@ def publish(site: Path, make: Callable[[Path], None]) -> None:
         _refuse_foreign(site)
         fresh = Path(tempfile.mkdtemp(prefix=f".{site.name}-new-", dir=site.parent))
         try:
-            make(fresh)
+            if not make(fresh):
+                return False
             fresh.chmod(stat.S_IMODE(site.stat().st_mode) if site.exists() else 0o755)
             _keep_hidden(site, fresh)
             _swap(fresh, site)
+            return True
         finally:
             shutil.rmtree(fresh, ignore_errors=True)
 

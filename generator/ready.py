@@ -1,11 +1,14 @@
 """Where the handbook reaches into MkDocs beyond its documented hooks; nowhere else does.
 
 A page that is already HTML passes through MkDocs without Markdown, and its search entry is
-written directly instead of being parsed out of the page again.
+written directly instead of being parsed out of the page again. Pages and files that stand
+unchanged in the published site are known to MkDocs, and are neither rendered nor written.
 """
 
 from __future__ import annotations
 
+import logging
+import os
 from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -15,7 +18,7 @@ from mkdocs.structure.files import File, InclusionLevel
 from mkdocs.structure.pages import Page
 from mkdocs.structure.toc import AnchorLink, TableOfContents
 
-# What `run_mkdocs` raises when MkDocs refuses.
+# What `load` and `run` raise when MkDocs refuses.
 Refused = MkDocsException
 
 if TYPE_CHECKING:
@@ -25,12 +28,23 @@ if TYPE_CHECKING:
     from generator.pages import Page as FinishedPage
 
 
+class ReadyFile(File):
+    """A generated file. One that ``stands`` in the published site is not written again."""
+
+    stands = False
+
+    def is_modified(self) -> bool:
+        """Whether MkDocs, when it looks for changes, shall render and write it."""
+        return not self.stands
+
+
 class ReadyPage(Page):
     """A page whose body and table of contents are finished before MkDocs sees it."""
 
     def __init__(self, finished: FinishedPage, file: File, config: MkDocsConfig) -> None:
         super().__init__(finished.title, file, config)
         self._finished = finished
+        self.present_anchor_ids = {anchor for _, anchor, _ in finished.toc}
 
     def read_source(self, config: MkDocsConfig) -> None:
         """There is no source to read; the search entry is written separately."""
@@ -45,7 +59,6 @@ class ReadyPage(Page):
     def render(self, config: MkDocsConfig, files: Files) -> None:
         """Hand over the finished body; no Markdown is run."""
         self.content = self._finished.html
-        self.present_anchor_ids = {anchor for _, anchor, _ in self._finished.toc}
         self.toc = TableOfContents(_nested(self._finished.toc))
 
 
@@ -61,14 +74,31 @@ def _nested(entries: Iterable[tuple[int, str, str]]) -> list[AnchorLink]:
     return roots
 
 
-def add_page(finished: FinishedPage, config: MkDocsConfig, files: Files) -> None:
-    """Put a finished page among the files of the build, out of the navigation tree."""
+def add_page(finished: FinishedPage, config: MkDocsConfig, files: Files) -> str:
+    """Put a finished page among the files of the build, out of the navigation tree.
+
+    Returns where in the site it will be.
+    """
     existing = files.get_file_from_path(finished.path)
     if existing is not None:
         raise PluginError(f"{finished.path} is generated and must not stand among the sources too")
-    file = File.generated(config, finished.path, content="", inclusion=InclusionLevel.NOT_IN_NAV)
+    outside = InclusionLevel.NOT_IN_NAV
+    file = ReadyFile.generated(config, finished.path, content="", inclusion=outside)
+    assert isinstance(file, ReadyFile)
+    file.stands = not finished.html
     files.append(file)
     ReadyPage(finished, file, config)
+    return file.dest_uri
+
+
+def add_file(
+    path: str, content: bytes, config: MkDocsConfig, files: Files, *, stands: bool
+) -> None:
+    """Put a finished file that is no page among the files of the build."""
+    file = ReadyFile.generated(config, path, content=content)
+    assert isinstance(file, ReadyFile)
+    file.stands = stands
+    files.append(file)
 
 
 def add_search_entries(pages: Iterable[FinishedPage], config: MkDocsConfig) -> None:
@@ -103,17 +133,53 @@ def _search_entries(config: MkDocsConfig) -> list[dict[str, Any]] | None:
     return entries
 
 
-def run_mkdocs(config_file: Path, site: Path) -> None:
-    """Build the handbook described by ``config_file`` into the folder ``site``.
+def load(config_file: Path, site: Path | None = None) -> MkDocsConfig:
+    """The settings of a handbook, to be built into the folder ``site``.
+
+    Raises ``Refused`` when MkDocs cannot use them.
+    """
+    from mkdocs.config import load_config
+
+    # The theme's notice about its successor; see DEVELOPERS.md.
+    os.environ.setdefault("NO_MKDOCS_2_WARNING", "1")
+    place = {} if site is None else {"site_dir": str(site)}
+    return load_config(str(config_file), **place)
+
+
+def sources(config: MkDocsConfig) -> tuple[str, ...]:
+    """The files and folders that every page depends on, beside the tables.
+
+    Empty where they cannot be named: settings that come from elsewhere.
+    """
+    file = Path(str(config.config_file_path))
+    text = file.read_text(encoding="utf-8")
+    if "INHERIT" in text or "!ENV" in text:
+        return ()
+    folders: list[str | Path] = [
+        file,
+        config.docs_dir,
+        config.theme.custom_dir or "",
+        *map(str, config.hooks),
+    ]
+    return tuple(str(Path(file.parent, place).resolve()) for place in folders if place)
+
+
+def run(config: MkDocsConfig) -> None:
+    """Let MkDocs build what differs from the published site into an empty folder.
 
     Raises ``Refused`` when MkDocs refuses.
     """
-    from mkdocs.commands.build import build
-    from mkdocs.config import load_config
+    from mkdocs.commands import build
 
-    config = load_config(str(config_file), site_dir=str(site))
     config.plugins.on_startup(command="build", dirty=False)
+    build.log.addFilter(_is_no_warning_of_dirt)
     try:
-        build(config)
+        build.build(config, dirty=True)
     finally:
+        build.log.removeFilter(_is_no_warning_of_dirt)
         config.plugins.on_shutdown()
+
+
+def _is_no_warning_of_dirt(record: logging.LogRecord) -> bool:
+    """Looking for changes is what MkDocs calls dirty and warns of; here nothing is left to it."""
+    return not record.getMessage().startswith("A 'dirty' build")

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import subprocess
 import sys
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -14,10 +15,11 @@ from generator.publish import PublishError, publish
 EXCHANGES = sys.platform == "linux"
 
 
-def _filled(text: str) -> object:
-    def make(folder: Path) -> None:
+def _filled(text: str) -> Callable[[Path], bool]:
+    def make(folder: Path) -> bool:
         for name in ("index.html", "404.html", "page.html"):
             (folder / name).write_text(text, encoding="utf-8")
+        return True
 
     return make
 
@@ -49,12 +51,19 @@ def test_first_and_second_publication(site: Path) -> None:
 def test_a_failure_leaves_the_site_as_it_was(site: Path) -> None:
     publish(site, _filled("first"))
 
-    def fails(folder: Path) -> None:
+    def fails(folder: Path) -> bool:
         (folder / "index.html").write_text("half", encoding="utf-8")
         raise OSError(28, "No space left on device")
 
     with pytest.raises(OSError, match="No space left"):
         publish(site, fails)
+    assert _texts(site) == {"first"}
+    assert _left_over(site) == []
+
+
+def test_nothing_to_do_leaves_the_site_as_it_was(site: Path) -> None:
+    assert publish(site, _filled("first"))
+    assert not publish(site, lambda folder: False)
     assert _texts(site) == {"first"}
     assert _left_over(site) == []
 
@@ -96,7 +105,7 @@ def test_a_kill_between_two_renames_brings_the_old_site_back(site: Path) -> None
     publish(site, _filled("first"))
     site.rename(site.parent / ".site-old-abc")
 
-    def fails(folder: Path) -> None:
+    def fails(folder: Path) -> bool:
         raise RuntimeError
 
     with pytest.raises(RuntimeError):
@@ -124,14 +133,14 @@ def test_two_builds_at_once(tmp_path: Path) -> None:
         "except PublishError as error: sys.exit(str(error))"
     )
 
-    def make(folder: Path) -> None:
-        _filled("first")(folder)  # type: ignore[operator]
+    def make(folder: Path) -> bool:
         done = subprocess.run(
             [sys.executable, "-c", second, str(site)], capture_output=True, text=True, check=False
         )
         assert done.returncode == 1
         assert "another build of" in done.stderr
         assert "try again" in done.stderr
+        return _filled("first")(folder)
 
     publish(site, make)
     assert _texts(site) == {"first"}
