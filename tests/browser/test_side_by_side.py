@@ -10,6 +10,7 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+import pypdf
 import pytest
 
 from generator.quantities import QUANTITIES
@@ -126,6 +127,15 @@ def test_the_figure_shows_every_curve_in_words_too(browser_page: Page) -> None:
     label = figure.get_attribute("aria-label") or ""
     assert re.search(r"Acetone from [\d.]+ at −?\d+ °C to [\d.]+ at \d+ °C; Water from", label)
     assert figure.locator(".name").all_text_contents() == ["Acetone", "Water", "Hexane"]
+
+
+@pytest.mark.parametrize("paper", ["A4", "Letter"])
+def test_five_print_on_two_pages(browser_page: Page, paper: str) -> None:
+    browser_page.goto("compare.html#acetone+water+acetonitrile+o-xylene+p-xylene")
+    pages = pypdf.PdfReader(io.BytesIO(browser_page.pdf(format=paper))).pages
+    assert len(pages) == 2
+    for page in pages:
+        assert "p-Xylene" in page.extract_text()  # the head is repeated
 
 
 def test_taken_away_as_csv(open_page: Callable[..., Page]) -> None:

@@ -81,7 +81,7 @@
       }),
     }));
     const listed = data.listed.map((at, i) =>
-      ({ name: `at ${at}`, symbol: "ε", unit: "", cells: solvents.map((s) => cell(s.listed[i])) }));
+      ({ name: `ε at ${at}`, unit: "", cells: solvents.map((s) => cell(s.listed[i])) }));
     return [
       { title: "", rows: words },
       ...groups,
