@@ -7,6 +7,7 @@ because a thousand substances must fit. Numbers are text as every other page sho
 from __future__ import annotations
 
 import json
+from collections.abc import Sequence
 from typing import Any
 
 from generator.bydegree import by_degree, drawn
@@ -42,7 +43,14 @@ def data_script(catalogue: Catalogue) -> bytes:
     handbook = catalogue.handbook
     links = Links("")
     shown = groups(catalogue)
-    content = {
+    keys = tuple(key for _, group in shown for key in group)
+    solvents = handbook.kept.each(
+        catalogue.in_order,
+        "side-by-side",
+        lambda slugs: [_short_json(_solvent(catalogue, slug, keys)) for slug in slugs],
+        keys,
+    )
+    head = {
         "most": COMPARED,
         "marks": {mark.letter: f"{mark.label}: {mark.meaning}" for mark in MARKS},
         "groups": [
@@ -50,13 +58,13 @@ def data_script(catalogue: Catalogue) -> bytes:
             for title, keys in shown
         ],
         "listed": [celsius_label(t) for t in handbook.temperatures],
-        "solvents": [
-            _solvent(catalogue, slug, [key for _, keys in shown for key in keys])
-            for slug in catalogue.in_order
-        ],
     }
-    text = json.dumps(content, ensure_ascii=False, separators=(",", ":"))
+    text = f'{_short_json(head)[:-1]},"solvents":[{",".join(solvents.values())}]}}'
     return f"window.handbookData = {text};\n".encode()
+
+
+def _short_json(content: object) -> str:
+    return json.dumps(content, ensure_ascii=False, separators=(",", ":"))
 
 
 def _quantity(key: str, links: Links) -> dict[str, str]:
@@ -69,7 +77,7 @@ def _quantity(key: str, links: Links) -> dict[str, str]:
     }
 
 
-def _solvent(catalogue: Catalogue, slug: str, keys: list[str]) -> dict[str, Any]:
+def _solvent(catalogue: Catalogue, slug: str, keys: Sequence[str]) -> dict[str, Any]:
     handbook = catalogue.handbook
     solvent, molecule = handbook.dataset.solvents[slug], handbook.molecules[slug]
     liquid = handbook.liquid_range(slug)
