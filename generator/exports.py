@@ -35,28 +35,31 @@ FINDING_COLUMNS = (
 )  # fmt: skip
 
 
-_Numbers = Mapping[str, Sequence[Value]]
-
-
 def exports(handbook: Handbook, findings: Sequence[Problem], data_folder: Path) -> dict[str, bytes]:
     """Every file a reader may take away, by its path in the site; equal input, equal bytes."""
-    numbers = {slug: tuple(values_of(handbook, slug)) for slug in handbook.dataset.solvents}
+    slugs = tuple(handbook.dataset.solvents)
+    shares = handbook.kept.each(slugs, "export", lambda some: [_share(handbook, s) for s in some])
+    rows = {slug: share[0] for slug, share in shares.items()}
+    head = _table([VALUE_COLUMNS])
     files = {
-        "values.csv": _table(VALUE_COLUMNS, _value_rows(handbook, numbers)),
-        "findings.csv": _table(FINDING_COLUMNS, _finding_rows(handbook, findings)),
-        "handbook.json": _json(handbook, numbers),
+        "values.csv": head + b"".join(rows.values()),
+        "findings.csv": _table([FINDING_COLUMNS, *_finding_rows(handbook, findings)]),
+        "handbook.json": _json(handbook, {slug: share[1] for slug, share in shares.items()}),
         "changes.atom": feed(
             handbook.dataset.history,
             {slug: solvent.name for slug, solvent in handbook.dataset.solvents.items()},
             handbook.settings.laboratory,
         ),
-        **{
-            f"solvents/{slug}.csv": _table(VALUE_COLUMNS, _value_rows(handbook, {slug: found}))
-            for slug, found in numbers.items()
-        },
+        **{f"solvents/{slug}.csv": head + own for slug, own in rows.items()},
         **{f"data/{name}": content for name, content in _package(data_folder)},
     }
     return {f"{FOLDER}/{name}": content for name, content in files.items()}
+
+
+def _share(handbook: Handbook, slug: str) -> tuple[bytes, str]:
+    """What follows from one substance: its rows of the table of values, and itself as JSON."""
+    values = tuple(values_of(handbook, slug))
+    return _table(_value_rows(handbook, slug, values)), _dumped(_solvent(handbook, slug, values))
 
 
 def values_of(handbook: Handbook, slug: str) -> Iterator[Value]:
@@ -69,15 +72,16 @@ def values_of(handbook: Handbook, slug: str) -> Iterator[Value]:
         yield from (by_temperature[at] for at in sorted(by_temperature, key=lambda t: t or 0.0))
 
 
-def _value_rows(handbook: Handbook, numbers: _Numbers) -> Iterator[Sequence[object]]:
-    for slug, values in numbers.items():
-        cas = handbook.dataset.solvents[slug].cas
-        for value in values:
-            yield (
-                slug, cas, value.quantity, _celsius(value.temperature), value.value,
-                _finite(value.uncertainty), QUANTITIES[value.quantity].unit, value.basis,
-                "; ".join(value.sources), "; ".join(value.marks),
-            )  # fmt: skip
+def _value_rows(
+    handbook: Handbook, slug: str, values: Iterable[Value]
+) -> Iterator[Sequence[object]]:
+    cas = handbook.dataset.solvents[slug].cas
+    for value in values:
+        yield (
+            slug, cas, value.quantity, _celsius(value.temperature), value.value,
+            _finite(value.uncertainty), QUANTITIES[value.quantity].unit, value.basis,
+            "; ".join(value.sources), "; ".join(value.marks),
+        )  # fmt: skip
 
 
 def _finding_rows(handbook: Handbook, findings: Sequence[Problem]) -> Iterator[Sequence[object]]:
@@ -86,18 +90,17 @@ def _finding_rows(handbook: Handbook, findings: Sequence[Problem]) -> Iterator[S
         yield [fields[column] for column in FINDING_COLUMNS]
 
 
-def _table(columns: Sequence[str], rows: Iterable[Sequence[object]]) -> bytes:
+def _table(rows: Iterable[Sequence[object]]) -> bytes:
     """CSV in UTF-8; None is an empty cell."""
     text = io.StringIO()
-    writer = csv.writer(text, lineterminator="\n")
-    writer.writerow(columns)
-    writer.writerows(rows)
+    csv.writer(text, lineterminator="\n").writerows(rows)
     return text.getvalue().encode()
 
 
-def _json(handbook: Handbook, numbers: _Numbers) -> bytes:
+def _json(handbook: Handbook, solvents: Mapping[str, str]) -> bytes:
+    """The whole handbook; ``solvents`` are its substances as JSON."""
     settings = handbook.settings
-    whole = {
+    head = {
         "revision": handbook.dataset.revision,
         "laboratory": settings.laboratory,
         "reference_temperature_c": settings.reference_temperature_c,
@@ -110,11 +113,13 @@ def _json(handbook: Handbook, numbers: _Numbers) -> bytes:
             key: {"kind": s.kind, "citation": s.citation, "year": s.year, "doi": s.doi}
             for key, s in handbook.sources.items()
         },
-        "solvents": {slug: _solvent(handbook, slug, found) for slug, found in numbers.items()},
     }
-    return (
-        json.dumps(whole, ensure_ascii=False, allow_nan=False, separators=(",", ":")) + "\n"
-    ).encode()
+    listed = ",".join(f"{_dumped(slug)}:{text}" for slug, text in solvents.items())
+    return f'{_dumped(head)[:-1]},"solvents":{{{listed}}}}}\n'.encode()
+
+
+def _dumped(content: object) -> str:
+    return json.dumps(content, ensure_ascii=False, allow_nan=False, separators=(",", ":"))
 
 
 def _solvent(handbook: Handbook, slug: str, found: Iterable[Value]) -> dict[str, Any]:
