@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -90,20 +90,13 @@ def build_site(
     """
     cache = Cache(cache_folder)
     handbook, findings = review(data, settings, cache, say)
+    say("Writing pages and files")
+    book = catalogue(handbook, findings)
     models = modelfigures.draw(accuracy.comparisons(handbook), cache)
     drawn = figures.figures_of(handbook, cache, models)
-
-    def prepare(slugs: Sequence[str]) -> None:
-        if slugs:
-            say(f"Writing the datasheets of {len(slugs)} substances")
-            drawn.prepare(slugs)
-
-    say("Writing tables and files")
-    made = pages.render_all(handbook, findings, settings, drawn, read_package(data), known, prepare)
-    files = {
-        **exports.exports(handbook, findings, data),
-        sidebyside.PATH: sidebyside.data_script(catalogue(handbook, findings)),
-    }
+    package = read_package(data)
+    made = pages.render_all(book, settings, drawn, package, known, drawn.prepare)
+    files = {**exports.exports(book, data), sidebyside.PATH: sidebyside.data_script(book)}
     handbook.kept.save(forget=True)
     cache.sweep()
     return Site(pages=made, files=files, findings=findings, handbook=handbook)

@@ -12,7 +12,7 @@ import hashlib
 import os
 import tempfile
 import time
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from pathlib import Path
 
 _HASH_BYTES = 32
@@ -128,6 +128,23 @@ class Pack:
         """Keep ``data`` from the next ``save`` on."""
         self._used[key] = (_seal(self._kind, key, data), data)
         self._changed = True
+
+    def asked(self, since: int = 0) -> dict[str, bytes | None]:
+        """What was asked for, in order, from a number on; with its content where it is new."""
+        recent = list(self._used.items())[since:]
+        return {
+            key: None if self._stored.get(key) is entry else bytes(entry[1])
+            for key, entry in recent
+        }
+
+    def adopt(self, asked: Mapping[str, bytes | None]) -> None:
+        """Count as asked for here what was asked for in a copy of this process."""
+        for key, data in asked.items():
+            if key not in self._used:
+                if data is None:
+                    self._used[key] = self._stored[key]
+                else:
+                    self.put(key, data)
 
     def save(self, *, forget: bool) -> None:
         """Write what was added; with ``forget``, without what nobody asked for."""

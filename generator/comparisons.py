@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 
 from markupsafe import Markup
@@ -52,16 +52,6 @@ ASSOCIATION = (
     "dipole_moment", "debye_dipole_moment", "onsager_dipole_moment",
     "kirkwood_correlation_factor", "relative_permittivity", "orientation_polarization",
 )  # fmt: skip
-
-
-def tables(catalogue: Catalogue, figures: Mapping[str, str]) -> tuple[Table, ...]:
-    """Every table with a row a substance."""
-    return (
-        _at_reference(catalogue, figures),
-        _permittivity(catalogue, figures),
-        _coefficients(catalogue, figures),
-        _association(catalogue, figures),
-    )
 
 
 def _quantity_column(key: str, links: Links) -> Column:
@@ -303,3 +293,12 @@ def same_formula(catalogue: Catalogue) -> tuple[Group, ...]:
         for formula, members in sorted(catalogue.formulas.items())
         if len(members) > 1
     )
+
+
+# The tables with a row a substance, in the order of the menu.
+TABLES: Mapping[str, Callable[[Catalogue, Mapping[str, str]], Table]] = {
+    "reference": _at_reference,
+    "permittivity": _permittivity,
+    "temperature-coefficients": _coefficients,
+    "association": _association,
+}

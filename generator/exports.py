@@ -15,8 +15,7 @@ from dataclasses import asdict
 from pathlib import Path
 from typing import Any
 
-from generator.catalogue import catalogue
-from generator.errors import Problem
+from generator.catalogue import Catalogue
 from generator.metrics import Handbook
 from generator.quantities import QUANTITIES
 from generator.schema import DESCRIPTION, read_package
@@ -35,15 +34,16 @@ FINDING_COLUMNS = (
 )  # fmt: skip
 
 
-def exports(handbook: Handbook, findings: Sequence[Problem], data_folder: Path) -> dict[str, bytes]:
+def exports(book: Catalogue, data_folder: Path) -> dict[str, bytes]:
     """Every file a reader may take away, by its path in the site; equal input, equal bytes."""
+    handbook = book.handbook
     slugs = tuple(handbook.dataset.solvents)
     shares = handbook.kept.each(slugs, "export", lambda some: [_share(handbook, s) for s in some])
     rows = {slug: share[0] for slug, share in shares.items()}
     head = _table([VALUE_COLUMNS])
     files = {
         "values.csv": head + b"".join(rows.values()),
-        "findings.csv": _table([FINDING_COLUMNS, *_finding_rows(handbook, findings)]),
+        "findings.csv": _table([FINDING_COLUMNS, *_finding_rows(book)]),
         "handbook.json": _json(handbook, {slug: share[1] for slug, share in shares.items()}),
         "changes.atom": feed(
             handbook.dataset.history,
@@ -84,8 +84,8 @@ def _value_rows(
         )  # fmt: skip
 
 
-def _finding_rows(handbook: Handbook, findings: Sequence[Problem]) -> Iterator[Sequence[object]]:
-    for finding in catalogue(handbook, findings).findings:
+def _finding_rows(book: Catalogue) -> Iterator[Sequence[object]]:
+    for finding in book.findings:
         fields = {**finding.problem.as_dict(), "solvent": finding.slug}
         yield [fields[column] for column in FINDING_COLUMNS]
 

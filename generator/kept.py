@@ -17,6 +17,7 @@ from generator.cache import Cache, Pack, digest, tree
 from generator.parallel import shared_out
 
 _Made = TypeVar("_Made")
+Asked = Mapping[str, "bytes | None"]
 _PACKAGE = Path(__file__).parent
 # Fewer substances than this for each helper are not worth starting one.
 LEAST = 25
@@ -60,6 +61,23 @@ class Kept:
             if slug in self._keys:
                 self._pack.put(keys[slug], pickle.dumps(result, pickle.HIGHEST_PROTOCOL))
         return _Loaded(keys, stored, made)
+
+    def share_out(self, jobs: Sequence[Callable[[], _Made]], least: int) -> list[_Made]:
+        """The results of jobs that helpers may do, in shares of at least ``least``.
+
+        What a helper kept is kept here too.
+        """
+
+        def work(share: Sequence[Callable[[], _Made]]) -> list[tuple[_Made, Asked]]:
+            before = len(self._pack.asked())
+            results = [job() for job in share]
+            asked = self._pack.asked(before)
+            return [(result, {} if i else asked) for i, result in enumerate(results)]
+
+        done = shared_out(work, jobs, least)
+        for _, asked in done:
+            self._pack.adopt(asked)
+        return [result for result, _ in done]
 
     def save(self, *, forget: bool) -> None:
         """Write what was made; with ``forget``, without what this build had no use for."""

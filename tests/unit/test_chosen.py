@@ -147,7 +147,7 @@ def test_a_class_that_needs_no_boiling_point_is_given_without_one() -> None:
 
 @pytest.fixture(scope="module")
 def acetone(handbook: Handbook) -> Page:
-    pages = render_all(handbook, (), handbook.settings, {})
+    pages = render_all(catalogue(handbook, ()), handbook.settings, {})
     return next(page for page in pages if page.path == "solvents/acetone.md")
 
 

@@ -9,6 +9,7 @@ from pathlib import Path
 
 import pytest
 
+from generator.catalogue import catalogue
 from generator.errors import Problem
 from generator.exports import FINDING_COLUMNS, VALUE_COLUMNS, exports
 from generator.metrics import Handbook
@@ -28,7 +29,7 @@ BASES = {"measured", "curve", "computed", "estimated"}
 
 @pytest.fixture(scope="module")
 def files(handbook: Handbook) -> dict[str, bytes]:
-    return exports(handbook, (FINDING,), DATA)
+    return exports(catalogue(handbook, (FINDING,)), DATA)
 
 
 @pytest.fixture(scope="module")
@@ -150,6 +151,6 @@ def test_numbers_of_one_substance_are_its_rows_of_the_whole(
 
 
 def test_equal_input_gives_equal_bytes(files: dict[str, bytes], handbook: Handbook) -> None:
-    again = exports(handbook, (FINDING,), DATA)
+    again = exports(catalogue(handbook, (FINDING,)), DATA)
     assert again == files
     assert list(again) == list(files)

@@ -17,6 +17,7 @@ from pathlib import Path
 
 import pytest
 
+from generator.catalogue import catalogue
 from generator.exports import exports
 from generator.metrics import Handbook
 
@@ -136,7 +137,7 @@ Cell = dict[str, str]
 
 @pytest.fixture(scope="module")
 def files(handbook: Handbook) -> dict[str, bytes]:
-    return exports(handbook, (), ROOT / "data")
+    return exports(catalogue(handbook, ()), ROOT / "data")
 
 
 def table(files: Mapping[str, bytes], name: str) -> list[Cell]:
