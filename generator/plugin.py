@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from jinja2 import Environment
 from mkdocs.config import config_options as option
 from mkdocs.config.base import Config, ValidationError
 from mkdocs.config.defaults import MkDocsConfig
@@ -17,6 +18,7 @@ from mkdocs.structure.files import Files
 
 from generator import ready
 from generator.build import Site, build_site
+from generator.cache import Cache
 from generator.errors import DatasetError
 from generator.metrics import Settings
 from generator.pages import NO_PAGES, Page
@@ -89,6 +91,14 @@ def plugin_of(config: MkDocsConfig) -> DatasheetsPlugin:
     return plugin
 
 
+def _home(config: MkDocsConfig) -> Path:
+    return Path(config.config_file_path or "mkdocs.yml").resolve().parent
+
+
+def _cache(config: MkDocsConfig) -> Path:
+    return _home(config) / ".cache"
+
+
 class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
     """Hands the generated pages and files to MkDocs."""
 
@@ -101,7 +111,7 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
 
     def folder(self, config: MkDocsConfig) -> Path:
         """The folder of the tables, beside mkdocs.yml."""
-        return Path(config.config_file_path or "mkdocs.yml").resolve().parent / self.config.data_
+        return _home(config) / self.config.data_
 
     def make(
         self,
@@ -110,8 +120,8 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         say: Callable[[str], None] = lambda stage: None,
     ) -> Site:
         """The site after the tables, see ``build.build_site``; raises ``DatasetError``."""
-        cache = Path(config.config_file_path or "mkdocs.yml").resolve().parent / ".cache"
-        return build_site(self.folder(config), settings_of(self.config), cache, known, say)
+        folder, settings = self.folder(config), settings_of(self.config)
+        return build_site(folder, settings, _cache(config), known, say)
 
     def hand_over(self, site: Site, standing: Collection[str]) -> None:
         """Take pages and files made beforehand; those files that stand are not written."""
@@ -140,6 +150,11 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         for path, content in self._site.files.items():
             ready.add_file(path, content, config, files, stands=path in self._standing)
         return files
+
+    def on_env(self, env: Environment, *, config: MkDocsConfig, files: Files) -> Environment:
+        """Keep the theme's compiled templates."""
+        env.bytecode_cache = ready.Compiled(Cache(_cache(config)))
+        return env
 
     @event_priority(100)
     def _add_search_entries(self, *, config: MkDocsConfig) -> None:
