@@ -173,7 +173,8 @@ def open_page(chromium: Browser, site_url: str, built_site: Path) -> Iterator[Ca
     yield opened
     for page in pages:
         # Let anything still on its way be seen before judging.
-        page.wait_for_load_state("networkidle")
+        page.wait_for_load_state("load")
+        page.wait_for_timeout(100)
         page.context.close()
     assert not strangers, f"requests that leave the site: {strangers}"
     assert not errors, f"errors on the console: {errors}"

@@ -240,10 +240,10 @@ def _sorting(page: Page, key: str) -> float:
 def test_a_thousand_rows_are_quick(thousand: Page) -> None:
     page = thousand
     # The best of three: other work on the machine is not the table's.
-    assert min(_usable(page) for _ in range(3)) < 2.0
+    assert any(_usable(page) < 2.0 for _ in range(3))
     assert page.locator(".table-count").inner_text() == f"{MANY} substances"
     for key in ("density", "substance", "viscosity", "family"):
-        assert min(_sorting(page, key) for _ in range(3)) < 0.3, key
+        assert any(_sorting(page, key) < 0.3 for _ in range(3)), key
     page.locator(".table-scroll").evaluate("r => { r.scrollTop = r.scrollHeight; }")
     page.wait_for_function("document.querySelectorAll('table.long tbody tr').length > 150")
     page.get_by_role("button", name=f"Show all {MANY} rows").click()
