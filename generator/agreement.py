@@ -8,7 +8,7 @@ from itertools import combinations
 
 import numpy as np
 
-from generator.facts import TEMPERATURE, Curve, Point, View
+from generator.facts import RARE, TEMPERATURE, Curve, Point, View
 from generator.identity import CAS, SMILES
 from generator.outcome import Outcome, cells, relative_spread
 from generator.quantities import QUANTITIES
@@ -16,7 +16,7 @@ from generator.units import ZERO_CELSIUS, convert, convert_difference
 
 EPS, N, RHO, MU = "relative_permittivity", "refractive_index", "density", "dipole_moment"
 TM, TB, TF = "melting_point", "boiling_point", "flash_point"
-PRESSURE, VISCOSITY = "vapour_pressure", "viscosity"
+PRESSURE, VISCOSITY, KAPPA = "vapour_pressure", "viscosity", "conductivity"
 ROOM = 20.0 + ZERO_CELSIUS  # K
 ONE_ATMOSPHERE = 101.325  # kPa, exact
 # Two points at temperatures this far apart are of one temperature [K].
@@ -27,8 +27,9 @@ _CURVES = {PRESSURE: "pressure-curves", VISCOSITY: "viscosity-curves"}
 _TEMPERATURES = {TM: "melting-points", TB: "boiling-points", TF: "flash-points"}
 # A calculated moment is of one conformer and one method [D].
 _CALCULATED = 0.3
-# What an estimate for a molecule of well-known parts and few shapes is off by [D].
-USUAL_ESTIMATE = 0.29
+# What an estimate for a molecule of well-known parts and few shapes is off by [D]; one that may
+# be off by more than the second judges nothing.
+USUAL_ESTIMATE, WORST_ESTIMATE = 0.29, 0.5
 
 
 def _own_curve(view: View) -> Iterator[Outcome]:
@@ -86,7 +87,8 @@ def _moments(view: View) -> Iterator[Outcome]:
     points = view.points(MU)
     for one, other in combinations(points, 2):
         yield Outcome(
-            "moments", "all", (one.name, other.name), view.value(one), view.value(other),
+            "moments", "calculated" if one.calculated or other.calculated else "measured",
+            (one.name, other.name), view.value(one), view.value(other),
             float(np.hypot(moment_spread(one), moment_spread(other))), one.label, other.label,
             weight=max(1.0, 0.5 * min(one.value, other.value)), unit="D",
         )  # fmt: skip
@@ -102,10 +104,19 @@ def _moments(view: View) -> Iterator[Outcome]:
         )  # fmt: skip
 
 
+def estimated(view: View) -> tuple[float, float] | None:
+    """The estimated moment [D] of the structure in view with its uncertainty, if it can judge."""
+    estimate = view.facts.estimate if view.structure is None else None
+    if estimate is None or not view.known.foretold or view.known.group == RARE:
+        return None
+    return estimate if estimate[1] <= WORST_ESTIMATE else None
+
+
 def _estimate(view: View) -> Iterator[Outcome]:
-    if view.facts.estimate is None or view.structure is not None:
+    estimate = estimated(view)
+    if estimate is None:
         return
-    value, uncertainty = view.facts.estimate
+    value, uncertainty = estimate
     for point in view.points(MU):
         yield Outcome(
             "estimate", "all", (point.name, SMILES), view.value(point),
@@ -124,7 +135,8 @@ def _temperatures(view: View) -> Iterator[Outcome]:
         for one, other in combinations(view.points(key), 2):
             yield Outcome(
                 _TEMPERATURES[key], "all", (one.name, other.name), view.value(one),
-                view.value(other), float(np.hypot(one.spread, other.spread)), one.label, other.label, unit="degC",
+                view.value(other), float(np.hypot(one.spread, other.spread)), one.label,
+                other.label, unit="degC",
             )  # fmt: skip
 
 

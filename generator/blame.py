@@ -30,7 +30,7 @@ from generator.units import convert
 # Degrees of freedom of the long-tailed cost (Student's t).
 _TAIL = 3.0
 # How much a cell must save before it is named.
-LEAST_GAIN = 2.5
+LEAST_GAIN = 3.0
 # Reluctance to blame a kind of cell: typed values go wrong most often.
 _RELUCTANCE = {"value": 0.0, "temperature_c": 1.0, "coefficients": 0.7, "smiles": 0.5, "cas": 0.5}
 # A structure that nothing replaces, and each comparison that is merely left out.
@@ -38,8 +38,10 @@ _NO_ALTERNATIVE, _LEFT_OUT = 2.5, 0.5
 # Freedom of a replaced number: it can always pass one check, which proves nothing.
 _FREEDOM = 1.0
 _SLIP_BONUS = 1.0
+# What no open table prints may have been mistyped, beside being wrong where it is from.
+_TYPED = 1.0
 # Share of a check's cost that counts beyond its cap: a slip of the point is no odd molecule.
-_BEYOND = 0.25
+_BEYOND = 0.15
 # Two sources contradict each other and nothing else speaks: one is named where it is this much
 # more prone, or the clash this many times beyond its limit.
 _LEAST_LEAD, _PLAIN = 0.7, 1.8
@@ -73,9 +75,12 @@ class Blame:
 
 @dataclass(frozen=True, slots=True)
 class _Trial:
+    """``cost`` ranks the cells, ``bare`` is what the change leaves without a slip to explain it."""
+
     cell: str
     best: float
     cost: float
+    bare: float
     slip: Slip | None = None
 
 
@@ -194,7 +199,7 @@ def _worst(case: _Case) -> Blame | None:
     candidates = [c for c in case.view.facts.names() if any(c in o.members for o in case.failed)]
     trials = sorted((_try(case, cell) for cell in candidates), key=lambda trial: trial.cost)
     best = trials[0]
-    gain = before - best.cost
+    gain = before - best.bare
     if gain < LEAST_GAIN:
         return None
     cells = {best.cell, *case.linked(best.cell)}
@@ -217,11 +222,14 @@ def _worst(case: _Case) -> Blame | None:
 
 
 def _sums(found: Sequence[Outcome], spreads: Spreads) -> dict[str, Array]:
-    """Uncapped cost by check."""
+    """Uncapped cost by check: the sum over independent prints, the worst of one expectation."""
     sums: dict[str, Array] = defaultdict(lambda: np.zeros(()))
     for outcome in found:
         z = np.nan_to_num(spreads.deviation(outcome), nan=0.0, posinf=1e6, neginf=1e6)
-        sums[outcome.check] = sums[outcome.check] + 0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL)
+        cost = 0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL)
+        so_far = sums[outcome.check]
+        alone = math.isinf(CHECKS[outcome.check].trust)
+        sums[outcome.check] = so_far + cost if alone else np.maximum(so_far, cost)
     return sums
 
 
@@ -235,38 +243,63 @@ def _total(sums: dict[str, Array]) -> Array:
 
 def _try(case: _Case, cell: str) -> _Trial:
     """The best that can be made of a substance by changing one cell."""
-    view, spreads = case.view, case.spreads
     cells = {cell, *case.linked(cell)}
     rest = [o for o in case.now if cells.isdisjoint(o.members)]
     reluctance = _RELUCTANCE[column_of(cell)] + _FREEDOM
     if cell == SMILES:
         return _try_structure(case, rest, reluctance)
     if cell == CAS or "~" in cell:
-        left_out = _LEFT_OUT * (len(case.now) - len(rest)) if "~" in cell else 0.0
-        return _Trial(cell, math.nan, float(_total(_sums(rest, spreads))) + reluctance + left_out)
-    point = point_of(view.facts, cell)
-    temperature = cell.endswith(TEMPERATURE)
-    if not temperature:
-        reluctance -= proneness(point.row.quantity, point.row.source)
+        reluctance += _LEFT_OUT * (len(case.now) - len(rest)) if "~" in cell else 0.0
+        cost = float(_total(_sums(rest, case.spreads))) + reluctance
+        return _Trial(cell, math.nan, cost, cost)
+    return _try_point(case, cell, cells, rest, reluctance)
+
+
+def _try_point(
+    case: _Case, cell: str, cells: set[str], rest: list[Outcome], reluctance: float
+) -> _Trial:
+    """The best other value or temperature of a point."""
+    view, point = case.view, point_of(case.view.facts, cell)
+    key, temperature = point.row.quantity, cell.endswith(TEMPERATURE)
+    if (key, point.row.source) not in view.facts.prints:
+        reluctance -= _TYPED
+    elif not temperature:
+        reluctance -= proneness(key, point.row.source)
+    low, high = (150.0, 700.0) if temperature else (QUANTITIES[key].low, QUANTITIES[key].high)
+
+    def costs(values: Array) -> tuple[Array, list[Outcome]]:
+        changed = dict.fromkeys(cells - {cell}, values / (point.value or 1.0))
+        tried = View(view.facts, {cell: values, **changed}, view.dropped)
+        touched = [o for o in case.seen(tried, key) if not cells.isdisjoint(o.members)]
+        total = np.broadcast_to(_total(_sums([*rest, *touched], case.spreads)), values.shape)
+        outside = np.where((values < low) | (values > high), 50.0, 0.0)
+        return total + reluctance + outside, touched
+
+    grid = _grid(point, temperature)
+    coarse, _ = costs(grid)
+    fine = _around(grid, int(np.argmin(coarse)))
+    total, _ = costs(fine)
+    best = int(np.argmin(total))
+    slip, bare = None, float(total[best])
+    lowest = bare
     suggestions = [] if temperature else _suggestions(view.facts, point)
-    values = np.array([*_grid(point, temperature), *(s.value for s in suggestions)])
-    changed = {cell: values, **dict.fromkeys(cells - {cell}, values / (point.value or 1.0))}
-    tried = View(view.facts, changed, view.dropped)
-    touched = [o for o in case.seen(tried, point.row.quantity) if not cells.isdisjoint(o.members)]
-    total = np.broadcast_to(_total(_sums([*rest, *touched], spreads)), values.shape) + reluctance
-    quantity = QUANTITIES[point.row.quantity]
-    if not temperature:
-        total = total + np.where((values < quantity.low) | (values > quantity.high), 50.0, 0.0)
-    plain = len(values) - len(suggestions)
-    best = int(np.argmin(total[:plain]))
-    slip, lowest = None, float(total[best])
-    settled = _settled(touched, spreads, values.shape)
-    for suggestion, cost, fits in zip(suggestions, total[plain:], settled[plain:], strict=True):
-        # A slip explains more than a free number; an odd slip explains little more.
-        worth = float(cost) - _SLIP_BONUS + suggestion.rarity
-        if fits and worth < lowest:
-            slip, lowest = suggestion, worth
-    return _Trial(cell, slip.value if slip else float(values[best]), lowest, slip)
+    if suggestions:
+        values = np.array([s.value for s in suggestions])
+        total, touched = costs(values)
+        settled = _settled(touched, case.spreads, values.shape)
+        for suggestion, cost, fits in zip(suggestions, total, settled, strict=True):
+            # A slip explains more than a free number; an odd slip explains little more.
+            worth = float(cost) - _SLIP_BONUS + suggestion.rarity
+            if fits and worth < lowest:
+                slip, lowest = suggestion, worth
+    return _Trial(cell, slip.value if slip else float(fine[best]), lowest, bare, slip)
+
+
+def _around(grid: Array, best: int) -> Array:
+    """Closer values about the best of a grid, itself included."""
+    nearest = np.sort(np.abs(grid - grid[best]))
+    step = nearest[nearest > 0][0] if (nearest > 0).any() else 0.0
+    return np.asarray(grid[best] + step * np.linspace(-1.0, 1.0, 41))
 
 
 def _suggestions(facts: Facts, point: Point) -> list[Slip]:
@@ -284,14 +317,13 @@ def _suggestions(facts: Facts, point: Point) -> list[Slip]:
 def _try_structure(case: _Case, rest: list[Outcome], reluctance: float) -> _Trial:
     who, listed = case.view.facts.identity, case.view.facts.listed
     if who.relation == "same":
-        return _Trial(SMILES, math.nan, math.inf)
+        return _Trial(SMILES, math.nan, math.inf, math.inf)
     if listed is not None:
-        seen = case.seen(View(case.view.facts, dropped=case.view.dropped, structure=listed))
-        return _Trial(SMILES, math.nan, float(_total(_sums(seen, case.spreads))) + reluctance)
-    left_out = _NO_ALTERNATIVE + _LEFT_OUT * (len(case.now) - len(rest))
-    return _Trial(
-        SMILES, math.nan, float(_total(_sums(rest, case.spreads))) + reluctance + left_out
-    )
+        rest = case.seen(View(case.view.facts, dropped=case.view.dropped, structure=listed))
+    else:
+        reluctance += _NO_ALTERNATIVE + _LEFT_OUT * (len(case.now) - len(rest))
+    cost = float(_total(_sums(rest, case.spreads))) + reluctance
+    return _Trial(SMILES, math.nan, cost, cost)
 
 
 def _settled(touched: Sequence[Outcome], spreads: Spreads, shape: tuple[int, ...]) -> Array:
@@ -306,12 +338,12 @@ def _settled(touched: Sequence[Outcome], spreads: Spreads, shape: tuple[int, ...
 def _grid(point: Point, temperature: bool) -> Array:
     """Other values to try: near ones closely, far ones coarsely."""
     if temperature:
-        return np.concatenate([np.linspace(173.0, 573.0, 81), [point.temperature]])
+        return np.linspace(173.0, 573.0, 81)
     quantity = QUANTITIES[point.row.quantity]
     if quantity.unit == "degC":
         return point.value + np.concatenate([np.linspace(-400, 400, 81), np.linspace(-40, 40, 81)])
     offset = 1.0 if quantity.key in ("relative_permittivity", "refractive_index") else 0.0
-    level = max(abs(point.value - offset), 1e-3)
+    level = abs(point.value - offset) or 1e-3
     near = np.exp(np.linspace(-0.6, 0.6, 121))
     far = np.exp(np.linspace(-7, 7, 43))
     return offset + level * np.concatenate([near, far])

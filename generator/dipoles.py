@@ -23,7 +23,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from generator.cache import digest
-from generator.conformers import Shapes, shapes
+from generator.conformers import Shapes, parse, shapes
 from generator.units import DEBYE, ELEMENTARY_CHARGE
 
 if TYPE_CHECKING:
@@ -59,6 +59,9 @@ DAMPING = 1.95
 
 SMALLEST_WEIGHT = 0.01
 """Conformers with less than this share of the Boltzmann weight are left out."""
+
+LARGEST = 24
+"""Atoms without hydrogen: hardly any larger molecule taught the model, and their shapes are many."""
 
 HALOGENS = (9, 17, 35, 53)
 
@@ -101,7 +104,7 @@ def estimate_dipole(smiles: str) -> DipoleEstimate:
     """Estimated gas-phase dipole moment of a molecule.
 
     Raises `ValueError` for structures outside the model: several parts, an overall charge,
-    unpaired electrons, elements without fitted bonds.
+    unpaired electrons, elements without fitted bonds, more than `LARGEST` atoms.
     """
     found = moments(smiles)
     sizes = np.linalg.norm(found.vectors, axis=1)
@@ -126,6 +129,8 @@ def estimate_dipole(smiles: str) -> DipoleEstimate:
 @lru_cache(maxsize=64)
 def moments(smiles: str) -> Moments:
     """Conformers with more than 1 % of the weight, and the moment of each."""
+    if parse(smiles).GetNumHeavyAtoms() > LARGEST:
+        raise ValueError(f"larger than {LARGEST} atoms without hydrogen")
     found = populated(shapes(smiles))
     refuse_outside(found.mol)
     model = _increments()

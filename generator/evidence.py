@@ -11,6 +11,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from generator import estimates
+from generator.agreement import KAPPA
 from generator.blame import Blame, blamed, curve_of, point_of
 from generator.cache import Cache
 from generator.dataset import Correction, Dataset
@@ -19,14 +20,14 @@ from generator.expectations import outcomes
 from generator.facts import Facts, View, facts_of, structure_of
 from generator.identity import CAS, SMILES, identify, printed
 from generator.metrics import Handbook
-from generator.neighbours import series_of
+from generator.neighbours import series_of, with_repeats
 from generator.parallel import shared_out
 from generator.quantities import MEASURED
 from generator.spreads import Spreads, Threshold, spreads_for, thresholds
 from generator.statements import problem_of
 from generator.structures import Molecule, molecule
 
-_DIPOLE = "dipole_moment"
+_WAITING = ("dipole_moment", "relative_permittivity")
 # Fewer estimates than this for each helper are not worth starting one.
 _LEAST = 8
 
@@ -69,7 +70,7 @@ def prepared(
     dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache
 ) -> tuple[list[Facts], Spreads]:
     """The cells of every substance, and how far their comparisons usually lie apart."""
-    facts = everything(dataset, molecules, cache)
+    facts = with_repeats(everything(dataset, molecules, cache), KAPPA)
     series = series_of(facts)
     facts = [replace(f, series=series[f.slug]) for f in facts]
     return facts, spreads_for(o for f in facts for o in outcomes(View(f)))
@@ -97,11 +98,15 @@ def everything(dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache
 def _moments(
     dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache
 ) -> Mapping[str, tuple[float, float]]:
-    """Estimated dipole moments [D] with their uncertainty, where measured ones wait for them."""
+    """Estimated dipole moments [D] with their uncertainty, where a measured value waits for them.
+
+    A measured moment, or a permittivity without one.
+    """
     wanted = [
         slug
         for slug, structure in molecules.items()
-        if structure.dipole_limit is None and dataset.measurements_of(slug, _DIPOLE)
+        if structure.dipole_limit is None
+        and any(dataset.measurements_of(slug, key) for key in _WAITING)
     ]
 
     def estimated(share: Sequence[str]) -> list[tuple[float, float] | None]:

@@ -17,33 +17,25 @@ from generator.agreement import (
     AGREEMENT,
     EPS,
     MU,
-    ONE_ATMOSPHERE,
-    PRESSURE,
     RHO,
     ROOM,
     TB,
-    TF,
-    TM,
     N,
+    estimated,
     inside,
     moment_spread,
 )
-from generator.facts import TEMPERATURE, Array, Curve, Point, View
+from generator.facts import RARE, Array, Curve, Point, View
 from generator.identity import SMILES
 from generator.increments import turns
 from generator.outcome import Outcome, cells, relative_spread
-from generator.quantities import QUANTITIES
-from generator.units import AVOGADRO, BOLTZMANN, ZERO_CELSIUS
+from generator.phases import PHASES
+from generator.units import ZERO_CELSIUS
 
 # Uncertainty of ε∞ = 1.05 n² taken as a share of ε (the 5 % are an assumption).
 INFINITE_SHARE = 0.03
 # Density values are carried this far to meet an index or permittivity [K].
 REACH = 60.0
-# Liquids that are liquid at room temperature are measured between these [K].
-USUAL = (15.0 + ZERO_CELSIUS, 30.0 + ZERO_CELSIUS)
-_GAS_CONSTANT = AVOGADRO * BOLTZMANN  # J/(mol K)
-# Pressure takes a liquid this far beyond its boiling point before anybody wonders [K].
-UNDER_PRESSURE = 80.0
 # Further than this beyond it, a liquid is so far expanded that no structure foretells its volume.
 BEYOND_BOILING = 30.0
 
@@ -52,7 +44,7 @@ def outcomes(view: View, reading: str = "") -> list[Outcome]:
     """Every comparison that the cells of a view allow, or those that read one quantity."""
     return [
         outcome
-        for check, reads in (*AGREEMENT, *_PHYSICS)
+        for check, reads in (*AGREEMENT, *PHASES, *_PHYSICS)
         if not reading or reading in reads
         for outcome in check(view)
     ]
@@ -72,6 +64,8 @@ def _ordinary(view: View, temperature: float) -> bool:
 
 def _refraction(view: View) -> Iterator[Outcome]:
     known = view.known
+    if not known.foretold:
+        return
     shift, scatter = view.facts.series.get("refraction", (0.0, 0.0))
     for index in view.points(N):
         for source in view.sources(RHO):
@@ -187,31 +181,46 @@ def _onsager(view: View) -> Iterator[Outcome]:
     molecule = view.known.molecule
     if molecule.dipole_limit is not None:
         return
-    group = molecule.family if molecule.is_associated else f"aprotic {molecule.family}"
+    check = "associated" if molecule.is_associated else "onsager"
+    # What association makes of a moment is not foreseeable.
+    estimate = None if molecule.is_associated else estimated(view)
     for source, eps, now, n, volume, members in _liquids(view):
+        own = np.hypot(relative_spread(source), INFINITE_SHARE)
         for moment in view.points(MU):
             steep = sensitivity(moment.value, n, volume, now)
-            own = steep * moment_spread(moment) / max(moment.value, 0.1)
+            unsure = _unsure(moment.value, moment_spread(moment), n, volume, now)
             yield Outcome(
-                "onsager", group, (moment.name, *members), eps,
+                check, molecule.family, (moment.name, *members), eps,
                 polarity.onsager_permittivity(view.value(moment), n, volume, now),
-                float(np.hypot(np.hypot(relative_spread(source), INFINITE_SHARE), own)),
-                f"ε ({source.label})", f"from μ ({moment.label}), n and V", weight=steep, unit="1",
+                float(np.hypot(own, unsure)), f"ε ({source.label})",
+                f"from μ ({moment.label}), n and V", weight=steep, unit="1",
+            )  # fmt: skip
+        if estimate is not None:
+            steep = sensitivity(estimate[0], n, volume, now)
+            unsure = _unsure(*estimate, n, volume, now)
+            yield Outcome(
+                "estimated-onsager", molecule.family, members, eps,
+                polarity.onsager_permittivity(estimate[0], n, volume, now),
+                float(np.hypot(own, unsure)), f"ε ({source.label})",
+                "from the estimated μ, n and V", weight=steep, unit="1",
             )  # fmt: skip
 
 
 def _moment(view: View) -> Iterator[Outcome]:
-    """ε without a measured moment: from the one estimated, or the one of similar liquids."""
+    """ε from the moment that similar liquids have."""
     known = view.known
-    if known.molecule.dipole_limit is not None or not known.foretold:
+    if known.molecule.dipole_limit is not None or not known.foretold or known.group == RARE:
         return
     shift, scatter = view.facts.series.get("liquid_moment", (0.0, 0.0))
+    check, group = "series-moment" if scatter else "moment", known.group
+    if known.molecule.is_associated:
+        check, group = "associated", f"{known.molecule.family}, {check}"
     mu = known.foretold["liquid_moment"] * float(np.exp(shift))
     for source, eps, now, n, volume, members in _liquids(view):
         steep = sensitivity(mu, n, volume, now)
         own = np.hypot(relative_spread(source), INFINITE_SHARE)
         yield Outcome(
-            "series-moment" if scatter else "moment", known.group, members, eps,
+            check, group, members, eps,
             polarity.onsager_permittivity(mu, n, volume, now),
             float(np.hypot(own, steep * scatter)), f"ε ({source.label})",
             "from the series" if scatter else "from similar structures", weight=steep, unit="1",
@@ -223,15 +232,22 @@ def sensitivity(mu: float, n: ArrayLike, volume: ArrayLike, temperature: ArrayLi
 
     ``mu`` [D], ``n`` [1], ``volume`` [cm3/mol], ``temperature`` [K].
     """
-    if mu <= 0:
-        return 0.02
-    n, volume, temperature = (
-        float(np.median(np.atleast_1d(np.asarray(x)))) for x in (n, volume, temperature)
-    )
-    low, high = polarity.onsager_permittivity(mu * np.array([0.95, 1.05]), n, volume, temperature)
-    with np.errstate(all="ignore"):
-        slope = float(np.log(high / low) / np.log(1.05 / 0.95))
-    return max(slope, 0.02) if np.isfinite(slope) else 1.0
+    low, high = _responses(np.array([0.95, 1.05]) * max(mu, 0.01), n, volume, temperature)
+    return float(np.clip((high - low) / np.log(1.05 / 0.95), 0.02, 2.0))
+
+
+def _responses(mu: Array, n: ArrayLike, volume: ArrayLike, temperature: ArrayLike) -> Array:
+    """ln ε at several moments [D], at the middle of what is tried."""
+    middle = [float(np.nanmedian(np.asarray(x))) for x in (n, volume, temperature)]
+    return np.log(polarity.onsager_permittivity(mu, *middle))
+
+
+def _unsure(
+    mu: float, spread: float, n: ArrayLike, volume: ArrayLike, temperature: ArrayLike
+) -> float:
+    """What an uncertain moment [D] leaves open about ln ε: small ones grow fast."""
+    here, above = _responses(np.array([mu, mu + spread]), n, volume, temperature)
+    return float(above - here)
 
 
 def _slope(view: View) -> Iterator[Outcome]:
@@ -259,114 +275,6 @@ def _slope(view: View) -> Iterator[Outcome]:
         )  # fmt: skip
 
 
-def _boiling(view: View) -> Iterator[Outcome]:
-    known = view.known
-    if not known.foretold:
-        return
-    shift, scatter = view.facts.series.get("boiling_point", (0.0, 0.0))
-    for point in view.points(TB):
-        yield Outcome(
-            "series-boiling" if scatter else "boiling", "all" if scatter else known.group,
-            (point.name, SMILES), np.maximum(view.value(point) + ZERO_CELSIUS, 1.0),
-            np.asarray(known.foretold["boiling_point"] * np.exp(shift)),
-            float(np.hypot(point.spread / max(point.value + ZERO_CELSIUS, 1.0), scatter)),
-            f"boiling point ({point.label})",
-            "from the series" if scatter else "from the structure", unit="K",
-        )  # fmt: skip
-
-
-def _pressure(view: View) -> Iterator[Outcome]:
-    """Vapour pressure at room temperature from the boiling point alone.
-
-    Entropy of evaporation after Kistiakowsky (Z. phys. Chem. 107, 65, 1923), 36.6 + R ln T_b
-    [J/(mol K)], rising a little towards lower temperatures: Fishtine's power of 0.19 in T_b/T.
-    """
-    boils = view.middle(TB) + ZERO_CELSIUS
-    if not boils > ROOM + 20.0:
-        return
-    entropy = (36.6 + _GAS_CONSTANT * np.log(boils)) / _GAS_CONSTANT
-    for curve in view.curves(PRESSURE):
-        at = inside(curve)
-        ratio = boils / at
-        if ratio <= 1.05:
-            continue
-        expected = ONE_ATMOSPHERE * np.exp(-entropy * ratio**0.19 * (ratio - 1))
-        yield Outcome(
-            "pressure", view.known.molecule.family, (curve.name,), view.curve(curve, at),
-            np.asarray(expected), 0.0, f"p at {at - ZERO_CELSIUS:.0f} °C ({curve.label})",
-            "from the boiling point", weight=float(ratio - 1), unit="kPa",
-        )  # fmt: skip
-
-
-def _bounds(view: View) -> Iterator[Outcome]:
-    """Curves that leave what any liquid has."""
-    for key in view.facts.curves:
-        quantity = QUANTITIES[key]
-        for curve in view.curves(key):
-            value = view.curve(curve, inside(curve))
-            yield Outcome(
-                "bounds", key, (curve.name,), value, np.clip(value, quantity.low, quantity.high),
-                0.0, curve.label, "of any liquid at most", unit=quantity.unit,
-            )  # fmt: skip
-
-
-def _flash(view: View) -> Iterator[Outcome]:
-    boils = view.middle(TB)
-    if not np.isfinite(boils):
-        return
-    for point in view.points(TF):
-        yield Outcome(
-            "flash", "all", (point.name,),
-            np.maximum(view.value(point) + ZERO_CELSIUS, 1.0),
-            np.asarray(boils + ZERO_CELSIUS), point.spread / max(point.value + ZERO_CELSIUS, 1.0),
-            f"flash point ({point.label})", "boiling point", unit="K",
-        )  # fmt: skip
-
-
-def _order(view: View) -> Iterator[Outcome]:
-    """Melting points below the boiling point, boiling points above the melting point."""
-    for key, other, side in ((TM, TB, -1.0), (TB, TM, 1.0)):
-        edge = view.middle(other)
-        if not np.isfinite(edge):
-            continue
-        for point in view.points(key):
-            value = view.value(point)
-            yield Outcome(
-                "order", key, (point.name,), value,
-                np.minimum(value, edge) if side < 0 else np.maximum(value, edge), point.spread,
-                f"{key.replace('_', ' ')} ({point.label})", f"{other.replace('_', ' ')} at most"
-                if side < 0 else f"{other.replace('_', ' ')} at least", unit="degC",
-            )  # fmt: skip
-
-
-def _measured_at(view: View) -> Iterator[Outcome]:
-    """Temperatures at which nobody measures: solid, gaseous, far from room for no reason."""
-    melts, boils = (view.middle(key) + ZERO_CELSIUS for key in (TM, TB))
-    cold, warm = USUAL
-    if boils < warm:
-        cold = -np.inf
-    if melts > cold:
-        warm = max(warm, melts + 40.0)
-    for key in (EPS, N, RHO):
-        for point in view.points(key):
-            if not np.isfinite(point.temperature):
-                continue
-            now, words = view.temperature(point), f"temperature of {key} ({point.label})"
-            for edge in (*view.points(TM), *view.points(TB)):
-                at = view.value(edge) + ZERO_CELSIUS
-                low = edge.row.quantity == TM
-                yield Outcome(
-                    "liquid-range", key, (point.name + TEMPERATURE, edge.name), now,
-                    np.maximum(now, at) if low else np.minimum(now, at + UNDER_PRESSURE),
-                    edge.spread, words.replace("_", " "),
-                    f"{'melts' if low else 'boils, and under pressure'} ({edge.label})", unit="K",
-                )  # fmt: skip
-            yield Outcome(
-                "usual-temperature", key, (point.name + TEMPERATURE,), now,
-                np.clip(now, cold, warm), 0.0, words.replace("_", " "), "usual", unit="K",
-            )  # fmt: skip
-
-
 _PHYSICS: tuple[tuple[Callable[[View], Iterator[Outcome]], frozenset[str]], ...] = (
     (_refraction, frozenset({N, RHO, SMILES})),
     (_index, frozenset({N, SMILES})),
@@ -375,10 +283,4 @@ _PHYSICS: tuple[tuple[Callable[[View], Iterator[Outcome]], frozenset[str]], ...]
     (_onsager, frozenset({EPS, RHO, MU, SMILES})),
     (_moment, frozenset({EPS, RHO, SMILES})),
     (_slope, frozenset({EPS, SMILES})),
-    (_boiling, frozenset({TB, SMILES})),
-    (_pressure, frozenset({PRESSURE})),
-    (_bounds, frozenset()),
-    (_flash, frozenset({TF})),
-    (_order, frozenset({TM, TB})),
-    (_measured_at, frozenset({EPS, N, RHO, TM, TB})),
 )

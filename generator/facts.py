@@ -29,11 +29,16 @@ Array = NDArray[np.float64]
 USUAL_EXPANSIVITY = 0.0011
 USUAL_EXPANSIVITY_ASSOCIATED = 0.0008
 TEMPERATURE = "@"
+# Group of the molecules that too few liquids are like.
+RARE = "rare"
 
 
 @dataclass(frozen=True, slots=True)
 class Point:
-    """One measured value; ``name`` is the cell of its value, ``name + "@"`` of its temperature."""
+    """One measured value; ``name`` is the cell of its value, ``name + "@"`` of its temperature.
+
+    ``repeats``: how many other liquids, of unrelated families, have its figure in the same source.
+    """
 
     name: str
     value: float
@@ -41,6 +46,7 @@ class Point:
     spread: float
     row: Measurement
     calculated: bool = False
+    repeats: int = 0
 
     @property
     def label(self) -> str:
@@ -137,9 +143,7 @@ def structure_of(molecule: Molecule) -> Structure:
     """The structure's own numbers."""
     numbers = foretold(molecule)
     refraction = numbers.get("refraction") or additive_refraction(molecule.smiles)
-    return Structure(
-        molecule, refraction, numbers, "rare" if is_rare(molecule) else molecule.family
-    )
+    return Structure(molecule, refraction, numbers, RARE if is_rare(molecule) else molecule.family)
 
 
 def facts_of(dataset: Dataset, slug: str, structure: Structure) -> Facts:

@@ -33,9 +33,11 @@ _TABLE = Path(__file__).parent / "reference" / "increments.csv"
 # additive one of Wildman and Crippen.
 MODELS = ("refraction", "molar_volume", "boiling_point", "liquid_moment")
 # A part that fewer open liquids have is rare: its contribution is hardly known.
-FEWEST = 5
+FEWEST = 12
 # ln of the most atoms (without hydrogen) that the contributions were taught by many liquids with.
 LARGEST = math.log(24)
+# Elements that enough open liquids hold.
+ELEMENTS = frozenset({"C", "H", "N", "O", "F", "Si", "P", "S", "Cl", "Br", "I"})
 _ORTHO = "[!#1;!R]~c~c~[!#1;!R]"
 
 
@@ -97,8 +99,8 @@ def _pattern(smarts: str) -> Mol:
 
 
 def turns(molecule: Molecule) -> bool:
-    """Whether a bond between two unsaturated groups turns, so that no one symmetry holds."""
-    return any(name.startswith("conjugated C") for name in parts(molecule))
+    """Whether a bond between two unsaturated carbons turns, so that no one shape holds."""
+    return "conjugated C-C" in parts(molecule)
 
 
 def size(molecule: Molecule) -> float:
@@ -123,15 +125,16 @@ def _contributions() -> Mapping[str, tuple[int, tuple[float, ...]]]:
 
 
 def is_organic(molecule: Molecule) -> bool:
-    """Whether there is carbon in it."""
-    return "C" in re.findall(r"[A-Z][a-z]?", molecule.formula)
+    """Whether there is carbon in it, and nothing that organic liquids seldom hold."""
+    elements = set(re.findall(r"[A-Z][a-z]?", molecule.formula))
+    return "C" in elements and elements <= ELEMENTS
 
 
 def is_rare(molecule: Molecule) -> bool:
     """Whether too few open liquids are like the molecule to foretell much about it."""
     known, found = _contributions(), parts(molecule)
     rare = any(name not in known or known[name][0] < FEWEST for name in found)
-    return rare or found["ln atoms"] > LARGEST
+    return rare or turns(molecule) or found["ln atoms"] > LARGEST
 
 
 @lru_cache(maxsize=4096)
@@ -139,7 +142,7 @@ def foretold(molecule: Molecule) -> Mapping[str, float]:
     """What the structure lets expect, by model.
 
     Molar refraction [cm3/mol], molar volume at 20 °C [cm3/mol], boiling point [K] and Onsager
-    moment of the liquid [D]. Empty for a molecule without carbon. How far off each may be stands
+    moment of the liquid [D]. Empty for a molecule that is not organic. How far off each may be stands
     in ``reference/spreads.csv``.
     """
     known = _contributions()

@@ -10,11 +10,12 @@ from __future__ import annotations
 import math
 from collections import defaultdict
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from statistics import median
 
 from generator import polarity
 from generator.agreement import EPS, ROOM, TB
-from generator.facts import Facts, View
+from generator.facts import Facts, Point, View
 from generator.increments import MODELS, series_key, size
 from generator.units import ZERO_CELSIUS
 
@@ -23,6 +24,8 @@ _MOST, _FEWEST, _REACH = 7, 3, 0.6
 # Members further apart than the forecast is good for say nothing (ln units).
 _USEFUL = {"refraction": 0.006, "molar_volume": 0.015, "boiling_point": 0.02, "liquid_moment": 0.2}
 _LEAST = 0.002
+# Liquids of this many families have nothing in common that would explain one figure for all.
+_UNRELATED = 3
 
 
 def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, tuple[float, float]]]:
@@ -53,6 +56,24 @@ def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, tuple[fl
                     error = max(apart, _LEAST) * 1.25 / math.sqrt(len(values))
                     shifts[facts.slug][model] = middle, error
     return shifts
+
+
+def with_repeats(everything: Sequence[Facts], key: str) -> list[Facts]:
+    """The same substances; each value of a quantity knows in how many others it stands again."""
+    families: dict[tuple[str, str], list[str]] = defaultdict(list)
+    for facts in everything:
+        for point in facts.points.get(key, ()):
+            families[point.row.source, point.row.printed].append(facts.structure.molecule.family)
+
+    def again(point: Point) -> int:
+        found = families[point.row.source, point.row.printed]
+        return len(found) - 1 if len(set(found)) >= _UNRELATED else 0
+
+    def counted(facts: Facts) -> Facts:
+        points = tuple(replace(p, repeats=again(p)) for p in facts.points[key])
+        return replace(facts, points={**facts.points, key: points})
+
+    return [counted(facts) if key in facts.points else facts for facts in everything]
 
 
 def remainders(facts: Facts) -> Mapping[str, float]:

@@ -19,13 +19,12 @@ from pathlib import Path
 
 import numpy as np
 
-from generator.facts import Array
+from generator.facts import RARE, Array
 from generator.outcome import CHECKS, Outcome
 
 _TABLE = Path(__file__).parent / "reference" / "spreads.csv"
-# A residual counts as a clash beyond this many spreads. Residuals of real liquids have longer
-# tails than a normal distribution, for which 4 would already be one in 16,000.
-LIMIT = 4.0
+# A residual counts as a clash beyond this many spreads; alone it names a cell from about four on.
+LIMIT = 3.0
 # The shipped spread weighs as much as this many comparisons of the handbook's own.
 PRIOR_COUNT = 60
 # A group with fewer comparisons than this has no spread of its own.
@@ -92,7 +91,9 @@ class Spreads:
 
     def of(self, check: str, group: str) -> Spread:
         """Spread of a group; where it has too few comparisons, of rare ones or the whole check."""
-        groups = (group, "rare", ALL)
+        if not CHECKS[check].learnt:
+            return Spread(0.0, CHECKS[check].resolution, 0)
+        groups = (group, RARE, ALL)
         found = next((s for g in groups if (s := self.table.get((check, g))) is not None), None)
         if found is None:
             return Spread(0.0, math.inf, 0)
@@ -103,17 +104,22 @@ class Spreads:
         usual = self.of(outcome.check, outcome.group)
         return math.hypot(usual.spread * outcome.weight, outcome.own)
 
+    def centre(self, outcome: Outcome) -> float:
+        """Where the residual of an outcome usually lies."""
+        weight = outcome.weight if CHECKS[outcome.check].relative else 1.0
+        return self.of(outcome.check, outcome.group).median * weight
+
     def deviation(self, outcome: Outcome) -> Array:
         """Residual in spreads; NaN where there is nothing to compare."""
-        usual = self.of(outcome.check, outcome.group)
-        centre = usual.median * (outcome.weight if CHECKS[outcome.check].relative else 1.0)
-        return np.asarray((outcome.residual - centre) / self.scale(outcome))
+        return np.asarray((outcome.residual - self.centre(outcome)) / self.scale(outcome))
 
 
 def learn(outcomes: Iterable[Outcome]) -> dict[tuple[str, str], Spread]:
     """Spread of every check and of every group that is large enough, from outcomes alone."""
     residuals: dict[tuple[str, str], list[float]] = defaultdict(list)
     for outcome in outcomes:
+        if not CHECKS[outcome.check].learnt:
+            continue
         residual = float(outcome.residual) / outcome.weight
         residuals[outcome.check, outcome.group].append(residual)
         residuals[outcome.check, ALL].append(residual)

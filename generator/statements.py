@@ -53,20 +53,19 @@ def _sentence(outcome: Outcome, spreads: Spreads) -> str:
         return f"{check.title}: {outcome.what_found} is not {outcome.what_expected}"
     unit = outcome.unit or QUANTITIES[outcome.group].unit
     found, expected = float(outcome.found), float(outcome.expected)
-    limit = LIMIT * spreads.scale(outcome)
-    residual = float(outcome.residual)
-    if unit == "K":
-        unit, found, expected = "degC", celsius(found), celsius(expected)
-    if check.relative and unit != "degC":
-        gap = f"{100 * math.expm1(residual):+.3g} %, limit {100 * limit:.2g} %"
+    limit, centre = LIMIT * spreads.scale(outcome), spreads.centre(outcome)
+    usual = expected * math.exp(centre) if check.relative else expected + centre
+    gap = f"{found - usual:+.3g}, limit {limit:.2g}"
+    if check.relative and unit == "K":
+        gap = f"{found - usual:+.3g}, limit {usual * math.expm1(limit):.2g}"
     elif check.relative:
-        middle = float(outcome.expected)
-        gap = f"{found - expected:+.3g}, limit {middle * limit:.2g}"
-    else:
-        gap = f"{residual:+.3g}, limit {limit:.2g}"
+        gap = f"{100 * (found / usual - 1):+.3g} %, limit {100 * math.expm1(limit):.2g} %"
+    if unit == "K":
+        unit, found, expected, usual = "degC", *map(celsius, (found, expected, usual))
+    shift = f", usual with it {_number(usual, unit)}" if abs(centre) > limit / LIMIT else ""
     return (
         f"{check.title}: {outcome.what_found} {_number(found, unit)}, {outcome.what_expected} "
-        f"{_number(expected, unit)} ({gap})"
+        f"{_number(expected, unit)}{shift} ({gap})"
     )
 
 
@@ -94,8 +93,10 @@ def _cell(solvent: Solvent, facts: Facts, blame: Blame) -> tuple[str, int, str, 
         found = f"{name} of {solvent.name} at {celsius(point.temperature):g} °C"
         return "measurements.csv", row.line, found, f"about {celsius(blame.best):.0f} °C"
     found = f"{row.printed} {row.printed_unit}".removesuffix(" 1")
-    best = _number(blame.best, QUANTITIES[row.quantity].unit)
-    return "measurements.csv", row.line, f"{name} of {solvent.name}: {found}", f"about {best}"
+    best = f"about {_number(blame.best, QUANTITIES[row.quantity].unit)}"
+    if blame.failed[0].check == "repeated":
+        best = "a figure of its own; this one may be an upper limit"
+    return "measurements.csv", row.line, f"{name} of {solvent.name}: {found}", best
 
 
 def _hint(facts: Facts, blame: Blame) -> str:

@@ -30,6 +30,7 @@ from generator import (
     reliability,
     spreads,
 )
+from generator.agreement import KAPPA
 from generator.cache import Cache
 from generator.dataset import Dataset, load_dataset
 from generator.structures import additive_refraction, molecule
@@ -176,6 +177,7 @@ def main(folder: Path, cache: Cache) -> None:
     # The contributions of the last time may not teach those of this time.
     write_table([], {})
     everything = evidence.everything(dataset, molecules, cache)
+    everything = neighbours.with_repeats(everything, KAPPA)
     write_reliability(dataset)
     write_spreads(everything, write_increments(everything))
 
