@@ -37,11 +37,7 @@ class Mark:
 
 @dataclass(frozen=True, slots=True)
 class Number:
-    """A number ready for print.
-
-    ``raw`` is what sorting uses. ``pad`` holds classes that make up for the digits missing behind
-    the decimal point compared with the longest number of the column: the points stand in line.
-    """
+    """A number ready for print. ``raw`` is what sorting uses."""
 
     raw: str
     value: str
@@ -51,7 +47,6 @@ class Number:
     basis: str
     marks: tuple[Mark, ...]
     sources: tuple[Link, ...]
-    pad: tuple[str, ...] = ()
 
     @property
     def letters(self) -> str:

@@ -45,14 +45,17 @@ class Kept:
         name: str,
         make: Callable[[Sequence[str]], list[_Made]],
         *more: object,
+        members: Mapping[str, Sequence[str]] | None = None,
     ) -> Mapping[str, _Made]:
         """One result of several substances, loaded as it is asked for.
 
         ``make`` is given those that are missing, in shares that helpers may work at; it returns
-        one result for each.
+        one result for each. ``members``: where a result is that of a set of substances, all of
+        them by the one that the set is called after.
         """
         named = digest(name, *more)
-        keys = {slug: digest(slug, self.key(slug), named) for slug in slugs}
+        sets = {slug: [slug] for slug in slugs} if members is None else members
+        keys = {slug: digest([(m, self.key(m)) for m in sets[slug]], named) for slug in slugs}
         stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
         missing = [slug for slug in slugs if slug not in stored]
         fresh = shared_out(make, missing, LEAST) if missing else []

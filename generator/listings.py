@@ -24,32 +24,21 @@ class Column:
 
 @dataclass(frozen=True, slots=True)
 class Cell:
-    """What stands in one place of a comparison table: a number, a picture or words."""
+    """What stands in one place of a comparison table: a number or words."""
 
     text: str = ""
     number: Number | None = None
-    picture: Markup | None = None
-
-
-@dataclass(frozen=True, slots=True)
-class TableRow:
-    """One substance in a comparison table."""
-
-    link: Link
-    cas: str
-    family: str
-    cells: tuple[Cell, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """One comparison table, a row a substance."""
+    """One comparison table, a row a substance; the rows are ready."""
 
     key: str
     title: str
     lead: str
     columns: tuple[Column, ...]
-    rows: tuple[TableRow, ...]
+    rows: tuple[Markup, ...]
     marks: tuple[Mark, ...]
 
 
@@ -76,6 +65,18 @@ class IsomerSet:
     temperatures: tuple[str, ...]
     rows: tuple[IsomerRow, ...]
     compare: str
+    marks: tuple[Mark, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class IsomerPart:
+    """A set of isomers as its page lists it, and its ready ``section``."""
+
+    anchor: str
+    formula: Markup
+    names: str
+    section: Markup
+    marks: tuple[Mark, ...]
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,16 +10,18 @@ from functools import lru_cache, partial
 from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined, Template
+from markupsafe import Markup
 
 from generator import comparisons, flammability, methods, overviews
 from generator.cache import digest
 from generator.catalogue import Catalogue
 from generator.contexts import Datasheet, Foot
 from generator.datasheet import COMPARED, datasheet, related
-from generator.kept import LEAST
+from generator.kept import LEAST, templates
+from generator.listings import IsomerPart, IsomerSet
 from generator.metrics import Settings
 from generator.timeline import timeline
-from generator.wording import cell_markup, marks_markup, marks_of
+from generator.wording import MARKS, cell_markup, marks_markup
 
 
 @dataclass(frozen=True, slots=True)
@@ -176,9 +178,26 @@ def _whole(
 
 
 def _isomers(book: Catalogue) -> dict[str, Any]:
-    sets = comparisons.isomer_sets(book)
-    marks = marks_of(*(c.number for s in sets for r in s.rows for c in r.cells))
-    return {"sets": sets, "marks": marks, "groups": comparisons.same_formula(book)}
+    sets = {members[0]: members for members in comparisons.isomer_sets(book)}
+    parts = book.handbook.kept.each(
+        tuple(sets),
+        "isomers",
+        lambda some: [_isomer_part(comparisons.isomer_set(book, sets[first])) for first in some],
+        templates(),
+        members=sets,
+    )
+    present = {mark.key for part in parts.values() for mark in part.marks}
+    return {
+        "sets": tuple(parts.values()),
+        "marks": tuple(mark for mark in MARKS if mark.key in present),
+        "groups": comparisons.same_formula(book),
+    }
+
+
+def _isomer_part(shown: IsomerSet) -> IsomerPart:
+    section = Markup(_template("isomer-set").render(set=shown))
+    names = ", ".join(link.text for link in shown.members)
+    return IsomerPart(shown.anchor, shown.formula, names, section, shown.marks)
 
 
 def _methods(book: Catalogue, figures: Mapping[str, str]) -> dict[str, Any]:

@@ -5,8 +5,7 @@ from __future__ import annotations
 import json
 import math
 import re
-from collections.abc import Mapping, Sequence
-from dataclasses import replace
+from collections.abc import Mapping
 from functools import lru_cache
 
 from markupsafe import Markup, escape
@@ -170,18 +169,24 @@ def marks_markup(marks: tuple[Mark, ...]) -> Markup:
     return Markup('<sup class="mark">{}</sup>').format(letters) if letters else Markup("")
 
 
-def cell_markup(number: Number | None, extra: str = "") -> Markup:
+def cell_markup(number: Number | None, extra: str = "", pad: str = "") -> Markup:
     """A number as a table cell: its decimal point in line, marks and uncertainty beside it.
 
-    Made here and not in a template, and of as few elements as can be, because a datasheet has
-    some two hundred of them and a comparison table of a thousand substances twenty thousand.
+    ``pad`` are the classes that put it in line. Made here and not in a template, and of as few
+    elements as can be, because a datasheet has some two hundred of them and a comparison table of
+    a thousand substances twenty thousand.
     """
-    classes = " ".join(("n", *number.pad, extra) if number else ("n", "none", extra)).rstrip()
+    head, tail = cell_parts(number, extra)
+    return Markup(f"{head}{pad}{tail}")
+
+
+def cell_parts(number: Number | None, extra: str = "") -> tuple[str, str]:
+    """The same cell in two parts, which the classes that put it in line come between."""
     if number is None:
-        return Markup(f'<td class="{classes}">–</td>')
+        return '<td class="n', f'{" none " + extra if extra else " none"}">–</td>'
     own = f"<small>±\u202f{number.uncertainty}</small>" if number.uncertainty else ""
-    return Markup(
-        f'<td class="{classes}" data-v="{number.raw}">{number.value}'
+    return '<td class="n', (
+        f'{" " + extra if extra else ""}" data-v="{number.raw}">{number.value}'
         f"{marks_markup(number.marks)}{own}</td>"
     )
 
@@ -198,25 +203,20 @@ def split_value(value: float, uncertainty: float | None, decimals: int) -> tuple
     return head, tail
 
 
-def aligned(numbers: Sequence[Number | None]) -> tuple[Number | None, ...]:
-    """The numbers of one column with the padding that puts their decimal points in line."""
-    places = [_places(item.value) if item else 0 for item in numbers]
-    most = max(places, default=0)
-    return tuple(
-        replace(item, pad=_padding(most, own)) if item else None
-        for item, own in zip(numbers, places, strict=True)
-    )
+def padding(most: int, own: int) -> str:
+    """Classes of a cell in whose column the longest number has ``most`` decimals, it ``own``.
+
+    So many digits are missing, and the point as well; -1 stands for no number at all.
+    """
+    point = " point" if own == 0 < most else ""
+    return f"{point} pad{most - own}" if most > own >= 0 else ""
 
 
-def _padding(most: int, own: int) -> tuple[str, ...]:
-    """Classes of a cell: so many digits are missing, and the point as well."""
-    point = ("point",) if own == 0 < most else ()
-    return (*point, f"pad{most - own}") if most > own else ()
-
-
-def _places(text: str) -> int:
-    """Digits behind the decimal point; a power of ten stands outside the line-up."""
-    return 0 if "×" in text else len(text.partition(".")[2])
+def places(number: Number | None) -> int:
+    """Digits behind the decimal point, -1 without a number; a power of ten counts as none."""
+    if number is None:
+        return -1
+    return 0 if "×" in number.value else len(number.value.partition(".")[2])
 
 
 def marks_of(*numbers: Number | None) -> tuple[Mark, ...]:

@@ -14,13 +14,14 @@ from generator.values import MARKS as MEANINGS
 from generator.values import Value
 from generator.wording import (
     MARKS,
-    aligned,
     cell_markup,
     celsius,
     celsius_label,
     formula_markup,
     marks_of,
     number,
+    padding,
+    places,
     printed_label,
     prose,
     range_label,
@@ -91,19 +92,18 @@ def test_number_keeps_sources_marks_and_temperature() -> None:
 
 def test_padding_puts_decimal_points_in_line() -> None:
     column = [number(value(x, u), {}) for x, u in ((78.36, 0.05), (2.0, 1.0), (5.5, 0.1))]
-    made = aligned([*column, None])
-    places = set()
-    for item in made[:3]:
+    most = max(map(places, column))
+    style = (ROOT / "site_src" / "pages" / "assets" / "tables.css").read_text(encoding="utf-8")
+    ends = set()
+    for item in column:
         assert item is not None
         whole, point, decimals = item.value.partition(".")
-        missing = sum(int(name[3:]) for name in item.pad if name.startswith("pad"))
-        assert bool(point) != ("point" in item.pad), (whole, item.pad)
-        places.add(len(decimals) + missing)
-    assert len(places) == 1
-    assert made[3] is None
-    style = (ROOT / "site_src" / "pages" / "assets" / "tables.css").read_text(encoding="utf-8")
-    for name in {name for item in made if item for name in item.pad}:
-        assert f".{name} {{" in style
+        classes = padding(most, places(item)).split()
+        assert bool(point) != ("point" in classes), (whole, classes)
+        ends.add(len(decimals) + sum(int(c[3:]) for c in classes if c.startswith("pad")))
+        assert all(f".{name} {{" in style for name in classes)
+    assert ends == {most}
+    assert padding(most, places(None)) == ""
 
 
 def test_cells() -> None:
@@ -112,6 +112,8 @@ def test_cells() -> None:
     assert cell.startswith('<td class="n ref" data-v="20.5">')
     assert '20.50<sup class="mark">x</sup><small>±\u202f0.10</small></td>' in cell
     assert cell_markup(None) == '<td class="n none">–</td>'
+    assert cell_markup(None, "ref") == '<td class="n none ref">–</td>'
+    assert cell_markup(made, "ref", " point pad2").startswith('<td class="n point pad2 ref" data-v')
 
 
 def test_every_mark_has_a_letter_of_its_own() -> None:
