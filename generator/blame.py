@@ -41,7 +41,7 @@ _SLIP_BONUS = 1.0
 # What no open table prints may have been mistyped, beside being wrong where it is from.
 _TYPED = 1.0
 # Share of a check's cost that counts beyond its cap: a slip of the point is no odd molecule.
-_BEYOND = 0.15
+_BEYOND = 0.2
 # Two sources contradict each other and nothing else speaks: one is named where it is this much
 # more prone, or the clash this many times beyond its limit.
 _LEAST_LEAD, _PLAIN = 0.7, 1.8
