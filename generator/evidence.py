@@ -11,7 +11,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from generator import estimates
-from generator.agreement import KAPPA
 from generator.blame import Blame, blamed, curve_of, point_of
 from generator.cache import Cache
 from generator.dataset import Correction, Dataset
@@ -20,10 +19,10 @@ from generator.expectations import outcomes
 from generator.facts import Facts, View, facts_of, structure_of
 from generator.identity import CAS, SMILES, identify, printed
 from generator.metrics import Handbook
-from generator.neighbours import series_of, with_repeats
+from generator.neighbours import placed, sketch, surroundings
 from generator.parallel import shared_out
 from generator.quantities import MEASURED
-from generator.spreads import Spreads, Threshold, spreads_for, thresholds
+from generator.spreads import Spreads, Threshold, compared, spreads_for, suspected, thresholds
 from generator.statements import problem_of
 from generator.structures import Molecule, molecule
 
@@ -49,43 +48,124 @@ def check_handbook(handbook: Handbook, cache: Cache | None = None) -> tuple[Prob
 def review(handbook: Handbook, cache: Cache | None = None) -> Review:
     """Suspects, those a correction of action ``keep`` silences with its reason, and limits.
 
-    ``cache`` keeps what is estimated from structures.
+    ``cache`` keeps what is estimated from structures. Whatever follows from a substance, its
+    neighbours and the limits it is judged by is kept with the handbook.
     """
-    dataset = handbook.dataset
-    facts, spreads = prepared(dataset, handbook.molecules, cache or Cache(None))
-    problems, kept = [], []
-    for substance in facts:
-        for blame in blamed(substance, spreads):
-            problem = problem_of(dataset.solvents[substance.slug], substance, blame, spreads)
-            decision = _kept(dataset, substance, blame)
+    dataset, kept = handbook.dataset, handbook.kept
+    slugs = tuple(dataset.solvents)
+
+    def backgrounds(some: Sequence[str]) -> list[Facts]:
+        molecules = {slug: handbook.molecules[slug] for slug in some}
+        return _backgrounds(dataset, molecules, cache or Cache(None))
+
+    known = kept.each(slugs, "background", backgrounds)
+    sketches = kept.each(
+        slugs, "sketch", lambda some: [sketch(_facts(dataset, known[slug])) for slug in some]
+    )
+    around = surroundings(list(sketches.values()))
+
+    def facts(slug: str) -> Facts:
+        return placed(_facts(dataset, known[slug]), around[slug])
+
+    found = kept.each(
+        slugs,
+        "comparisons",
+        lambda some: [compared(outcomes(View(facts(slug)))) for slug in some],
+        beside=around,
+    )
+    spreads = spreads_for(found.values())
+    judged = kept.each(
+        suspected(found, spreads),
+        "judgement",
+        lambda some: [_judged(dataset, facts(slug), spreads) for slug in some],
+        beside=around,
+        stands=lambda judgement: spreads.give(judgement.limits),
+    )
+    problems, silenced = [], []
+    for slug, judgement in judged.items():
+        lines = _lines(dataset, slug)
+        for problem, decision in judgement.problems:
+            there = replace(problem, line=lines[problem.file][problem.line])
             if decision is None:
-                problems.append(problem)
+                problems.append(there)
             else:
-                kept.append((problem, decision.reason))
+                silenced.append((there, decision))
     ordered = sorted(problems, key=lambda p: (-p.strength, p))
-    return Review(tuple(ordered), tuple(kept), thresholds(spreads))
+    return Review(tuple(ordered), tuple(silenced), thresholds(spreads))
+
+
+@dataclass(frozen=True)
+class _Judgement:
+    """What is held against one substance, and the limits it was judged by.
+
+    ``problems`` have the position of a row among the substance's own in the place of its line,
+    so that they hold wherever the rows stand; beside each the reason why it is silenced, if it is.
+    """
+
+    problems: tuple[tuple[Problem, str | None], ...]
+    limits: Mapping[tuple[str, str], tuple[float, float]]
+
+
+def _judged(dataset: Dataset, facts: Facts, spreads: Spreads) -> _Judgement:
+    asked: dict[tuple[str, str], tuple[float, float]] = {}
+    tracing = replace(spreads, asked=asked)
+    lines, problems = _lines(dataset, facts.slug), []
+    for blame in blamed(facts, tracing):
+        problem = problem_of(dataset.solvents[facts.slug], facts, blame, tracing)
+        decision = _kept(dataset, facts, blame)
+        place = lines[problem.file].index(problem.line)
+        problems.append(
+            (replace(problem, line=place), None if decision is None else decision.reason)
+        )
+    return _Judgement(tuple(problems), asked)
+
+
+def _lines(dataset: Dataset, slug: str) -> Mapping[str, Sequence[int]]:
+    """The lines of the rows of one substance, by file."""
+    measured = [row.line for key in MEASURED for row in dataset.measurements_of(slug, key)]
+    fitted = [row.line for key in MEASURED for row in dataset.correlations_of(slug, key)]
+    return {
+        "solvents.csv": [dataset.solvents[slug].line],
+        "measurements.csv": measured,
+        "correlations.csv": fitted,
+    }
 
 
 def prepared(
     dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache
 ) -> tuple[list[Facts], Spreads]:
     """The cells of every substance, and how far their comparisons usually lie apart."""
-    facts = with_repeats(everything(dataset, molecules, cache), KAPPA)
-    series = series_of(facts)
-    facts = [replace(f, series=series[f.slug]) for f in facts]
-    return facts, spreads_for(o for f in facts for o in outcomes(View(f)))
+    known = everything(dataset, molecules, cache)
+    around = surroundings([sketch(facts) for facts in known])
+    found = [placed(facts, around[facts.slug]) for facts in known]
+    return found, spreads_for(compared(outcomes(View(facts))) for facts in found)
 
 
 def everything(dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache) -> list[Facts]:
-    """The cells of every substance with what their structures and CAS numbers foretell."""
+    """The cells of some substances with what their structures and CAS numbers foretell."""
+    return [_facts(dataset, known) for known in _backgrounds(dataset, molecules, cache)]
+
+
+def _facts(dataset: Dataset, background: Facts) -> Facts:
+    """The cells of a substance on a background."""
+    own = facts_of(dataset, background.slug, background.structure)
+    return replace(background, points=own.points, curves=own.curves)
+
+
+def _backgrounds(dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache) -> list[Facts]:
+    """What structures, names and CAS numbers foretell of some substances, without their cells."""
     moments = _moments(dataset, molecules, cache)
     found = []
-    for slug, solvent in dataset.solvents.items():
+    for slug, structure in molecules.items():
+        solvent = dataset.solvents[slug]
         rows = [row for key in MEASURED for row in dataset.measurements_of(slug, key)]
         who = identify(solvent, rows)
         found.append(
-            replace(
-                facts_of(dataset, slug, structure_of(molecules[slug])),
+            Facts(
+                slug,
+                structure_of(structure),
+                {},
+                {},
                 estimate=moments.get(slug),
                 identity=who,
                 prints=printed(solvent.cas),

@@ -45,22 +45,27 @@ class Kept:
         name: str,
         make: Callable[[Sequence[str]], list[_Made]],
         *more: object,
-        members: Mapping[str, Sequence[str]] | None = None,
+        beside: Mapping[str, object] | None = None,
+        stands: Callable[[_Made], bool] | None = None,
     ) -> Mapping[str, _Made]:
         """One result of several substances, loaded as it is asked for.
 
         ``make`` is given those that are missing, in shares that helpers may work at; it returns
-        one result for each. ``members``: where a result is that of a set of substances, all of
-        them by the one that the set is called after.
+        one result for each. ``more`` is what all the results depend on besides the substances,
+        ``beside`` what each of them does. A kept result that does not ``stand`` is made again.
         """
         named = digest(name, *more)
-        sets = {slug: [slug] for slug in slugs} if members is None else members
-        keys = {slug: digest([(m, self.key(m)) for m in sets[slug]], named) for slug in slugs}
+        others = beside or {}
+        keys = {slug: digest(slug, self.key(slug), others.get(slug), named) for slug in slugs}
         stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
-        missing = [slug for slug in slugs if slug not in stored]
+        made: dict[str, _Made] = {}
+        if stands is not None:
+            read = {slug: pickle.loads(data) for slug, data in stored.items()}
+            made = {slug: result for slug, result in read.items() if stands(result)}
+        missing = [slug for slug in slugs if slug not in (stored if stands is None else made)]
         fresh = shared_out(make, missing, LEAST) if missing else []
-        made = dict(zip(missing, fresh, strict=True))
-        for slug, result in made.items():
+        for slug, result in zip(missing, fresh, strict=True):
+            made[slug] = result
             if slug in self._keys:
                 self._pack.put(keys[slug], pickle.dumps(result, pickle.HIGHEST_PROTOCOL))
         return _Loaded(keys, stored, made)

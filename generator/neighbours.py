@@ -10,12 +10,12 @@ from __future__ import annotations
 import math
 from collections import defaultdict
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from statistics import median
 
 from generator import polarity
-from generator.agreement import EPS, ROOM, TB
-from generator.facts import Facts, Point, View
+from generator.agreement import EPS, KAPPA, ROOM, TB
+from generator.facts import Facts, View
 from generator.increments import MODELS, series_key, size
 from generator.units import ZERO_CELSIUS
 
@@ -28,23 +28,74 @@ _LEAST = 0.002
 _UNRELATED = 3
 
 
-def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, tuple[float, float]]]:
+@dataclass(frozen=True)
+class Sketch:
+    """What a substance tells its neighbours: where it stands in which series, and its figures.
+
+    ``figures`` are its conductivities as their sources print them.
+    """
+
+    slug: str
+    series: str
+    size: float
+    remainders: Mapping[str, float]
+    family: str
+    figures: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True)
+class Surroundings:
+    """What its neighbours tell of a substance; see ``facts.Facts`` and ``facts.Point``."""
+
+    series: Mapping[str, tuple[float, float]]
+    repeats: tuple[int, ...]
+
+
+def sketch(facts: Facts) -> Sketch:
+    """What a substance tells its neighbours."""
+    molecule = facts.structure.molecule
+    figures = tuple((p.row.source, p.row.printed) for p in facts.points.get(KAPPA, ()))
+    return Sketch(
+        facts.slug,
+        series_key(molecule),
+        size(molecule),
+        remainders(facts),
+        molecule.family,
+        figures,
+    )
+
+
+def surroundings(sketches: Sequence[Sketch]) -> dict[str, Surroundings]:
+    """What the substances tell of each other."""
+    series, repeats = series_of(sketches), _repeats(sketches)
+    return {s.slug: Surroundings(series[s.slug], repeats[s.slug]) for s in sketches}
+
+
+def placed(facts: Facts, among: Surroundings) -> Facts:
+    """A substance with what its neighbours tell of it."""
+    points = facts.points
+    if KAPPA in points:
+        counted = zip(points[KAPPA], among.repeats, strict=True)
+        points = {**points, KAPPA: tuple(replace(p, repeats=count) for p, count in counted)}
+    return replace(facts, series=among.series, points=points)
+
+
+def series_of(sketches: Sequence[Sketch]) -> Mapping[str, Mapping[str, tuple[float, float]]]:
     """For each substance and model: what its neighbours have beyond the forecast.
 
     The median of their ln(measured/foretold), and the standard error of that median; only where
     it is worth more than no correction at all.
     """
-    groups: dict[str, list[tuple[float, Facts, Mapping[str, float]]]] = defaultdict(list)
-    for facts in everything:
-        key = series_key(facts.structure.molecule)
-        groups[key].append((size(facts.structure.molecule), facts, remainders(facts)))
-    shifts: dict[str, dict[str, tuple[float, float]]] = {facts.slug: {} for facts in everything}
+    groups: dict[str, list[Sketch]] = defaultdict(list)
+    for own in sketches:
+        groups[own.series].append(own)
+    shifts: dict[str, dict[str, tuple[float, float]]] = {own.slug: {} for own in sketches}
     for members in groups.values():
-        for own_size, facts, _ in members:
+        for own in members:
             near = sorted(
-                (abs(other_size - own_size), other.slug, remainder)
-                for other_size, other, remainder in members
-                if other is not facts and abs(other_size - own_size) <= _REACH
+                (abs(other.size - own.size), other.slug, other.remainders)
+                for other in members
+                if other is not own and abs(other.size - own.size) <= _REACH
             )
             for model in MODELS:
                 values = [r[model] for *_, r in near if model in r][:_MOST]
@@ -54,26 +105,22 @@ def series_of(everything: Sequence[Facts]) -> Mapping[str, Mapping[str, tuple[fl
                 apart = 1.4826 * median(abs(value - middle) for value in values)
                 if apart < _USEFUL[model]:
                     error = max(apart, _LEAST) * 1.25 / math.sqrt(len(values))
-                    shifts[facts.slug][model] = middle, error
+                    shifts[own.slug][model] = middle, error
     return shifts
 
 
-def with_repeats(everything: Sequence[Facts], key: str) -> list[Facts]:
-    """The same substances; each value of a quantity knows in how many others it stands again."""
+def _repeats(sketches: Sequence[Sketch]) -> dict[str, tuple[int, ...]]:
+    """In how many other substances each printed figure stands again, where they are unrelated."""
     families: dict[tuple[str, str], list[str]] = defaultdict(list)
-    for facts in everything:
-        for point in facts.points.get(key, ()):
-            families[point.row.source, point.row.printed].append(facts.structure.molecule.family)
+    for own in sketches:
+        for figure in own.figures:
+            families[figure].append(own.family)
 
-    def again(point: Point) -> int:
-        found = families[point.row.source, point.row.printed]
+    def again(figure: tuple[str, str]) -> int:
+        found = families[figure]
         return len(found) - 1 if len(set(found)) >= _UNRELATED else 0
 
-    def counted(facts: Facts) -> Facts:
-        points = tuple(replace(p, repeats=again(p)) for p in facts.points[key])
-        return replace(facts, points={**facts.points, key: points})
-
-    return [counted(facts) if key in facts.points else facts for facts in everything]
+    return {own.slug: tuple(map(again, own.figures)) for own in sketches}
 
 
 def remainders(facts: Facts) -> Mapping[str, float]:

@@ -184,7 +184,7 @@ def _isomers(book: Catalogue) -> dict[str, Any]:
         "isomers",
         lambda some: [_isomer_part(comparisons.isomer_set(book, sets[first])) for first in some],
         templates(),
-        members=sets,
+        beside={first: [(m, book.handbook.kept.key(m)) for m in sets[first]] for first in sets},
     )
     present = {mark.key for part in parts.values() for mark in part.marks}
     return {

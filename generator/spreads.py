@@ -12,7 +12,7 @@ from __future__ import annotations
 import csv
 import math
 from collections import defaultdict
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
@@ -85,12 +85,27 @@ def shipped() -> Mapping[tuple[str, str], Spread]:
 
 @dataclass(frozen=True)
 class Spreads:
-    """The spreads in force for one handbook."""
+    """The spreads in force for one handbook.
+
+    ``asked`` collects those that were asked for, median and spread, where it is given.
+    """
 
     table: Mapping[tuple[str, str], Spread]
+    asked: dict[tuple[str, str], tuple[float, float]] | None = None
 
     def of(self, check: str, group: str) -> Spread:
         """Spread of a group; where it has too few comparisons, of rare ones or the whole check."""
+        found = self._of(check, group)
+        if self.asked is not None:
+            self.asked[check, group] = found.median, found.spread
+        return found
+
+    def give(self, asked: Mapping[tuple[str, str], tuple[float, float]]) -> bool:
+        """Whether the same questions have the same answers."""
+        found = {key: self._of(*key) for key in asked}
+        return all((found[k].median, found[k].spread) == asked[k] for k in asked)
+
+    def _of(self, check: str, group: str) -> Spread:
         if not CHECKS[check].learnt:
             return Spread(0.0, CHECKS[check].resolution, 0)
         groups = (group, RARE, ALL)
@@ -114,23 +129,37 @@ class Spreads:
         return np.asarray((outcome.residual - self.centre(outcome)) / self.scale(outcome))
 
 
-def learn(outcomes: Iterable[Outcome]) -> dict[tuple[str, str], Spread]:
-    """Spread of every check and of every group that is large enough, from outcomes alone."""
-    residuals: dict[tuple[str, str], list[float]] = defaultdict(list)
+Key = tuple[str, str]
+Compared = Mapping[Key, Sequence[tuple[float, float, float]]]
+"""By check and group: residual, weight and own uncertainty of each comparison."""
+
+
+def compared(outcomes: Iterable[Outcome]) -> Compared:
+    """What there is to learn from the outcomes of a substance, or of several."""
+    found: dict[Key, list[tuple[float, float, float]]] = defaultdict(list)
     for outcome in outcomes:
-        if not CHECKS[outcome.check].learnt:
-            continue
-        residual = float(outcome.residual) / outcome.weight
-        residuals[outcome.check, outcome.group].append(residual)
-        residuals[outcome.check, ALL].append(residual)
-    found = {
+        numbers = float(outcome.residual), outcome.weight, outcome.own
+        found[outcome.check, outcome.group].append(numbers)
+    return dict(found)
+
+
+def learn(each: Iterable[Compared]) -> dict[Key, Spread]:
+    """Spread of every check and of every group that is large enough, from outcomes alone."""
+    residuals: dict[Key, list[float]] = defaultdict(list)
+    for found in each:
+        for (check, group), numbers in found.items():
+            if CHECKS[check].learnt:
+                own = [residual / weight for residual, weight, _ in numbers]
+                residuals[check, group] += own
+                residuals[check, ALL] += own
+    usual = {
         key: robust(values)
         for key, values in sorted(residuals.items())
         if len(values) >= FEWEST or key[1] == ALL
     }
     return {
-        (check, group): usual if group == ALL else _leaning(usual, found, check)
-        for (check, group), usual in found.items()
+        (check, group): spread if group == ALL else _leaning(spread, usual, check)
+        for (check, group), spread in usual.items()
     }
 
 
@@ -141,14 +170,44 @@ def _leaning(usual: Spread, found: Mapping[tuple[str, str], Spread], check: str)
     return Spread(usual.median, share * usual.spread + (1 - share) * others, usual.count)
 
 
-def spreads_for(outcomes: Iterable[Outcome]) -> Spreads:
+def spreads_for(each: Iterable[Compared]) -> Spreads:
     """The handbook's own spreads joined with the shipped ones."""
-    own, floor = learn(outcomes), shipped()
+    own, floor = learn(each), shipped()
     table = {}
     for key in sorted({*own, *floor}):
         mine, base = own.get(key), floor.get(key) or floor.get((key[0], ALL))
         table[key] = base if mine is None else mine if base is None else _joined(mine, base)
-    return Spreads({key: value for key, value in table.items() if value is not None})
+    return Spreads({key: _rounded(value) for key, value in table.items() if value is not None})
+
+
+def _rounded(usual: Spread) -> Spread:
+    """A spread to the next of twenty steps a decade (ISO 3, R20), a median to a tenth of that.
+
+    It is known no better, and one value more or less shall not move every limit.
+    """
+    if not usual.spread > 0:
+        return usual
+    spread = 10 ** (round(20 * math.log10(usual.spread)) / 20)
+    return Spread(round(10 * usual.median / spread) * spread / 10, spread, usual.count)
+
+
+def suspected(each: Mapping[str, Compared], spreads: Spreads) -> list[str]:
+    """The substances of which some comparison lies beyond its limit."""
+    gathered: dict[Key, list[tuple[float, float, float]]] = defaultdict(list)
+    owners: dict[Key, list[str]] = defaultdict(list)
+    for slug, found in each.items():
+        for key, numbers in found.items():
+            gathered[key] += numbers
+            owners[key] += [slug] * len(numbers)
+    beyond: set[str] = set()
+    for (check, group), numbers in gathered.items():
+        residual, weight, own = np.array(numbers).T
+        usual = spreads.of(check, group)
+        centre = usual.median * (weight if CHECKS[check].relative else 1.0)
+        z = (residual - centre) / np.hypot(usual.spread * weight, own)
+        clash = np.abs(np.nan_to_num(z)) > LIMIT
+        beyond.update(slug for slug, far in zip(owners[check, group], clash, strict=True) if far)
+    return [slug for slug in each if slug in beyond]
 
 
 def _joined(mine: Spread, base: Spread) -> Spread:

@@ -30,7 +30,6 @@ from generator import (
     reliability,
     spreads,
 )
-from generator.agreement import KAPPA
 from generator.cache import Cache
 from generator.dataset import Dataset, load_dataset
 from generator.structures import additive_refraction, molecule
@@ -137,7 +136,7 @@ def write_spreads(everything: list[facts.Facts], unseen: list[Mapping[str, float
         refraction = foretold.get("refraction", structure.refraction)
         structure = replace(structure, foretold=foretold, refraction=refraction)
         honest.append(replace(substance, structure=structure))
-    series = neighbours.series_of(honest)
+    series = neighbours.series_of([neighbours.sketch(substance) for substance in honest])
     found = [
         outcome
         for substance in honest
@@ -148,7 +147,7 @@ def write_spreads(everything: list[facts.Facts], unseen: list[Mapping[str, float
     with (REFERENCE / "spreads.csv").open("w", encoding="utf-8", newline="") as file:
         writer = csv.writer(file, lineterminator="\n")
         writer.writerow(["check", "group", "median", "spread", "count"])
-        for (check, group), usual in spreads.learn(found).items():
+        for (check, group), usual in spreads.learn([spreads.compared(found)]).items():
             print(f"{check:20} {group:28} {usual.median:9.4f} {usual.spread:9.4f} {usual.count}")
             numbers = (f"{usual.median:.4g}", f"{usual.spread:.4g}", usual.count)
             writer.writerow([check, group, *numbers])
@@ -177,7 +176,8 @@ def main(folder: Path, cache: Cache) -> None:
     # The contributions of the last time may not teach those of this time.
     write_table([], {})
     everything = evidence.everything(dataset, molecules, cache)
-    everything = neighbours.with_repeats(everything, KAPPA)
+    around = neighbours.surroundings([neighbours.sketch(substance) for substance in everything])
+    everything = [neighbours.placed(f, around[f.slug]) for f in everything]
     write_reliability(dataset)
     write_spreads(everything, write_increments(everything))
 

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 
+from generator import evidence
 from generator.cache import Cache
 from generator.dataset import load_dataset
 from generator.kept import NOTHING, Kept, kept
@@ -87,3 +88,46 @@ def test_a_substance_alone_has_the_numbers_it_has_among_others(few_tables: Path)
         alone = compute(replace(dataset, solvents={slug: dataset.solvents[slug]}), Settings())
         for key in QUANTITIES:
             assert repr(alone.series(slug, key)) == repr(together.series(slug, key))
+
+
+def _with_wrong_cells(folder: Path) -> None:
+    """A density and a permittivity ten times too large."""
+    table = folder / "measurements.csv"
+    lines = table.read_text(encoding="utf-8").splitlines()
+    for start in ("acetone,density,", "hexane,relative_permittivity,"):
+        at = next(i for i, line in enumerate(lines) if line.startswith(start))
+        cells = lines[at].split(",")
+        lines[at] = ",".join([*cells[:2], str(10 * float(cells[2])), *cells[3:]])
+    table.write_text("\n".join(lines) + "\n", encoding="utf-8")
+
+
+def _reviewed(folder: Path, cache: Cache, *, store: bool) -> evidence.Review:
+    dataset = load_dataset(folder)
+    results = kept(cache, dataset.revisions) if store else NOTHING
+    made = evidence.review(compute(dataset, Settings(), cache, results), cache)
+    results.save(forget=False)
+    return made
+
+
+def test_kept_findings_are_the_findings(few_tables: Path, tmp_path: Path) -> None:
+    cache = Cache(tmp_path / "cache")
+    before = _reviewed(few_tables, cache, store=True)
+    _with_wrong_cells(few_tables)
+    found = _reviewed(few_tables, cache, store=True)
+    assert len(found.problems) > len(before.problems)
+    assert found == _reviewed(few_tables, Cache(None), store=False)
+    assert found == _reviewed(few_tables, cache, store=True)
+
+
+def test_kept_findings_follow_their_rows(few_tables: Path, tmp_path: Path) -> None:
+    cache = Cache(tmp_path / "cache")
+    _with_wrong_cells(few_tables)
+    before = _reviewed(few_tables, cache, store=True)
+    table = few_tables / "measurements.csv"
+    header, *rows = table.read_text(encoding="utf-8").splitlines()
+    water = [row for row in rows if row.startswith("water,")]
+    rest = [row for row in rows if not row.startswith("water,")]
+    table.write_text("\n".join([header, *rest, *water]) + "\n", encoding="utf-8")
+    after = _reviewed(few_tables, cache, store=True)
+    assert {p.line for p in after.problems} != {p.line for p in before.problems}
+    assert after == _reviewed(few_tables, Cache(None), store=False)
