@@ -25,7 +25,7 @@ from generator.agreement import (
     inside,
     moment_spread,
 )
-from generator.facts import RARE, Array, Curve, Point, View
+from generator.facts import RARE, Array, Curve, Point, View, middle_of
 from generator.identity import SMILES
 from generator.increments import turns
 from generator.outcome import Outcome, cells, relative_spread
@@ -238,7 +238,7 @@ def sensitivity(mu: float, n: ArrayLike, volume: ArrayLike, temperature: ArrayLi
 
 def _responses(mu: Array, n: ArrayLike, volume: ArrayLike, temperature: ArrayLike) -> Array:
     """ln ε at several moments [D], at the middle of what is tried."""
-    middle = [float(np.nanmedian(np.asarray(x))) for x in (n, volume, temperature)]
+    middle = [middle_of(x) for x in (n, volume, temperature)]
     return np.log(polarity.onsager_permittivity(mu, *middle))
 
 

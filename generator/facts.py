@@ -244,7 +244,7 @@ class View:
         if isinstance(source, Curve):
             return self.curve(source, temperature)
         at = np.asarray(temperature, dtype=np.float64)
-        alpha = self.expansivity(float(np.clip(np.nanmedian(np.atleast_1d(at)), 150.0, 500.0)))
+        alpha = self.expansivity(float(np.clip(middle_of(at), 150.0, 500.0)))
         density: Array = self.value(source) * np.exp(-alpha * (at - self.temperature(source)))
         return density
 
@@ -258,6 +258,13 @@ class View:
             share = share * np.exp(-self.expansivity(point.temperature) * away)
             index: Array = np.sqrt((1 + 2 * share) / (1 - share))
         return index
+
+
+def middle_of(numbers: ArrayLike) -> float:
+    """Median of those that are numbers; NaN where none is."""
+    known = np.ravel(numbers)
+    known = known[~np.isnan(known)]
+    return float(np.median(known)) if known.size else math.nan
 
 
 def celsius(kelvin: float) -> float:
