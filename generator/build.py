@@ -59,9 +59,7 @@ def inspect(
     common = code(), settings, sorted(dataset.usual.items())
     handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
     say("Cross-checking them")
-    suspects = evidence.check_handbook(handbook, cache)
-    handbook.kept.save(forget=False)
-    return handbook, (*structural, *suspects)
+    return handbook, (*structural, *evidence.check_handbook(handbook, cache))
 
 
 def review(
@@ -95,6 +93,7 @@ def build_site(
     models = modelfigures.draw(accuracy.comparisons(handbook), cache)
     drawn = figures.figures_of(handbook, cache, models)
     package = read_package(data)
+    pages.keep_templates(cache)
     made = pages.render_all(book, settings, drawn, package, known, drawn.prepare)
     files = {**exports.exports(book, data), sidebyside.PATH: sidebyside.data_script(book)}
     handbook.kept.save(forget=True)

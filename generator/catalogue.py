@@ -186,12 +186,14 @@ def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
         isomer_sets=tuple(tuple(members) for members in positions.values() if len(members) > 1),
         rows=_rows(handbook),
         _by_slug={slug: tuple(found) for slug, found in by_slug.items()},
-        _kirkwood={slug: _value(handbook, slug, "kirkwood_function") for slug in in_order},
+        _kirkwood=handbook.kept.each(
+            in_order, "kirkwood function", lambda some: [_kirkwood(handbook, s) for s in some]
+        ),
     )
 
 
-def _value(handbook: Handbook, slug: str, key: str) -> float | None:
-    value = handbook.at(slug, key)
+def _kirkwood(handbook: Handbook, slug: str) -> float | None:
+    value = handbook.at(slug, "kirkwood_function")
     return None if value is None else value.value
 
 

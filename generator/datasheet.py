@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 from markupsafe import Markup
 
@@ -383,10 +384,15 @@ def related(catalogue: Catalogue, slug: str, figures: Mapping[str, str]) -> Rela
     """All that the sheets of other substances show of one."""
     handbook = catalogue.handbook
     solvent = handbook.dataset.solvents[slug]
-    return Related(
-        Link(solvent.name, f"{slug}.html"),
-        solvent.cas,
-        number(handbook.at(slug, "relative_permittivity"), {}),
-        POLAR[handbook.is_polar(slug)],
-        catalogue.picture(figures, slug, "scale"),
+    shown = handbook.kept.of(
+        slug,
+        "related",
+        lambda: Related(
+            Link(solvent.name, f"{slug}.html"),
+            solvent.cas,
+            number(handbook.at(slug, "relative_permittivity"), {}),
+            POLAR[handbook.is_polar(slug)],
+            Markup(""),
+        ),
     )
+    return replace(shown, scale=catalogue.picture(figures, slug, "scale"))

@@ -23,6 +23,7 @@ from generator.listings import (
     ReviewRow,
     SourceEntry,
 )
+from generator.metrics import Handbook
 from generator.polarity_map import Axis, Point, polarity_map
 from generator.units import ZERO_CELSIUS
 from generator.wording import celsius_label, number, prose, script_json
@@ -60,34 +61,36 @@ def home(catalogue: Catalogue, laboratory: str, foot: Foot) -> Home:
 
 def _index_json(catalogue: Catalogue) -> Markup:
     """The finder's index. ``<`` is escaped so that the text may stand inside a script element."""
+    entries = catalogue.handbook.kept.each(
+        catalogue.in_order,
+        "finder",
+        lambda slugs: [script_json(_entry(catalogue, slug)) for slug in slugs],
+    )
+    return Markup(f"[{','.join(entries.values())}]")
+
+
+def _entry(catalogue: Catalogue, slug: str) -> dict[str, Any]:
     handbook = catalogue.handbook
-    links = Links(ROOT)
-    entries = []
-    for slug in catalogue.in_order:
-        solvent = handbook.dataset.solvents[slug]
-        molecule = handbook.molecules[slug]
-        permittivity = number(handbook.at(slug, "relative_permittivity"), {})
-        liquid = handbook.liquid_range(slug)
-        flash = catalogue.flash_class(slug)
-        entries.append(
-            {
-                "n": solvent.name,
-                "c": solvent.cas,
-                "f": molecule.formula,
-                "s": list(solvent.synonyms),
-                "k": molecule.inchikey,
-                "g": f"family-{anchor(molecule.family)}",
-                "p": handbook.is_polar(slug),
-                "e": permittivity.value if permittivity else "",
-                "t": permittivity.temperature if permittivity else "",
-                "u": slug,
-                "m": _degrees(liquid.low),
-                "b": _degrees(liquid.high),
-                "h": flash.key if flash else "",
-                "o": int(bool(catalogue.rows[slug].stock)),
-            }
-        )
-    return script_json(entries)
+    solvent, molecule = handbook.dataset.solvents[slug], handbook.molecules[slug]
+    permittivity = number(handbook.at(slug, "relative_permittivity"), {})
+    liquid = handbook.liquid_range(slug)
+    flash = catalogue.flash_class(slug)
+    return {
+        "n": solvent.name,
+        "c": solvent.cas,
+        "f": molecule.formula,
+        "s": list(solvent.synonyms),
+        "k": molecule.inchikey,
+        "g": f"family-{anchor(molecule.family)}",
+        "p": handbook.is_polar(slug),
+        "e": permittivity.value if permittivity else "",
+        "t": permittivity.temperature if permittivity else "",
+        "u": slug,
+        "m": _degrees(liquid.low),
+        "b": _degrees(liquid.high),
+        "h": flash.key if flash else "",
+        "o": int(bool(catalogue.rows[slug].stock)),
+    }
 
 
 def _degrees(temperature: float | None) -> float | None:
@@ -96,27 +99,12 @@ def _degrees(temperature: float | None) -> float | None:
 
 
 def _map(catalogue: Catalogue) -> Markup:
-    handbook = catalogue.handbook
-    links = Links(ROOT)
-    points = []
-    for slug in catalogue.in_order:
-        refraction = handbook.at(slug, "molar_refraction")
-        kirkwood = handbook.at(slug, "kirkwood_function")
-        permittivity = number(handbook.at(slug, "relative_permittivity"), {})
-        if refraction is None or kirkwood is None or permittivity is None:
-            continue
-        polar = handbook.is_polar(slug)
-        donor = handbook.molecules[slug].is_associated
-        points.append(
-            Point(
-                refraction.value,
-                kirkwood.value,
-                handbook.dataset.solvents[slug].name,
-                f"ε {permittivity.value} at {permittivity.temperature}, {POLAR[polar].lower()}",
-                links.solvent(slug),
-                "donor" if donor else "unpolar" if polar == "unpolar" else "dipolar",
-            )
-        )
+    known = catalogue.handbook.kept.each(
+        catalogue.in_order,
+        "point",
+        lambda slugs: [_point(catalogue.handbook, slug) for slug in slugs],
+    )
+    points = [point for point in known.values() if point is not None]
     widest = max((p.x for p in points), default=40.0)
     lowest = 0.05 * int(min((p.y for p in points), default=0.0) / 0.05)
     upwards = Axis("Kirkwood function (ε−1)/(2ε+1)", lowest, 0.5, 0.05, 2)
@@ -131,13 +119,35 @@ def _map(catalogue: Catalogue) -> Markup:
     )
 
 
+def _point(handbook: Handbook, slug: str) -> Point | None:
+    refraction = handbook.at(slug, "molar_refraction")
+    kirkwood = handbook.at(slug, "kirkwood_function")
+    permittivity = number(handbook.at(slug, "relative_permittivity"), {})
+    if refraction is None or kirkwood is None or permittivity is None:
+        return None
+    polar = handbook.is_polar(slug)
+    donor = handbook.molecules[slug].is_associated
+    return Point(
+        refraction.value,
+        kirkwood.value,
+        handbook.dataset.solvents[slug].name,
+        f"ε {permittivity.value} at {permittivity.temperature}, {POLAR[polar].lower()}",
+        Links(ROOT).solvent(slug),
+        "donor" if donor else "unpolar" if polar == "unpolar" else "dipolar",
+    )
+
+
 def _counts(catalogue: Catalogue) -> tuple[Count, ...]:
     handbook = catalogue.handbook
     dataset = handbook.dataset
-    known = sum(handbook.at(slug, "relative_permittivity") is not None for slug in dataset.solvents)
+    known = handbook.kept.each(
+        catalogue.in_order,
+        "is known",
+        lambda slugs: [handbook.at(slug, "relative_permittivity") is not None for slug in slugs],
+    )
     return (
         Count(str(len(dataset.solvents)), "substances", "tables/reference.html"),
-        Count(str(known), "with a permittivity", "tables/permittivity.html"),
+        Count(str(sum(known.values())), "with a permittivity", "tables/permittivity.html"),
         Count(str(len(dataset.measurements)), "published values", "sources.html"),
         Count(str(len(dataset.correlations)), "temperature curves", "methods.html#curves"),
         Count(str(len(dataset.sources)), "sources", "sources.html"),

@@ -13,8 +13,9 @@ from jinja2 import Environment, PackageLoader, StrictUndefined, Template
 from markupsafe import Markup
 
 from generator import comparisons, flammability, methods, overviews
-from generator.cache import digest
+from generator.cache import Cache, digest
 from generator.catalogue import Catalogue
+from generator.compiled import Compiled
 from generator.contexts import Datasheet, Foot
 from generator.datasheet import COMPARED, datasheet, related
 from generator.kept import LEAST, templates
@@ -270,6 +271,11 @@ def _environment() -> Environment:
     environment.filters["marks"] = marks_markup
     environment.globals["most"] = COMPARED
     return environment
+
+
+def keep_templates(cache: Cache) -> None:
+    """Keep compiled templates where other results are kept."""
+    _environment().bytecode_cache = Compiled(cache)
 
 
 def _template(kind: str) -> Template:

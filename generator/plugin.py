@@ -19,6 +19,7 @@ from mkdocs.structure.files import Files
 from generator import ready
 from generator.build import Site, build_site
 from generator.cache import Cache
+from generator.compiled import Compiled
 from generator.errors import DatasetError
 from generator.metrics import Settings
 from generator.pages import NO_PAGES, Page
@@ -153,7 +154,7 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
 
     def on_env(self, env: Environment, *, config: MkDocsConfig, files: Files) -> Environment:
         """Keep the theme's compiled templates."""
-        env.bytecode_cache = ready.Compiled(Cache(_cache(config)))
+        env.bytecode_cache = Compiled(Cache(_cache(config)))
         return env
 
     @event_priority(100)

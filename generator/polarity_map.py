@@ -8,7 +8,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+import numpy as np
 from markupsafe import Markup, escape
+from numpy.typing import NDArray
 
 WIDTH, HEIGHT = 960, 600
 LEFT, RIGHT, TOP, BOTTOM = 62, 14, 14, 52
@@ -47,6 +49,7 @@ class Axis:
 
 
 Box = tuple[float, float, float, float]
+Array = NDArray[np.float64]
 
 
 def polarity_map(points: Sequence[Point], x: Axis, y: Axis, description: str) -> Markup:
@@ -121,24 +124,20 @@ def _symbol(shape: str, px: float, py: float) -> Markup:
 
 def _labels(points: Sequence[Point], places: Sequence[tuple[float, float]]) -> list[Markup]:
     """A label for every point that has room beside it; the loneliest points choose first."""
-    taken: list[Box] = [
-        (px - RADIUS - 1, py - RADIUS - 1, px + RADIUS + 1, py + RADIUS + 1) for px, py in places
-    ]
+    px, py = np.array(places).reshape(-1, 2).T
+    near = RADIUS + 1
+    taken = np.full((2 * len(points), 4), np.inf)  # left, top, right, bottom
+    taken[: len(points)] = np.stack([px - near, py - near, px + near, py + near], axis=1)
+    count = len(points)
+    room = _room(px, py)
     labels = [Markup("")] * len(points)
-    for i in sorted(range(len(points)), key=lambda i: (-_room(i, places), points[i].name)):
-        px, py = places[i]
+    for i in sorted(range(len(points)), key=lambda i: (-room[i], points[i].name)):
         width = LETTER * len(points[i].name)
-        gap = RADIUS + 4
-        spots = (
-            (px + gap, py + 4, "start", px + gap),
-            (px - gap, py + 4, "end", px - gap - width),
-            (px, py - gap, "middle", px - width / 2),
-            (px, py + gap + 8, "middle", px - width / 2),
-        )
-        for tx, ty, side, left in spots:
+        for tx, ty, side, left in _spots(*places[i], width):
             box = (left - 1, ty - LINE + 3, left + width + 1, ty + 3)
-            if _inside(box) and not any(_overlap(box, other) for other in taken):
-                taken.append(box)
+            if _inside(box) and not _meets(box, taken[:count]):
+                taken[count] = box
+                count += 1
                 labels[i] = Markup('<text class="label {}" x="{}" y="{}">{}</text>').format(
                     side, f"{tx:.1f}", f"{ty:.1f}", escape(points[i].name)
                 )
@@ -146,19 +145,34 @@ def _labels(points: Sequence[Point], places: Sequence[tuple[float, float]]) -> l
     return labels
 
 
-def _room(i: int, places: Sequence[tuple[float, float]]) -> float:
-    px, py = places[i]
-    return min(
-        ((px - qx) ** 2 / 9 + (py - qy) ** 2 for j, (qx, qy) in enumerate(places) if j != i),
-        default=1e9,
+def _spots(px: float, py: float, width: float) -> tuple[tuple[float, float, str, float], ...]:
+    """Where a label may stand: x, y, side it is held by, left end."""
+    gap = RADIUS + 4
+    return (
+        (px + gap, py + 4, "start", px + gap),
+        (px - gap, py + 4, "end", px - gap - width),
+        (px, py - gap, "middle", px - width / 2),
+        (px, py + gap + 8, "middle", px - width / 2),
     )
+
+
+def _room(px: Array, py: Array) -> list[float]:
+    """How far away each point's nearest neighbour is, squared; across counts a third."""
+    room = []
+    for i in range(len(px)):
+        away = (px - px[i]) ** 2 / 9 + (py - py[i]) ** 2
+        away[i] = 1e9
+        room.append(float(away.min()))
+    return room
+
+
+def _meets(box: Box, others: Array) -> bool:
+    left, top, right, bottom = others.T
+    apart = (box[0] >= right) | (left >= box[2]) | (box[1] >= bottom) | (top >= box[3])
+    return not apart.all()
 
 
 def _inside(box: Box) -> bool:
     return (
         box[0] > LEFT and box[2] < WIDTH - RIGHT and box[1] > TOP - 8 and box[3] < HEIGHT - BOTTOM
     )
-
-
-def _overlap(a: Box, b: Box) -> bool:
-    return a[0] < b[2] and b[0] < a[2] and a[1] < b[3] and b[1] < a[3]

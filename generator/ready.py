@@ -13,13 +13,10 @@ from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from jinja2.bccache import Bucket, BytecodeCache
 from mkdocs.exceptions import MkDocsException, PluginError
 from mkdocs.structure.files import File, InclusionLevel
 from mkdocs.structure.pages import Page
 from mkdocs.structure.toc import AnchorLink, TableOfContents
-
-from generator.cache import Cache
 
 # What `load` and `run` raise when MkDocs refuses.
 Refused = MkDocsException
@@ -76,23 +73,6 @@ def _nested(entries: Iterable[tuple[int, str, str]]) -> list[AnchorLink]:
         (trail[-1].children if trail else roots).append(link)
         trail.append(link)
     return roots
-
-
-class Compiled(BytecodeCache):
-    """The theme's templates, compiled once and kept: half of what a small edit costs MkDocs."""
-
-    def __init__(self, cache: Cache) -> None:
-        self._cache = cache
-
-    def load_bytecode(self, bucket: Bucket) -> None:
-        """Take a compiled template from the cache; Jinja looks whether its source is the same."""
-        kept = self._cache.get("template", bucket.key)
-        if kept is not None:
-            bucket.bytecode_from_string(kept)
-
-    def dump_bytecode(self, bucket: Bucket) -> None:
-        """Keep a template that has just been compiled."""
-        self._cache.put("template", bucket.key, bucket.bytecode_to_string())
 
 
 def add_page(finished: FinishedPage, config: MkDocsConfig, files: Files) -> str:
