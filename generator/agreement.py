@@ -8,8 +8,9 @@ from itertools import combinations
 
 import numpy as np
 
-from generator.facts import RARE, TEMPERATURE, Curve, Point, View
+from generator.facts import TEMPERATURE, Curve, Point, View
 from generator.identity import CAS, SMILES
+from generator.increments import turns
 from generator.outcome import Outcome, cells, relative_spread
 from generator.quantities import QUANTITIES
 from generator.units import ZERO_CELSIUS, convert, convert_difference
@@ -27,9 +28,8 @@ _CURVES = {PRESSURE: "pressure-curves", VISCOSITY: "viscosity-curves"}
 _TEMPERATURES = {TM: "melting-points", TB: "boiling-points", TF: "flash-points"}
 # A calculated moment is of one conformer and one method [D].
 _CALCULATED = 0.3
-# What an estimate for a molecule of well-known parts and few shapes is off by [D]; one that may
-# be off by more than the second judges nothing.
-USUAL_ESTIMATE, WORST_ESTIMATE = 0.29, 0.5
+# What an estimate for a molecule of well-known parts and few shapes is off by [D].
+USUAL_ESTIMATE = 0.29
 
 
 def _own_curve(view: View) -> Iterator[Outcome]:
@@ -107,9 +107,7 @@ def _moments(view: View) -> Iterator[Outcome]:
 def estimated(view: View) -> tuple[float, float] | None:
     """The estimated moment [D] of the structure in view with its uncertainty, if it can judge."""
     estimate = view.facts.estimate if view.structure is None else None
-    if estimate is None or not view.known.foretold or view.known.group == RARE:
-        return None
-    return estimate if estimate[1] <= WORST_ESTIMATE else None
+    return None if turns(view.known.molecule) else estimate
 
 
 def _estimate(view: View) -> Iterator[Outcome]:

@@ -173,6 +173,11 @@ class _Case:
             frozenset(members) for _, members in self.echoes
         }
 
+    @property
+    def copied(self) -> int:
+        """How many rows the open tables print so under the CAS number."""
+        return sum(CAS in members for members in self._silent)
+
     def linked(self, cell: str) -> frozenset[str]:
         """The curves that repeat a point, and stand or fall with it."""
         if "#" not in cell or cell.endswith(TEMPERATURE):
@@ -249,7 +254,7 @@ def _try(case: _Case, cell: str) -> _Trial:
     if cell == SMILES:
         return _try_structure(case, rest, reluctance)
     if cell == CAS or "~" in cell:
-        reluctance += _LEFT_OUT * (len(case.now) - len(rest)) if "~" in cell else 0.0
+        reluctance += case.copied if cell == CAS else _LEFT_OUT * (len(case.now) - len(rest))
         cost = float(_total(_sums(rest, case.spreads))) + reluctance
         return _Trial(cell, math.nan, cost, cost)
     return _try_point(case, cell, cells, rest, reluctance)
@@ -343,7 +348,7 @@ def _grid(point: Point, temperature: bool) -> Array:
     if quantity.unit == "degC":
         return point.value + np.concatenate([np.linspace(-400, 400, 81), np.linspace(-40, 40, 81)])
     offset = 1.0 if quantity.key in ("relative_permittivity", "refractive_index") else 0.0
-    level = abs(point.value - offset) or 1e-3
+    level = abs(point.value - offset) or 1.0
     near = np.exp(np.linspace(-0.6, 0.6, 121))
     far = np.exp(np.linspace(-7, 7, 43))
     return offset + level * np.concatenate([near, far])

@@ -27,7 +27,7 @@ from generator.conformers import Shapes, parse, shapes
 from generator.units import DEBYE, ELEMENTARY_CHARGE
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Iterable, Mapping, Sequence
 
     from numpy.typing import NDArray
     from rdkit.Chem import Atom, Mol
@@ -61,7 +61,7 @@ SMALLEST_WEIGHT = 0.01
 """Conformers with less than this share of the Boltzmann weight are left out."""
 
 LARGEST = 24
-"""Atoms without hydrogen: hardly any larger molecule taught the model, and their shapes are many."""
+"""Atoms without hydrogen: hardly any larger molecule taught the model."""
 
 HALOGENS = (9, 17, 35, 53)
 
@@ -136,17 +136,33 @@ def moments(smiles: str) -> Moments:
     model = _increments()
     keys = bond_keys(found.mol)
     charges = np.zeros(found.mol.GetNumAtoms())
-    support = min((model[key][1] for _, _, key, _ in keys if key[0] == "3" and key in model),
-                  default=max(count for _, count in model.values()))  # fmt: skip
     for begin, end, key, factor in keys:
-        if key not in model:
-            support = 0
-            continue
-        charges[begin] -= factor * model[key][0]
-        charges[end] += factor * model[key][0]
+        if key in model:
+            charges[begin] -= factor * model[key][0]
+            charges[end] += factor * model[key][0]
     vectors = np.array([moment_vectors(found.mol, here, charges) for here in found.positions])
     vectors[found.without_moment] = 0.0
-    return Moments(vectors, found.weights, support, found)
+    return Moments(vectors, found.weights, _support(key for _, _, key, _ in keys), found)
+
+
+def support(smiles: str) -> int:
+    """How many measured molecules share the rarest bond of a molecule; 0 outside the model."""
+    from rdkit import Chem
+
+    mol = Chem.AddHs(parse(smiles))
+    try:
+        refuse_outside(mol)
+    except ValueError:
+        return 0
+    return _support(key for _, _, key, _ in bond_keys(mol))
+
+
+def _support(keys: Iterable[str]) -> int:
+    model, found = _increments(), list(keys)
+    if any(key not in model for key in found):
+        return 0
+    return min((model[key][1] for key in found if key[0] == "3"),
+               default=max(count for _, count in model.values()))  # fmt: skip
 
 
 def populated(found: Shapes) -> Shapes:

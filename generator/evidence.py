@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from generator import estimates
+from generator import dipoles, estimates
 from generator.blame import Blame, blamed, curve_of, point_of
 from generator.cache import Cache
 from generator.dataset import Correction, Dataset
@@ -187,6 +187,8 @@ def _moments(
         for slug, structure in molecules.items()
         if structure.dipole_limit is None
         and any(dataset.measurements_of(slug, key) for key in _WAITING)
+        # An estimate that no like molecule supports judges nothing.
+        and dipoles.support(structure.smiles) > 0
     ]
 
     def estimated(share: Sequence[str]) -> list[tuple[float, float] | None]:

@@ -151,6 +151,14 @@ def _index_square(view: View) -> Iterator[Outcome]:
                 eps if unpolar else np.minimum(eps, square), square, own,
                 f"ε ({source.label})", f"n² ({index.label})", unit="1",
             )  # fmt: skip
+    if not view.points(N):
+        for source, eps, _, n, _, members in _liquids(view):
+            square = np.asarray(n) ** 2
+            yield Outcome(
+                "below-index-square", "all", members, np.minimum(eps, square), square,
+                float(np.hypot(relative_spread(source), INFINITE_SHARE)), f"ε ({source.label})",
+                "n² from the structure", unit="1",
+            )  # fmt: skip
 
 
 def _liquids(

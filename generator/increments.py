@@ -38,6 +38,7 @@ FEWEST = 12
 LARGEST = math.log(24)
 # Elements that enough open liquids hold.
 ELEMENTS = frozenset({"C", "H", "N", "O", "F", "Si", "P", "S", "Cl", "Br", "I"})
+_DICARBONYL = "O=[#6]-!@[#6]=O"
 _ORTHO = "[!#1;!R]~c~c~[!#1;!R]"
 
 
@@ -64,6 +65,7 @@ def parts(molecule: Molecule) -> Mapping[str, float]:
         if atom.GetAtomicNum() in (7, 8):
             counts[f"{atom.GetSymbol()}H"] += atom.GetTotalNumHs()
     counts["ortho pair"] = len(mol.GetSubstructMatches(_pattern(_ORTHO)))
+    counts["dicarbonyl"] = len(mol.GetSubstructMatches(_pattern(_DICARBONYL)))
     heavy = max(1, mol.GetNumHeavyAtoms())
     found = {name: float(count) for name, count in counts.items() if count}
     return {
@@ -99,8 +101,8 @@ def _pattern(smarts: str) -> Mol:
 
 
 def turns(molecule: Molecule) -> bool:
-    """Whether a bond between two unsaturated carbons turns, so that no one shape holds."""
-    return "conjugated C-C" in parts(molecule)
+    """Whether two polar groups turn against each other, so that no one shape holds."""
+    return "dicarbonyl" in parts(molecule)
 
 
 def size(molecule: Molecule) -> float:
@@ -134,7 +136,7 @@ def is_rare(molecule: Molecule) -> bool:
     """Whether too few open liquids are like the molecule to foretell much about it."""
     known, found = _contributions(), parts(molecule)
     rare = any(name not in known or known[name][0] < FEWEST for name in found)
-    return rare or turns(molecule) or found["ln atoms"] > LARGEST
+    return rare or "conjugated C-C" in found or found["ln atoms"] > LARGEST
 
 
 @lru_cache(maxsize=4096)
@@ -142,8 +144,8 @@ def foretold(molecule: Molecule) -> Mapping[str, float]:
     """What the structure lets expect, by model.
 
     Molar refraction [cm3/mol], molar volume at 20 °C [cm3/mol], boiling point [K] and Onsager
-    moment of the liquid [D]. Empty for a molecule that is not organic. How far off each may be stands
-    in ``reference/spreads.csv``.
+    moment of the liquid [D]. Empty for a molecule that is not organic. How far off each may be
+    stands in ``reference/spreads.csv``.
     """
     known = _contributions()
     if not is_organic(molecule):

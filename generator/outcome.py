@@ -11,6 +11,7 @@ import numpy as np
 
 from generator.facts import TEMPERATURE, Array, Curve, Point
 
+LEAST_CERTAIN = 0.1
 # Unit of the checks that compare no numbers.
 YES_OR_NO = "yes or no"
 
@@ -96,7 +97,7 @@ _LIST = (
     Check("liquid-range", "temperature of a value against the liquid range", False, "K", 10.0,
           5.0, learnt=False),
     Check("usual-temperature", "temperature of a value against room temperature", False, "K",
-          3.3, 4.5, learnt=False),
+          2.6, 4.5, learnt=False),
 )  # fmt: skip
 CHECKS: Mapping[str, Check] = MappingProxyType({check.name: check for check in _LIST})
 
@@ -140,5 +141,10 @@ def cells(*sources: Point | Curve) -> tuple[str, ...]:
 
 
 def relative_spread(source: Point | Curve) -> float:
-    """Own uncertainty of a point as a share of its value; 0 for a curve, which states none."""
-    return source.spread / abs(source.value) if isinstance(source, Point) and source.value else 0.0
+    """Own uncertainty of a point as a share of its value; 0 for a curve, which states none.
+
+    A value stated to be further off than ``LEAST_CERTAIN`` is rather wrong itself.
+    """
+    if not (isinstance(source, Point) and source.value):
+        return 0.0
+    return min(source.spread / abs(source.value), LEAST_CERTAIN)

@@ -175,7 +175,7 @@ def _measured_at(view: View) -> Iterator[Outcome]:
             if (key, point.row.source) in view.facts.prints:
                 # A table prints it so, and may have had its reasons.
                 continue
-            tens = np.isclose((now - ZERO_CELSIUS) % 10.0, 0.0)
+            tens = np.isclose((now - ZERO_CELSIUS) % 10.0, 0.0) & ~(now > boils + 5.0)
             yield Outcome(
                 "usual-temperature", key, (point.name + TEMPERATURE,), now,
                 np.where(tens, now, np.clip(now, cold, warm)), 0.0, words.replace("_", " "),

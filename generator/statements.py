@@ -59,7 +59,8 @@ def _sentence(outcome: Outcome, spreads: Spreads) -> str:
     if check.relative and unit == "K":
         gap = f"{found - usual:+.3g}, limit {usual * math.expm1(limit):.2g}"
     elif check.relative:
-        gap = f"{100 * (found / usual - 1):+.3g} %, limit {100 * math.expm1(limit):.2g} %"
+        beyond = min(float(outcome.residual) - centre, 50.0)
+        gap = f"{100 * math.expm1(beyond):+.3g} %, limit {100 * math.expm1(limit):.2g} %"
     if unit == "K":
         unit, found, expected, usual = "degC", *map(celsius, (found, expected, usual))
     shift = f", usual with it {_number(usual, unit)}" if abs(centre) > limit / LIMIT else ""
