@@ -60,13 +60,17 @@ def home(catalogue: Catalogue, laboratory: str, foot: Foot) -> Home:
 
 
 def _index_json(catalogue: Catalogue) -> Markup:
-    """The finder's index. ``<`` is escaped so that the text may stand inside a script element."""
+    """The finder's index: what its columns are called, then a row a substance.
+
+    ``<`` is escaped so that the text may stand inside a script element.
+    """
     entries = catalogue.handbook.kept.each(
         catalogue.in_order,
         "finder",
-        lambda slugs: [script_json(_entry(catalogue, slug)) for slug in slugs],
+        lambda slugs: [script_json(list(_entry(catalogue, slug).values())) for slug in slugs],
     )
-    return Markup(f"[{','.join(entries.values())}]")
+    names = script_json(list(_entry(catalogue, catalogue.in_order[0]))) if entries else "[]"
+    return Markup(f"[{','.join((names, *entries.values()))}]")
 
 
 def _entry(catalogue: Catalogue, slug: str) -> dict[str, Any]:

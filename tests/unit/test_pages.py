@@ -235,7 +235,8 @@ def test_finder_index_is_complete_and_safe(by_path: dict[str, Page], handbook: H
     found = re.search(r'id="finder-index">(.*?)</script>', by_path["index.md"].html, re.DOTALL)
     assert found is not None
     assert "<" not in found[1]
-    entries = json.loads(found[1])
+    names, *rows = json.loads(found[1])
+    entries = [dict(zip(names, row, strict=True)) for row in rows]
     assert {e["c"] for e in entries} == {s.cas for s in handbook.dataset.solvents.values()}
     assert {f"solvents/{e['u']}.md" for e in entries} <= set(by_path)
     families = set(re.findall(r'<option value="(family-[^"]+)"', by_path["index.md"].html))

@@ -95,7 +95,11 @@
 
   const input = document.getElementById("finder-input");
   if (!input) { return; }
-  const items = JSON.parse(document.getElementById("finder-index").textContent).map(prepare);
+  /* What the columns are called, then a row a substance. */
+  const [columns, ...rows] = JSON.parse(document.getElementById("finder-index").textContent);
+  const items = rows.map((cells) =>
+    prepare(Object.fromEntries(cells.map((cell, place) => [columns[place], cell]))));
+  window.handbook.finder.items = items;
   const results = document.getElementById("finder-results");
   const status = document.getElementById("finder-status");
   const selects = Array.from(document.querySelectorAll(".finder-filters select"));
