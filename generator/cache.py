@@ -18,6 +18,9 @@ from pathlib import Path
 _HASH_BYTES = 32
 _KEY_BYTES = 40
 _LENGTH_BYTES = 8
+_HEAD = _KEY_BYTES + _LENGTH_BYTES + _HASH_BYTES
+# A pack is written anew when less than this share of it was asked for.
+_WORTH = 0.6
 _DAY = 86_400.0
 # A result that no build has asked for in this long is cleared away [s].
 _FORGOTTEN = 30 * _DAY
@@ -93,26 +96,35 @@ class Cache:
         return Pack(None if self._folder is None else self._folder / f"{kind}.pack", kind)
 
     def sweep(self) -> None:
-        """Clear away what no build has asked for in a month."""
+        """Clear away what no build has asked for in a month; looked for once a day."""
         if self._folder is None:
             return
         with contextlib.suppress(OSError):
+            done = self._folder / ".swept"
+            if done.exists() and time.time() - done.stat().st_mtime < _DAY:
+                return
             for path in self._folder.glob("*/??/*"):
                 if time.time() - path.stat().st_mtime > _FORGOTTEN:
                     path.unlink(missing_ok=True)
+            done.touch()
+
+
+_Entry = tuple["bytes | memoryview", "bytes | memoryview"]
 
 
 class Pack:
-    """Small results in one file, read in one go; written anew with those that were asked for."""
+    """Small results in one file, read in one go. What is new is written behind what is there."""
 
     def __init__(self, path: Path | None, kind: str) -> None:
         self._path, self._kind = path, kind
-        self._stored: dict[str, tuple[memoryview, memoryview]] = {}
-        self._used: dict[str, tuple[bytes | memoryview, bytes | memoryview]] = {}
-        self._changed = False
+        self._stored: dict[str, _Entry] = {}
+        self._used: dict[str, _Entry] = {}
+        self._size, self._is_whole = 0, False
         if path is not None:
             with contextlib.suppress(OSError):
-                self._stored = dict(_entries(memoryview(path.read_bytes())))
+                content = memoryview(path.read_bytes())
+                self._stored, end = _entries(content)
+                self._size, self._is_whole = len(content), end == len(content)
 
     def get(self, key: str) -> bytes | memoryview | None:
         """The kept content, or None where there is none or it was damaged."""
@@ -127,15 +139,11 @@ class Pack:
     def put(self, key: str, data: bytes) -> None:
         """Keep ``data`` from the next ``save`` on."""
         self._used[key] = (_seal(self._kind, key, data), data)
-        self._changed = True
 
     def asked(self, since: int = 0) -> dict[str, bytes | None]:
         """What was asked for, in order, from a number on; with its content where it is new."""
         recent = list(self._used.items())[since:]
-        return {
-            key: None if self._stored.get(key) is entry else bytes(entry[1])
-            for key, entry in recent
-        }
+        return {key: bytes(e[1]) if self._is_new(key) else None for key, e in recent}
 
     def adopt(self, asked: Mapping[str, bytes | None]) -> None:
         """Count as asked for here what was asked for in a copy of this process."""
@@ -147,29 +155,40 @@ class Pack:
                     self.put(key, data)
 
     def save(self, *, forget: bool) -> None:
-        """Write what was added; with ``forget``, without what nobody asked for."""
-        rest = {key: e for key, e in self._stored.items() if key not in self._used}
-        if self._path is None or not (self._changed or (forget and rest)):
+        """Write what is new; with ``forget``, drop what nobody asked for once it is much."""
+        if self._path is None:
             return
-        entries = self._used if forget else {**rest, **self._used}
-        parts: list[bytes | memoryview] = []
-        for key, (seal, data) in entries.items():
-            parts += [key.encode(), len(data).to_bytes(_LENGTH_BYTES, "big"), seal, data]
-        _write(self._path, parts)
+        new = {key: entry for key, entry in self._used.items() if self._is_new(key)}
+        wanted = sum(_HEAD + len(data) for _, data in self._used.values())
+        if not self._is_whole or (forget and wanted < _WORTH * self._size):
+            kept = self._used if forget else {**self._stored, **self._used}
+            _write(self._path, _written(kept))
+        elif new:
+            _append(self._path, b"".join(_written(new)))
+
+    def _is_new(self, key: str) -> bool:
+        return self._stored.get(key) is not self._used[key]
 
 
-def _entries(stored: memoryview) -> Iterator[tuple[str, tuple[memoryview, memoryview]]]:
-    """Key → (seal, content) of a pack; behind a damaged length nothing is found any more."""
-    head = _KEY_BYTES + _LENGTH_BYTES + _HASH_BYTES
-    start = 0
-    while start + head <= len(stored):
-        key = bytes(stored[start : start + _KEY_BYTES]).decode("latin-1")
-        length = int.from_bytes(stored[start + _KEY_BYTES : start + head - _HASH_BYTES], "big")
-        seal = stored[start + head - _HASH_BYTES : start + head]
-        start += head + length
-        if start > len(stored):
-            return
-        yield key, (seal, stored[start - length : start])
+def _written(entries: Mapping[str, _Entry]) -> list[bytes | memoryview]:
+    parts: list[bytes | memoryview] = []
+    for key, (seal, data) in entries.items():
+        parts += [key.encode(), len(data).to_bytes(_LENGTH_BYTES, "big"), seal, data]
+    return parts
+
+
+def _entries(stored: memoryview) -> tuple[dict[str, _Entry], int]:
+    """Key → (seal, content) of a pack, the later counts; and where it ceases to make sense."""
+    found: dict[str, _Entry] = {}
+    start, sealed = 0, _HEAD - _HASH_BYTES
+    while start + _HEAD <= len(stored):
+        head = bytes(stored[start : start + _HEAD])
+        end = start + _HEAD + int.from_bytes(head[_KEY_BYTES:sealed], "big")
+        if end > len(stored):
+            break
+        found[head[:_KEY_BYTES].decode("latin-1")] = head[sealed:], stored[start + _HEAD : end]
+        start = end
+    return found, start
 
 
 def _write(path: Path, parts: list[bytes] | list[bytes | memoryview]) -> None:
@@ -183,6 +202,17 @@ def _write(path: Path, parts: list[bytes] | list[bytes | memoryview]) -> None:
             Path(name).replace(path)
         except OSError:
             Path(name).unlink(missing_ok=True)
+
+
+def _append(path: Path, content: bytes) -> None:
+    """Put something behind a file; a disk that is full leaves it as it was."""
+    with contextlib.suppress(OSError), path.open("ab") as file:
+        end = file.tell()
+        try:
+            file.write(content)
+            file.flush()
+        except OSError:
+            file.truncate(end)
 
 
 def _seal(kind: str, key: str, data: bytes | memoryview) -> bytes:

@@ -6,6 +6,7 @@ import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from heapq import nsmallest
 from typing import Protocol, TypeVar
 
 from markupsafe import Markup
@@ -111,6 +112,8 @@ class Catalogue:
     rows: Mapping[str, Rows]
     _by_slug: Mapping[str, tuple[Finding, ...]]
     _kirkwood: Mapping[str, float | None]
+    _names: Mapping[str, str]
+    _sets: Mapping[str, tuple[str, ...]]
 
     def findings_of(self, slug: str) -> tuple[Finding, ...]:
         """What the checks have to say about one substance."""
@@ -123,7 +126,7 @@ class Catalogue:
 
     def set_of(self, slug: str) -> tuple[str, ...]:
         """Its set of positional and stereoisomers, itself included; empty where it has none."""
-        return next((members for members in self.isomer_sets if slug in members), ())
+        return self._sets.get(slug, ())
 
     def flash_class(self, slug: str) -> FlashClass | None:
         """Its class among flammable liquids; None where flash or boiling point is missing."""
@@ -135,23 +138,19 @@ class Catalogue:
 
         Isomers are left out, since a sheet shows them by themselves.
         """
-        own, isomers = self._kirkwood[slug], self.isomers_of(slug)
+        own, isomers = self._kirkwood[slug], {slug, *self.isomers_of(slug)}
 
         def distance(other: str) -> tuple[float, str]:
             theirs = self._kirkwood[other]
-            known = own is not None and theirs is not None
-            return (abs(theirs - own) if known else 1.0, self._name(other))  # type: ignore[operator]
+            unknown = own is None or theirs is None
+            return (1.0 if unknown else abs(theirs - own), self._names[other])  # type: ignore[operator]
 
         family = self.families[self.handbook.molecules[slug].family]
-        ranked = sorted((s for s in family if s != slug and s not in isomers), key=distance)
-        return tuple(ranked[:SWAPS_SHOWN])
+        return tuple(nsmallest(SWAPS_SHOWN, (s for s in family if s not in isomers), distance))
 
     def picture(self, figures: Mapping[str, str], slug: str, kind: str) -> Markup:
         """One of the small pictures of a substance, empty where there is none."""
         return Markup(figures.get(f"{slug}:{kind}", ""))
-
-    def _name(self, slug: str) -> str:
-        return self.handbook.dataset.solvents[slug].name.casefold()
 
 
 def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
@@ -169,26 +168,30 @@ def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
         positions[molecule.position_key].append(slug)
         labels[molecule.family] = molecule.family_label
     owners = _owners(handbook)
-    placed = tuple(
-        Finding(problem, f"finding-{i}", _owner(problem, owners, solvents))
-        for i, problem in enumerate(findings, start=1)
-    )
+    # An address counts the findings of one substance, so that one more leaves the others alone.
     by_slug: dict[str, list[Finding]] = defaultdict(list)
-    for finding in placed:
-        by_slug[finding.slug].append(finding)
+    placed = []
+    for problem in findings:
+        owner = _owner(problem, owners, solvents)
+        place = f"finding-{owner or 'tables'}-{len(by_slug[owner]) + 1}"
+        placed.append(Finding(problem, place, owner))
+        by_slug[owner].append(placed[-1])
+    isomer_sets = tuple(tuple(members) for members in positions.values() if len(members) > 1)
     return Catalogue(
         handbook=handbook,
-        findings=placed,
+        findings=tuple(placed),
         in_order=tuple(in_order),
         families={key: tuple(families[key]) for key in sorted(families, key=labels.__getitem__)},
         family_labels=labels,
         formulas={key: tuple(members) for key, members in formulas.items()},
-        isomer_sets=tuple(tuple(members) for members in positions.values() if len(members) > 1),
+        isomer_sets=isomer_sets,
         rows=_rows(handbook),
         _by_slug={slug: tuple(found) for slug, found in by_slug.items()},
         _kirkwood=handbook.kept.each(
             in_order, "kirkwood function", lambda some: [_kirkwood(handbook, s) for s in some]
         ),
+        _names={slug: solvents[slug].name.casefold() for slug in in_order},
+        _sets={slug: members for members in isomer_sets for slug in members},
     )
 
 

@@ -19,6 +19,8 @@ from generator.parallel import shared_out
 _Made = TypeVar("_Made")
 Asked = Mapping[str, "bytes | None"]
 _PACKAGE = Path(__file__).parent
+# A key is half the hash of the substance and half that of what is kept of it.
+_HALF = 20
 # Fewer substances than this for each helper are not worth starting one.
 LEAST = 25
 
@@ -54,9 +56,9 @@ class Kept:
         one result for each. ``more`` is what all the results depend on besides the substances,
         ``beside`` what each of them does. A kept result that does not ``stand`` is made again.
         """
-        named = digest(name, *more)
-        others = beside or {}
-        keys = {slug: digest(slug, self.key(slug), others.get(slug), named) for slug in slugs}
+        named = digest(name, *more)[:_HALF]
+        own = self._keys if beside is None else {s: digest(self.key(s), beside[s]) for s in slugs}
+        keys = {slug: f"{own.get(slug, '')[:_HALF]}{named}" for slug in slugs}
         stored = {slug: data for slug, key in keys.items() if (data := self._pack.get(key))}
         made: dict[str, _Made] = {}
         if stands is not None:
@@ -140,5 +142,5 @@ def templates() -> str:
 def kept(cache: Cache, revisions: Mapping[str, str], *common: object) -> Kept:
     """The kept results of the substances. ``common``: what all of them depend on."""
     shared = digest(*common)
-    keys = {slug: digest(revision, shared) for slug, revision in revisions.items()}
+    keys = {slug: digest(slug, revision, shared) for slug, revision in revisions.items()}
     return Kept(keys, cache.pack("substances"))

@@ -208,7 +208,7 @@ def molecules(smiles: Sequence[str], cache: Cache) -> Mapping[str, Molecule]:
     Raises `ValueError` as `molecule` does.
     """
     pack = cache.pack("molecules")
-    kept = Kept({text: _version() for text in smiles}, pack)
+    kept = Kept({text: digest(text, _version()) for text in smiles}, pack)
     found = kept.each(list(dict.fromkeys(smiles)), "molecule", lambda some: [*map(molecule, some)])
     pack.save(forget=False)
     return found

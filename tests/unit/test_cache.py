@@ -8,7 +8,7 @@ from pathlib import Path
 from hypothesis import given
 from hypothesis import strategies as st
 
-from generator.cache import Cache, digest
+from generator.cache import Cache, Pack, digest
 
 
 def test_kept_and_found(tmp_path: Path) -> None:
@@ -52,20 +52,49 @@ def test_without_a_folder_nothing_is_kept() -> None:
     assert cache.get("figure", "k") is None
 
 
-def test_a_pack_forgets_what_nobody_asked_for(tmp_path: Path) -> None:
-    pack = Cache(tmp_path).pack("small")
-    for name in "abc":
-        pack.put(digest(name), name.encode())
+def _pack(folder: Path, **added: bytes) -> Pack:
+    pack = Cache(folder).pack("small")
+    for name, data in added.items():
+        pack.put(digest(name), data)
+    return pack
+
+
+def test_a_pack_keeps_what_was_added_later(tmp_path: Path) -> None:
+    _pack(tmp_path, a=b"a", b=b"b").save(forget=True)
+    size = (tmp_path / "small.pack").stat().st_size
+    _pack(tmp_path, c=b"c", b=b"new").save(forget=False)
+    pack = _pack(tmp_path)
+    assert [pack.get(digest(name)) for name in "abc"] == [b"a", b"new", b"c"]
+    assert (tmp_path / "small.pack").stat().st_size > size
+
+
+def test_a_pack_forgets_what_nobody_asked_for_once_it_is_much(tmp_path: Path) -> None:
+    _pack(tmp_path, a=b"a", b=b"b" * 10_000).save(forget=True)
+    pack = _pack(tmp_path)
+    assert pack.get(digest("a")) == b"a"
+    pack.save(forget=False)
+    assert _pack(tmp_path).get(digest("b")) is not None
     pack.save(forget=True)
-    second = Cache(tmp_path).pack("small")
-    assert second.get(digest("a")) == b"a"
-    second.put(digest("d"), b"d")
-    second.save(forget=False)
-    third = Cache(tmp_path).pack("small")
-    assert [third.get(digest(name)) for name in "acd"] == [b"a", b"c", b"d"]
-    third.save(forget=True)
-    last = Cache(tmp_path).pack("small")
-    assert [last.get(digest(name)) for name in "abcd"] == [b"a", None, b"c", b"d"]
+    assert (tmp_path / "small.pack").stat().st_size < 1_000
+    pack = _pack(tmp_path)
+    assert [pack.get(digest(name)) for name in "ab"] == [b"a", None]
+
+
+def test_a_copy_tells_what_it_was_asked_for(tmp_path: Path) -> None:
+    _pack(tmp_path, a=b"a", b=b"b").save(forget=True)
+    pack, copy = _pack(tmp_path), _pack(tmp_path, c=b"c")
+    assert copy.get(digest("a")) == b"a"
+    pack.adopt(copy.asked())
+    assert pack.asked() == {digest("c"): b"c", digest("a"): None}
+
+
+def test_a_torn_pack_is_written_anew(tmp_path: Path) -> None:
+    _pack(tmp_path, a=b"a", b=b"b").save(forget=True)
+    path = tmp_path / "small.pack"
+    path.write_bytes(path.read_bytes()[:-1])
+    _pack(tmp_path, c=b"c").save(forget=False)
+    pack = _pack(tmp_path)
+    assert [pack.get(digest(name)) for name in "abc"] == [b"a", None, b"c"]
 
 
 @given(position=st.integers(0, 400), flip=st.integers(1, 255))

@@ -225,9 +225,9 @@ def test_a_finding_stands_on_its_sheet_and_in_the_list(
     owner = next(m.solvent for m in handbook.dataset.measurements if m.line == FINDING.line)
     body = by_path[f"solvents/{owner}.md"].html
     assert "−3.5 °C &lt;here&gt; (expected: about −2 °C)" in body
-    assert 'href="../review.html#finding-1"' in body
+    assert f'href="../review.html#finding-{owner}-1"' in body
     review = by_path["review.md"].html
-    assert 'id="finding-1"' in review
+    assert f'id="finding-{owner}-1"' in review
     assert f'href="solvents/{owner}.html"' in review
 
 
