@@ -29,12 +29,16 @@ from generator.tables import read_tables
 
 @dataclass(frozen=True)
 class Site:
-    """Everything a handbook is made of: finished pages, other files, findings, numbers."""
+    """Everything a handbook is made of: finished pages and other files; and what was found.
+
+    ``revision`` is that of the tables, ``substances`` how many there are.
+    """
 
     pages: tuple[pages.Page, ...]
     files: Mapping[str, bytes]
     findings: tuple[Problem, ...]
-    handbook: Handbook
+    revision: str
+    substances: int
 
 
 def inspect(
@@ -98,4 +102,5 @@ def build_site(
     files = {**exports.exports(book, data), sidebyside.PATH: sidebyside.data_script(book)}
     handbook.kept.save(forget=True)
     cache.sweep()
-    return Site(pages=made, files=files, findings=findings, handbook=handbook)
+    dataset = handbook.dataset
+    return Site(made, files, findings, dataset.revision, len(dataset.solvents))

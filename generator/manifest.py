@@ -28,12 +28,15 @@ _KIND = "site"
 class Manifest:
     """One finished site.
 
-    ``watched`` are the files and folders it was made from, ``inputs`` is a hash of all of them and
-    ``frame`` of those that every page depends on; ``files`` holds the hash of each file of the
-    site by its path; ``pages`` what the build itself wants to know again of each page, and
+    ``config`` is the hash of the file of settings and ``settings`` what it sets; ``watched`` are
+    the files and folders the site was made from, ``inputs`` is a hash of all of them and ``frame``
+    of those that every page depends on; ``files`` holds the hash of each file of the site by its
+    path, ``pages`` what the build itself wants to know again of each page, by the same, and
     ``summary`` what there is to tell of the whole.
     """
 
+    config: str = ""
+    settings: Mapping[str, Any] = field(default_factory=dict)
     watched: Sequence[str] = ()
     inputs: str = ""
     frame: str = ""

@@ -11,10 +11,12 @@ import pickle
 import sys
 import warnings
 from collections.abc import Callable, Sequence
-from typing import BinaryIO, TypeVar
+from functools import partial
+from typing import BinaryIO, Generic, TypeVar
 
 _helping = False  # whether this process is a helper, which starts no others
 _Item = TypeVar("_Item")
+_Made = TypeVar("_Made")
 _Result = TypeVar("_Result")
 
 
@@ -25,20 +27,46 @@ def processors() -> int:
     return os.cpu_count() or 1
 
 
+def can_split() -> bool:
+    """Whether helpers are to be had, and of use."""
+    return hasattr(os, "fork") and processors() > 1 and not _helping
+
+
+class Begun(Generic[_Result]):
+    """Work that may be under way in a helper while this process does something else."""
+
+    def __init__(self, work: Callable[[], _Result]) -> None:
+        self._work = work
+        self._helper = _start(work, is_last=False) if can_split() else None
+
+    def result(self) -> _Result:
+        """What came of the work; it is waited for, or done here where no helper did it."""
+        if self._helper is not None:
+            process, pipe = self._helper
+            self._helper = None
+            with pipe:
+                answer = pipe.read()
+            os.waitpid(process, 0)
+            if answer:
+                result: _Result = pickle.loads(answer)
+                return result
+        return self._work()
+
+
 def shared_out(
-    work: Callable[[Sequence[_Item]], list[_Result]], items: Sequence[_Item], least: int
-) -> list[_Result]:
+    work: Callable[[Sequence[_Item]], list[_Made]], items: Sequence[_Item], least: int
+) -> list[_Made]:
     """What ``work`` makes of ``items``, in their order, done in shares of at least ``least``.
 
     ``work`` takes a share and returns one result for each of its items. Small jobs, and systems
     without ``fork``, get no helpers.
     """
     count = min(processors(), len(items) // least)
-    if count < 2 or _helping or not hasattr(os, "fork"):
+    if count < 2 or not can_split():
         return work(items)
     # Interleaved shares: neighbours in a table are alike, and so is the work they make.
     shares = [items[k::count] for k in range(count)]
-    helpers = [_start(work, share) for share in shares[1:]]
+    helpers = [_start(partial(work, share), is_last=True) for share in shares[1:]]
     try:
         done = [work(shares[0])]
         for share, (_, pipe) in zip(shares[1:], helpers, strict=True):
@@ -49,13 +77,11 @@ def shared_out(
         for process, pipe in helpers:
             pipe.close()
             os.waitpid(process, 0)
-    results: list[_Result] = [done[k % count][k // count] for k in range(len(items))]
-    return results
+    return [done[k % count][k // count] for k in range(len(items))]
 
 
-def _start(
-    work: Callable[[Sequence[_Item]], list[_Result]], share: Sequence[_Item]
-) -> tuple[int, BinaryIO]:
+def _start(work: Callable[[], object], *, is_last: bool) -> tuple[int, BinaryIO]:
+    """A helper at work and where it will answer; one that ``is_last`` starts no others."""
     reading, writing = os.pipe()
     sys.stdout.flush()
     sys.stderr.flush()
@@ -67,10 +93,10 @@ def _start(
         os.close(writing)
         return process, os.fdopen(reading, "rb")
     global _helping
-    _helping, status = True, 1
+    _helping, status = is_last, 1
     try:
         os.close(reading)
-        answer = pickle.dumps(work(share), pickle.HIGHEST_PROTOCOL)
+        answer = pickle.dumps(work(), pickle.HIGHEST_PROTOCOL)
         with os.fdopen(writing, "wb") as pipe:
             pipe.write(answer)
         status = 0

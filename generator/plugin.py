@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection, Mapping
+from collections.abc import Collection
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -22,7 +22,6 @@ from generator.cache import Cache
 from generator.compiled import Compiled
 from generator.errors import DatasetError
 from generator.metrics import Settings
-from generator.pages import NO_PAGES, Page
 from generator.units import ZERO_CELSIUS
 
 
@@ -63,13 +62,15 @@ def settings_of(config: DatasheetsConfig) -> Settings:
 class Configured:
     """What mkdocs.yml says, for a command that makes no site.
 
-    ``site`` is the address of the handbook, "" where it has none.
+    ``site`` is the address of the handbook, "" where it has none; ``sources`` see
+    ``ready.sources``.
     """
 
     data: Path
     settings: Settings
     site: str
     label_sheet: str | dict[str, Any]
+    sources: tuple[str, ...]
 
 
 def configured(config_file: Path) -> Configured:
@@ -81,7 +82,22 @@ def configured(config_file: Path) -> Configured:
         settings=settings_of(plugin.config),
         site=config.site_url or "",
         label_sheet=plugin.config.label_sheet,
+        sources=ready.sources(config),
     )
+
+
+class Wrapping:
+    """MkDocs made ready to put the pages of a handbook into their frame, in an empty folder."""
+
+    def __init__(self, config_file: Path, folder: Path) -> None:
+        self._config = ready.load(config_file, folder)
+        self._plugin = plugin_of(self._config)
+
+    def wrap(self, site: Site, standing: Collection[str]) -> dict[str, str]:
+        """Wrap and write what does not stand; where in the site each page is, by its path."""
+        self._plugin.hand_over(site, standing)
+        ready.run(self._config)
+        return self._plugin.places
 
 
 def plugin_of(config: MkDocsConfig) -> DatasheetsPlugin:
@@ -114,16 +130,6 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         """The folder of the tables, beside mkdocs.yml."""
         return _home(config) / self.config.data_
 
-    def make(
-        self,
-        config: MkDocsConfig,
-        known: Mapping[str, Page] = NO_PAGES,
-        say: Callable[[str], None] = lambda stage: None,
-    ) -> Site:
-        """The site after the tables, see ``build.build_site``; raises ``DatasetError``."""
-        folder, settings = self.folder(config), settings_of(self.config)
-        return build_site(folder, settings, _cache(config), known, say)
-
     def hand_over(self, site: Site, standing: Collection[str]) -> None:
         """Take pages and files made beforehand; those files that stand are not written."""
         self._site, self._standing = site, standing
@@ -138,10 +144,11 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         """Make everything before MkDocs empties the site, so that bad data leave it untouched."""
         if self._site is None:
             try:
-                self._site = self.make(config)
+                folder, settings = self.folder(config), settings_of(self.config)
+                self._site = build_site(folder, settings, _cache(config))
             except DatasetError as error:
                 raise PluginError(str(error)) from error
-        config.extra["data_revision"] = self._site.handbook.dataset.revision
+        config.extra["data_revision"] = self._site.revision
 
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
         """Add the generated pages and files."""

@@ -1,6 +1,7 @@
 """Bring the published site up to date: what did not change is taken over, the rest is made.
 
-The site that comes out is the site of a build from nothing, byte for byte.
+The site that comes out is the site of a build from nothing, byte for byte. While the pages are
+made in one process, another finds out what the published site holds and makes MkDocs ready.
 """
 
 from __future__ import annotations
@@ -8,18 +9,20 @@ from __future__ import annotations
 import shutil
 from collections import Counter
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field, fields
+from dataclasses import asdict, dataclass, field, fields, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from generator import manifest
-from generator.cache import Cache
-from generator.errors import DatasetError
+from generator.cache import Cache, hash_of
+from generator.errors import DatasetError, Problem
 from generator.manifest import Manifest
+from generator.parallel import Begun
 from generator.publish import PublishError, publish
 
 if TYPE_CHECKING:
     from generator.build import Site
+    from generator.metrics import Settings
     from generator.pages import Page
 
 # How often a build starts over because a table was saved while it ran.
@@ -44,18 +47,16 @@ def update(config_file: Path, site: Path, say: Callable[[str], None]) -> Report:
     used, ``PublishError`` or ``OSError`` when the disk or another build is in the way, and
     ``ready.Refused`` when MkDocs refuses; ``site`` is then as it was.
     """
-    cache = Cache(config_file.resolve().parent / ".cache")
+    cache = Cache(_cache(config_file))
     made: list[Manifest] = []
 
     def make(fresh: Path) -> bool:
         last = manifest.read(cache, site)
-        there = manifest.contents(site) if last.files else {}
-        same = last.inputs and there == last.files
-        if same and manifest.fingerprint(last.watched) == last.inputs:
+        same = last.inputs and manifest.fingerprint(last.watched) == last.inputs
+        if same and manifest.contents(site) == last.files:
             made.append(last)
             return False
-        intact = {path for path, content in last.files.items() if there.get(path) == content}
-        made.append(_made(config_file, site, fresh, last, intact, say))
+        made.append(_made(config_file, site, fresh, last, say))
         return True
 
     changed = publish(site, make)
@@ -65,91 +66,151 @@ def update(config_file: Path, site: Path, say: Callable[[str], None]) -> Report:
     return Report(changed, **(summary if changed else {**summary, "anew": 0}))
 
 
+def _cache(config_file: Path) -> Path:
+    return config_file.resolve().parent / ".cache"
+
+
+@dataclass(frozen=True, slots=True)
+class _Plan:
+    """What a handbook is made from. ``sources``: what every page depends on beside the tables."""
+
+    config: str
+    settings: Settings
+    sources: tuple[str, ...]
+    data: Path
+
+    @property
+    def watched(self) -> tuple[str, ...]:
+        return *self.sources, str(self.data)
+
+
+@dataclass(frozen=True, slots=True)
+class _Outcome:
+    """The pages and files that were made, and what of the published site still stands."""
+
+    site: Site
+    standing: frozenset[str]
+
+
 def _made(
+    config_file: Path, site: Path, fresh: Path, last: Manifest, say: Callable[[str], None]
+) -> Manifest:
+    """Fill the folder ``fresh``; start over where the tables changed while they were read."""
+    for _ in range(_TRIES):
+        plan = _plan(config_file, last)
+        inputs = manifest.fingerprint(plan.watched)
+        try:
+            draft = _drafted(config_file, site, fresh, last, plan, say)
+        except DatasetError:
+            if manifest.fingerprint(plan.watched) == inputs:
+                raise
+        else:
+            if manifest.fingerprint(plan.watched) == inputs:
+                return replace(draft, inputs=inputs if plan.sources else "")
+        say("Something was saved meanwhile: starting over")
+        shutil.rmtree(fresh)
+        fresh.mkdir()
+    raise PublishError("the tables keep changing while they are read; try again")
+
+
+def _drafted(
     config_file: Path,
     site: Path,
     fresh: Path,
     last: Manifest,
-    intact: set[str],
+    plan: _Plan,
     say: Callable[[str], None],
 ) -> Manifest:
-    """Fill the folder ``fresh``; start over where the tables changed while they were read."""
-    from generator import plugin, ready
+    from generator.plugin import Wrapping
 
-    for _ in range(_TRIES):
-        config = ready.load(config_file, fresh)
-        own = plugin.plugin_of(config)
-        data, sources = own.folder(config), ready.sources(config)
-        watched = (*sources, str(data))
-        inputs = manifest.fingerprint(watched)
-        frame = _frame(config_file, sources, data)
-        try:
-            made = own.make(config, _known(last, frame, intact), say)
-            standing = _standing(made, last, intact)
-            own.hand_over(made, standing)
-            ready.run(config)
-        except DatasetError:
-            if manifest.fingerprint(watched) == inputs:
-                raise
-        else:
-            if manifest.fingerprint(watched) == inputs:
-                break
-        say("The tables were saved meanwhile: starting over")
-        shutil.rmtree(fresh)
-        fresh.mkdir()
-    else:
-        raise PublishError("the tables keep changing while they are read; try again")
-    say("Publishing")
-    stood = [own.places[page.path] for page in made.pages if not page.html]
+    frame = _frame(config_file, plan)
+    if not frame or frame != last.frame:
+        last = replace(last, pages={})
+    begun = Begun(lambda: _outcome(plan, _cache(config_file), last, say))
+    there = manifest.contents(site) if last.files else {}
+    wrapping = Wrapping(config_file, fresh)
+    outcome = begun.result()
+    intact = {path: content for path, content in last.files.items() if there.get(path) == content}
+    if isinstance(outcome, _Outcome) and not outcome.standing <= intact.keys():
+        # Somebody was at the published site: take over only what is still as it was made.
+        pages = {place: page for place, page in last.pages.items() if place in intact}
+        last = replace(last, files=intact, pages=pages)
+        outcome = _outcome(plan, _cache(config_file), last, say)
+    if not isinstance(outcome, _Outcome):
+        raise DatasetError(outcome)
+    say("Putting the pages into their frame")
+    places = wrapping.wrap(outcome.site, outcome.standing)
     files = manifest.contents(fresh)
-    manifest.take_over(site, fresh, (*stood, *standing))
-    files |= {path: last.files[path] for path in (*stood, *standing)}
+    manifest.take_over(site, fresh, outcome.standing)
+    files |= {path: last.files[path] for path in outcome.standing}
+    made = outcome.site
     return Manifest(
-        watched,
-        inputs if sources else "",
+        plan.config,
+        asdict(plan.settings),
+        plan.watched,
+        "",
         frame,
         dict(sorted(files.items())),
-        {own.places[page.path]: _record(page) for page in made.pages},
+        {places[page.path]: _record(page) for page in made.pages},
         {
-            "substances": len(made.handbook.dataset.solvents),
+            "substances": made.substances,
             "pages": len(made.pages),
-            "anew": len(made.pages) - len(stood),
+            "anew": sum(bool(page.html) for page in made.pages),
             "findings": dict(Counter(finding.severity for finding in made.findings)),
         },
     )
 
 
-def _frame(config_file: Path, sources: tuple[str, ...], data: Path) -> str:
+def _plan(config_file: Path, last: Manifest) -> _Plan:
+    """What a handbook is made from, as remembered while the settings are the same file."""
+    config = hash_of(config_file)
+    if last.inputs and config == last.config:
+        from generator.metrics import Settings
+
+        known: dict[str, Any] = {
+            key: tuple(value) if isinstance(value, list) else value
+            for key, value in last.settings.items()
+        }
+        *sources, data = last.watched
+        return _Plan(config, Settings(**known), tuple(sources), Path(data))
+    from generator.plugin import configured
+
+    found = configured(config_file)
+    return _Plan(config, found.settings, found.sources, found.data)
+
+
+def _frame(config_file: Path, plan: _Plan) -> str:
     """Hash of what every page depends on, "" where that cannot be said."""
-    if not sources:
+    if not plan.sources:
         return ""
     # A datasheet that is named in the navigation lends its title to every page.
     named = b"solvents/" in config_file.read_bytes()
-    return manifest.fingerprint([*sources, *([data / "solvents.csv"] if named else [])])
+    more = [plan.data / "solvents.csv"] if named else []
+    return manifest.fingerprint([*plan.sources, *more])
 
 
-def _known(last: Manifest, frame: str, intact: set[str]) -> dict[str, Page]:
-    """The pages that can be taken over if they come out the same."""
+def _outcome(
+    plan: _Plan, cache: Path, last: Manifest, say: Callable[[str], None]
+) -> _Outcome | tuple[Problem, ...]:
+    """Make the site but for what stands in the last one; or tell what is wrong with the tables."""
+    from generator.build import build_site
     from generator.pages import Page
 
-    if not frame or last.frame != frame:
-        return {}
-    found = {}
+    known, places = {}, {}
     for place, record in last.pages.items():
-        if place in intact:
-            toc = tuple((level, anchor, text) for level, anchor, text in record["toc"])
-            found[record["path"]] = Page(**{**record, "toc": toc}, html="")
-    return found
+        toc = tuple((level, anchor, text) for level, anchor, text in record["toc"])
+        page = Page(**{**record, "toc": toc}, html="")
+        known[page.path], places[page.path] = page, place
+    try:
+        made = build_site(plan.data, plan.settings, cache, known, say)
+    except DatasetError as error:
+        return error.problems
+    pages = {places[page.path] for page in made.pages if not page.html}
+    files = {path for path, data in made.files.items() if manifest.same(data, last.files.get(path))}
+    # What stands need not be handed over.
+    rest = {path: b"" if path in files else data for path, data in made.files.items()}
+    return _Outcome(replace(made, files=rest), frozenset(pages | files))
 
 
 def _record(page: Page) -> dict[str, Any]:
     return {f.name: getattr(page, f.name) for f in fields(page) if f.name != "html"}
-
-
-def _standing(made: Site, last: Manifest, intact: set[str]) -> set[str]:
-    """The files, pages apart, that the published site holds already."""
-    return {
-        path
-        for path, content in made.files.items()
-        if path in intact and manifest.same(content, last.files[path])
-    }
