@@ -38,7 +38,9 @@ def book(handbook: Handbook, events: Sequence[Event], revision: str) -> Catalogu
 def page(handbook: Handbook, events: Sequence[Event], revision: str) -> str:
     told = timeline(book(handbook, events, revision))
     foot = Foot("Laboratory", revision)
-    return pages._page("changes.md", "changes", "What changed", t=told, page_foot=foot).html
+    return pages._page(
+        "changes.md", "changes", "What changed", lambda: {"t": told, "page_foot": foot}
+    ).html
 
 
 def test_page_tells_the_revisions_newest_first(handbook: Handbook) -> None:
