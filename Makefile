@@ -42,7 +42,7 @@ lint: $(VENV)/.test-stamp
 	$(BIN)/lint-imports
 
 unit: $(VENV)/.test-stamp
-	$(BIN)/pytest -q -n auto
+	$(BIN)/pytest -q -n auto --dist loadfile
 
 slow: $(VENV)/.test-stamp
 	$(BIN)/pytest -q -m "build or browser" -rs

@@ -217,6 +217,7 @@ def test_typed_rows_survive_whatever_they_hold(
     assert len(_read(path)) == len(cells) + 1
 
 
+@pytest.mark.build
 def test_all_liquids_at_once(tmp_path: Path) -> None:
     start = time.process_time()
     plan = additions.plan(tmp_path, [], all_liquids=True)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import itertools
 import json
 import posixpath
 import re
@@ -18,7 +19,7 @@ from generator.catalogue import catalogue, sorting_name
 from generator.contexts import CAUTION, Datasheet, Foot
 from generator.datasheet import COMPARED, datasheet
 from generator.errors import Problem
-from generator.metrics import Handbook
+from generator.metrics import Handbook, compute
 from generator.pages import Page, headings, render_all
 from generator.polarity_map import Axis, Point, polarity_map
 from generator.quantities import QUANTITIES
@@ -291,11 +292,11 @@ def test_isomers_stand_side_by_side(by_path: dict[str, Page]) -> None:
 def test_a_name_with_markup_in_it_is_only_text(handbook: Handbook) -> None:
     name = 'Evil <script>alert("1")</script> & co'
     dataset = handbook.dataset
-    solvents = dict(dataset.solvents)
+    solvents = dict(itertools.islice(dataset.solvents.items(), 12))
     solvents["water"] = dataclasses.replace(
         solvents["water"], name=name, synonyms=("</script><b>",), note="<i>"
     )
-    changed = dataclasses.replace(handbook, dataset=dataclasses.replace(dataset, solvents=solvents))
+    changed = compute(dataclasses.replace(dataset, solvents=solvents), handbook.settings)
     for page in render_all(catalogue(changed, ()), handbook.settings, {}):
         assert "<script>alert" not in page.html, page.path
         assert "</script><b>" not in page.html, page.path
