@@ -56,7 +56,7 @@ def exports(book: Catalogue, data_folder: Path) -> dict[str, bytes]:
     return {f"{FOLDER}/{name}": content for name, content in files.items()}
 
 
-def _share(handbook: Handbook, slug: str) -> tuple[bytes, str]:
+def _share(handbook: Handbook, slug: str) -> tuple[bytes, bytes]:
     """What follows from one substance: its rows of the table of values, and itself as JSON."""
     values = tuple(values_of(handbook, slug))
     return _table(_value_rows(handbook, slug, values)), _dumped(_solvent(handbook, slug, values))
@@ -97,7 +97,7 @@ def _table(rows: Iterable[Sequence[object]]) -> bytes:
     return text.getvalue().encode()
 
 
-def _json(handbook: Handbook, solvents: Mapping[str, str]) -> bytes:
+def _json(handbook: Handbook, solvents: Mapping[str, bytes]) -> bytes:
     """The whole handbook; ``solvents`` are its substances as JSON."""
     settings = handbook.settings
     head = {
@@ -114,12 +114,13 @@ def _json(handbook: Handbook, solvents: Mapping[str, str]) -> bytes:
             for key, s in handbook.sources.items()
         },
     }
-    listed = ",".join(f"{_dumped(slug)}:{text}" for slug, text in solvents.items())
-    return f'{_dumped(head)[:-1]},"solvents":{{{listed}}}}}\n'.encode()
+    listed = b",".join(b"%b:%b" % (_dumped(slug), own) for slug, own in solvents.items())
+    return b'%b,"solvents":{%b}}\n' % (_dumped(head)[:-1], listed)
 
 
-def _dumped(content: object) -> str:
-    return json.dumps(content, ensure_ascii=False, allow_nan=False, separators=(",", ":"))
+def _dumped(content: object) -> bytes:
+    text = json.dumps(content, ensure_ascii=False, allow_nan=False, separators=(",", ":"))
+    return text.encode()
 
 
 def _solvent(handbook: Handbook, slug: str, found: Iterable[Value]) -> dict[str, Any]:

@@ -14,6 +14,8 @@ from collections.abc import Callable, Sequence
 from functools import partial
 from typing import BinaryIO, Generic, TypeVar
 
+# What an answer that was cut off raises.
+_BROKEN = (EOFError, pickle.UnpicklingError)
 _helping = False  # whether this process is a helper, which starts no others
 _Item = TypeVar("_Item")
 _Made = TypeVar("_Made")
@@ -44,12 +46,14 @@ class Begun(Generic[_Result]):
         if self._helper is not None:
             process, pipe = self._helper
             self._helper = None
-            with pipe:
-                answer = pipe.read()
-            os.waitpid(process, 0)
-            if answer:
-                result: _Result = pickle.loads(answer)
+            try:
+                with pipe:
+                    result: _Result = pickle.load(pipe)
                 return result
+            except _BROKEN:
+                pass
+            finally:
+                os.waitpid(process, 0)
         return self._work()
 
 
@@ -70,9 +74,11 @@ def shared_out(
     try:
         done = [work(shares[0])]
         for share, (_, pipe) in zip(shares[1:], helpers, strict=True):
-            answer = pipe.read()
-            # A helper that failed leaves its share undone; here it fails again, in plain sight.
-            done.append(pickle.loads(answer) if answer else work(share))
+            try:
+                done.append(pickle.load(pipe))
+            except _BROKEN:
+                # A helper that failed leaves its share undone; here it fails in plain sight.
+                done.append(work(share))
     finally:
         for process, pipe in helpers:
             pipe.close()
@@ -96,9 +102,10 @@ def _start(work: Callable[[], object], *, is_last: bool) -> tuple[int, BinaryIO]
     _helping, status = is_last, 1
     try:
         os.close(reading)
-        answer = pickle.dumps(work(), pickle.HIGHEST_PROTOCOL)
+        answer = work()
         with os.fdopen(writing, "wb") as pipe:
-            pipe.write(answer)
+            # Piece by piece: a whole site need not be in memory once more.
+            pickle.dump(answer, pipe, pickle.HIGHEST_PROTOCOL)
         status = 0
     finally:
         os._exit(status)
