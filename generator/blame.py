@@ -29,6 +29,7 @@ from generator.units import convert
 
 # Degrees of freedom of the long-tailed cost (Student's t).
 _TAIL = 3.0
+_FARTHEST = 1e6
 # How much a cell must save before it is named.
 LEAST_GAIN = 3.0
 # Reluctance to blame a kind of cell: typed values go wrong most often.
@@ -117,7 +118,7 @@ def deviations(found: Sequence[Outcome], spreads: Spreads) -> Array:
 def clashes(found: Sequence[Outcome], spreads: Spreads) -> list[Outcome]:
     """The outcomes beyond their limit."""
     z = deviations(found, spreads)
-    return [o for o, d in zip(found, z, strict=True) if abs(np.nan_to_num(d)) > LIMIT]
+    return [o for o, d in zip(found, z, strict=True) if abs(d) > LIMIT]
 
 
 def blamed(facts: Facts, spreads: Spreads, most: int = 4) -> tuple[Blame, ...]:
@@ -167,11 +168,29 @@ class _Case:
     ) -> None:
         self.view, self.spreads, self.failed = view, spreads, failed
         # What merely repeats a cell speaks only where it does not.
-        self.now = [o for o in now if not CHECKS[o.check].echo or o in failed]
+        clashing = set(map(id, failed))
+        self.now = [o for o in now if not CHECKS[o.check].echo or id(o) in clashing]
+        self._costs = {id(o): float(_cost(o, spreads)) for o in self.now}
         self.echoes = {(o.check, o.members) for o in self.now if CHECKS[o.check].echo}
         self._silent = {frozenset(o.members) for o in now if CHECKS[o.check].echo} - {
             frozenset(members) for _, members in self.echoes
         }
+
+    def total(self, rest: Sequence[Outcome], touched: Sequence[Outcome] = ()) -> Array:
+        """What is held against the cells: ``rest`` as it stands, ``touched`` as it is tried."""
+        sums: dict[str, Array | float] = defaultdict(float)
+        for outcome in (*rest, *touched):
+            known = self._costs.get(id(outcome))
+            cost = _cost(outcome, self.spreads) if known is None else known
+            so_far = sums[outcome.check]
+            # The sum over independent prints, the worst of one expectation.
+            alone = math.isinf(CHECKS[outcome.check].trust)
+            sums[outcome.check] = so_far + cost if alone else np.maximum(so_far, cost)
+        total: Array = np.zeros(())
+        for check, cost in sums.items():
+            cap = CHECKS[check].trust
+            total = total + np.minimum(cost, cap + _BEYOND * np.maximum(cost - cap, 0.0))
+        return total
 
     @property
     def copied(self) -> int:
@@ -200,7 +219,7 @@ class _Case:
 
 
 def _worst(case: _Case) -> Blame | None:
-    before = float(_total(_sums(case.now, case.spreads)))
+    before = float(case.total(case.now))
     candidates = [c for c in case.view.facts.names() if any(c in o.members for o in case.failed)]
     trials = sorted((_try(case, cell) for cell in candidates), key=lambda trial: trial.cost)
     best = trials[0]
@@ -226,24 +245,11 @@ def _worst(case: _Case) -> Blame | None:
     )
 
 
-def _sums(found: Sequence[Outcome], spreads: Spreads) -> dict[str, Array]:
-    """Uncapped cost by check: the sum over independent prints, the worst of one expectation."""
-    sums: dict[str, Array] = defaultdict(lambda: np.zeros(()))
-    for outcome in found:
-        z = np.nan_to_num(spreads.deviation(outcome), nan=0.0, posinf=1e6, neginf=1e6)
-        cost = 0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL)
-        so_far = sums[outcome.check]
-        alone = math.isinf(CHECKS[outcome.check].trust)
-        sums[outcome.check] = so_far + cost if alone else np.maximum(so_far, cost)
-    return sums
-
-
-def _total(sums: dict[str, Array]) -> Array:
-    total: Array = np.zeros(())
-    for check, cost in sums.items():
-        cap = CHECKS[check].trust
-        total = total + np.minimum(cost, cap + _BEYOND * np.maximum(cost - cap, 0.0))
-    return total
+def _cost(outcome: Outcome, spreads: Spreads) -> Array:
+    """Uncapped cost of one comparison; nothing where there is nothing to compare."""
+    z = np.minimum(np.abs(spreads.deviation(outcome)), _FARTHEST)
+    cost: Array = 0.5 * (_TAIL + 1) * np.log1p(np.where(np.isnan(z), 0.0, z) ** 2 / _TAIL)
+    return cost
 
 
 def _try(case: _Case, cell: str) -> _Trial:
@@ -255,7 +261,7 @@ def _try(case: _Case, cell: str) -> _Trial:
         return _try_structure(case, rest, reluctance)
     if cell == CAS or "~" in cell:
         reluctance += case.copied if cell == CAS else _LEFT_OUT * (len(case.now) - len(rest))
-        cost = float(_total(_sums(rest, case.spreads))) + reluctance
+        cost = float(case.total(rest)) + reluctance
         return _Trial(cell, math.nan, cost, cost)
     return _try_point(case, cell, cells, rest, reluctance)
 
@@ -276,7 +282,7 @@ def _try_point(
         changed = dict.fromkeys(cells - {cell}, values / (point.value or 1.0))
         tried = View(view.facts, {cell: values, **changed}, view.dropped)
         touched = [o for o in case.seen(tried, key) if not cells.isdisjoint(o.members)]
-        total = np.broadcast_to(_total(_sums([*rest, *touched], case.spreads)), values.shape)
+        total = np.broadcast_to(case.total(rest, touched), values.shape)
         outside = np.where((values < low) | (values > high), 50.0, 0.0)
         return total + reluctance + outside, touched
 
@@ -327,7 +333,7 @@ def _try_structure(case: _Case, rest: list[Outcome], reluctance: float) -> _Tria
         rest = case.seen(View(case.view.facts, dropped=case.view.dropped, structure=listed))
     else:
         reluctance += _NO_ALTERNATIVE + _LEFT_OUT * (len(case.now) - len(rest))
-    cost = float(_total(_sums(rest, case.spreads))) + reluctance
+    cost = float(case.total(rest)) + reluctance
     return _Trial(SMILES, math.nan, cost, cost)
 
 
