@@ -164,7 +164,7 @@ class Pack:
             kept = self._used if forget else {**self._stored, **self._used}
             _write(self._path, _written(kept))
         elif new:
-            _append(self._path, b"".join(_written(new)))
+            _append(self._path, _written(new))
 
     def _is_new(self, key: str) -> bool:
         return self._stored.get(key) is not self._used[key]
@@ -204,12 +204,12 @@ def _write(path: Path, parts: list[bytes] | list[bytes | memoryview]) -> None:
             Path(name).unlink(missing_ok=True)
 
 
-def _append(path: Path, content: bytes) -> None:
+def _append(path: Path, parts: list[bytes | memoryview]) -> None:
     """Put something behind a file; a disk that is full leaves it as it was."""
     with contextlib.suppress(OSError), path.open("ab") as file:
         end = file.tell()
         try:
-            file.write(content)
+            file.writelines(parts)
             file.flush()
         except OSError:
             file.truncate(end)

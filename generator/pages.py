@@ -29,21 +29,26 @@ from generator.wording import MARKS, cell_markup, marks_markup
 class Page:
     """A finished page.
 
-    ``path`` is where a Markdown source of it would stand; ``html`` is the body with its H1;
-    ``toc`` lists its headings as (level, id, text). ``search_title`` and ``search_text`` are
-    plain text for the site search, empty where the page shall not be found. ``key`` is a hash of
-    all the page shows; without one it is made anew each time. A page that stands unchanged in
-    the published site is known by everything but its ``html``, which is empty.
+    ``path`` is where a Markdown source of it would stand; ``body`` is its HTML with its H1, in
+    UTF-8; ``toc`` lists its headings as (level, id, text). ``search_title`` and ``search_text``
+    are plain text for the site search, empty where the page shall not be found. ``key`` is a hash
+    of all the page shows; without one it is made anew each time. A page that stands unchanged in
+    the published site is known by everything but its ``body``, which is empty.
     """
 
     path: str
     title: str
-    html: str
+    body: bytes
     toc: tuple[tuple[int, str, str], ...]
     search_title: str
     search_text: str
     kind: str
     key: str = ""
+
+    @property
+    def html(self) -> str:
+        """The body as text; a thousand pages are kept as bytes, which take half the memory."""
+        return self.body.decode()
 
 
 NO_PAGES: Mapping[str, Page] = {}
@@ -232,7 +237,8 @@ _FOUND = {
 
 def _page(path: str, kind: str, title: str, context: Callable[[], Mapping[str, Any]]) -> Page:
     body = _template(kind).render(context())
-    return Page(path, title, body, headings(body), title, _plain(body, _FOUND[kind]), kind)
+    found = _plain(body, _FOUND[kind])
+    return Page(path, title, body.encode(), headings(body), title, found, kind)
 
 
 def _datasheet_page(sheet: Datasheet) -> Page:
@@ -240,7 +246,7 @@ def _datasheet_page(sheet: Datasheet) -> Page:
     return Page(
         _path(sheet.slug),
         f"{sheet.name} {sheet.cas}",
-        body,
+        body.encode(),
         headings(body),
         f"{sheet.name} {sheet.cas}",
         search_text(sheet),

@@ -86,7 +86,7 @@ def add_page(finished: FinishedPage, config: MkDocsConfig, files: Files) -> str:
     outside = InclusionLevel.NOT_IN_NAV
     file = ReadyFile.generated(config, finished.path, content="", inclusion=outside)
     assert isinstance(file, ReadyFile)
-    file.stands = not finished.html
+    file.stands = not finished.body
     files.append(file)
     ReadyPage(finished, file, config)
     return file.dest_uri

@@ -155,7 +155,7 @@ def _drafted(
         {
             "substances": made.substances,
             "pages": len(made.pages),
-            "anew": sum(bool(page.html) for page in made.pages),
+            "anew": sum(bool(page.body) for page in made.pages),
             "findings": dict(Counter(finding.severity for finding in made.findings)),
         },
     )
@@ -199,13 +199,13 @@ def _outcome(
     known, places = {}, {}
     for place, record in last.pages.items():
         toc = tuple((level, anchor, text) for level, anchor, text in record["toc"])
-        page = Page(**{**record, "toc": toc}, html="")
+        page = Page(**{**record, "toc": toc}, body=b"")
         known[page.path], places[page.path] = page, place
     try:
         made = build_site(plan.data, plan.settings, cache, known, say)
     except DatasetError as error:
         return error.problems
-    pages = {places[page.path] for page in made.pages if not page.html}
+    pages = {places[page.path] for page in made.pages if not page.body}
     files = {path for path, data in made.files.items() if manifest.same(data, last.files.get(path))}
     # What stands need not be handed over.
     rest = {path: b"" if path in files else data for path, data in made.files.items()}
@@ -213,4 +213,4 @@ def _outcome(
 
 
 def _record(page: Page) -> dict[str, Any]:
-    return {f.name: getattr(page, f.name) for f in fields(page) if f.name != "html"}
+    return {f.name: getattr(page, f.name) for f in fields(page) if f.name != "body"}
