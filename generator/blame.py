@@ -31,7 +31,7 @@ from generator.units import convert
 _TAIL = 3.0
 _FARTHEST = 1e6
 # How much a cell must save before it is named.
-LEAST_GAIN = 3.0
+LEAST_GAIN = 2.8
 # Reluctance to blame a kind of cell: typed values go wrong most often.
 _RELUCTANCE = {"value": 0.0, "temperature_c": 1.0, "coefficients": 0.7, "smiles": 0.5, "cas": 0.5}
 # A structure that nothing replaces, and each comparison that is merely left out.
