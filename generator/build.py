@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -46,11 +46,12 @@ def inspect(
     settings: Settings,
     cache: Cache | None = None,
     say: Callable[[str], None] = lambda stage: None,
-) -> tuple[Handbook, tuple[Problem, ...]]:
+) -> tuple[Handbook, tuple[Problem, ...], evidence.Review]:
     """The numbers and all there is to say about the tables, notes on how they were read included.
 
-    ``say`` is told each stage before it starts. Raises ``DatasetError``, which tells all there is
-    to say, when some of it is an error.
+    The cross-checks come with what they left alone and the limits they judged by. ``say`` is told
+    each stage before it starts. Raises ``DatasetError``, which tells all there is to say, when
+    some of it is an error.
     """
     cache = cache or Cache(None)
     say("Reading and checking the tables")
@@ -63,7 +64,8 @@ def inspect(
     common = code(), settings, sorted(dataset.usual.items())
     handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
     say("Cross-checking them")
-    return handbook, (*structural, *evidence.check_handbook(handbook, cache))
+    judged = evidence.review(handbook, cache)
+    return handbook, (*structural, *judged.problems), judged
 
 
 def review(
@@ -73,8 +75,12 @@ def review(
     say: Callable[[str], None] = lambda stage: None,
 ) -> tuple[Handbook, tuple[Problem, ...]]:
     """The numbers and every finding that is published. Raises ``DatasetError`` as ``inspect``."""
-    handbook, findings = inspect(data, settings, cache, say)
-    return handbook, tuple(finding for finding in findings if finding.severity != NOTE)
+    handbook, findings, _ = inspect(data, settings, cache, say)
+    return handbook, _published(findings)
+
+
+def _published(findings: Sequence[Problem]) -> tuple[Problem, ...]:
+    return tuple(finding for finding in findings if finding.severity != NOTE)
 
 
 def build_site(
@@ -91,9 +97,10 @@ def build_site(
     be used.
     """
     cache = Cache(cache_folder)
-    handbook, findings = review(data, settings, cache, say)
+    handbook, findings, judged = inspect(data, settings, cache, say)
+    findings = _published(findings)
     say("Writing pages and files")
-    book = catalogue(handbook, findings)
+    book = catalogue(handbook, findings, judged)
     models = modelfigures.draw(accuracy.comparisons(handbook), cache)
     drawn = figures.figures_of(handbook, cache, models)
     package = read_package(data)

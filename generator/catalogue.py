@@ -13,9 +13,11 @@ from markupsafe import Markup
 
 from generator.dataset import Container, Correction, Correlation, Handling, Measurement
 from generator.errors import Problem
+from generator.evidence import NOT_JUDGED, Review
 from generator.flammability import FlashClass, flash_class
 from generator.history import Event
 from generator.metrics import Handbook
+from generator.spreads import Threshold
 
 SWAPS_SHOWN = 12
 
@@ -100,7 +102,11 @@ class Rows:
 
 @dataclass(frozen=True, slots=True)
 class Catalogue:
-    """Look-ups over all substances, made once for all pages."""
+    """Look-ups over all substances, made once for all pages.
+
+    ``decided`` are the findings that the laboratory leaves as they are, each with its reason;
+    ``limits`` those that the cross-checks judge by.
+    """
 
     handbook: Handbook
     findings: tuple[Finding, ...]
@@ -110,6 +116,8 @@ class Catalogue:
     formulas: Mapping[str, tuple[str, ...]]
     isomer_sets: tuple[tuple[str, ...], ...]
     rows: Mapping[str, Rows]
+    decided: tuple[tuple[Finding, str], ...]
+    limits: tuple[Threshold, ...]
     _by_slug: Mapping[str, tuple[Finding, ...]]
     _kirkwood: Mapping[str, float | None]
     _names: Mapping[str, str]
@@ -153,7 +161,9 @@ class Catalogue:
         return Markup(figures.get(f"{slug}:{kind}", ""))
 
 
-def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
+def catalogue(
+    handbook: Handbook, findings: Sequence[Problem], judged: Review = NOT_JUDGED
+) -> Catalogue:
     """The look-ups for a computed handbook and its findings."""
     solvents = handbook.dataset.solvents
     in_order = sorted(solvents, key=lambda slug: (sorting_name(solvents[slug].name), slug))
@@ -185,6 +195,11 @@ def catalogue(handbook: Handbook, findings: Sequence[Problem]) -> Catalogue:
         family_labels=labels,
         formulas={key: tuple(members) for key, members in formulas.items()},
         isomer_sets=isomer_sets,
+        decided=tuple(
+            (Finding(problem, "", _owner(problem, owners, solvents)), reason)
+            for problem, reason in judged.kept
+        ),
+        limits=judged.thresholds,
         rows=_rows(handbook),
         _by_slug={slug: tuple(found) for slug, found in by_slug.items()},
         _kirkwood=handbook.kept.each(

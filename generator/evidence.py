@@ -40,6 +40,10 @@ class Review:
     thresholds: tuple[Threshold, ...]
 
 
+NOT_JUDGED = Review((), (), ())
+"""What a handbook that nobody cross-checked has to show."""
+
+
 def check_handbook(handbook: Handbook, cache: Cache | None = None) -> tuple[Problem, ...]:
     """Every suspect of a handbook, strongest first."""
     return review(handbook, cache).problems

@@ -126,6 +126,32 @@ class ReviewRow:
     found: str
     expected: str
     hint: str
+    evidence: str
+
+
+@dataclass(frozen=True, slots=True)
+class KeptRow:
+    """One finding that the laboratory has decided to leave as it is."""
+
+    substance: Link
+    found: str
+    evidence: str
+    reason: str
+    place: str
+
+
+@dataclass(frozen=True, slots=True)
+class LimitRow:
+    """How far apart the two sides of one cross-check may lie.
+
+    ``spread`` and ``limit`` are ranges over the groups; ``count`` of comparisons they come from,
+    empty for a bound that is not learnt.
+    """
+
+    check: str
+    spread: str
+    limit: str
+    count: str
 
 
 @dataclass(frozen=True, slots=True)

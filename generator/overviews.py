@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections import Counter
+import math
+from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -20,13 +21,16 @@ from generator.listings import (
     Download,
     Group,
     Home,
+    KeptRow,
+    LimitRow,
     ReviewRow,
     SourceEntry,
 )
 from generator.metrics import Handbook
 from generator.polarity_map import Axis, Point, polarity_map
+from generator.spreads import Threshold
 from generator.units import ZERO_CELSIUS
-from generator.wording import celsius_label, number, prose, script_json
+from generator.wording import celsius_label, number, prose, script_json, unit_label
 
 ROOT = ""  # these pages stand at the top
 
@@ -182,9 +186,54 @@ def review(catalogue: Catalogue) -> tuple[ReviewRow, ...]:
             prose(finding.problem.found),
             prose(finding.problem.expected),
             prose(finding.problem.hint),
+            prose(finding.problem.evidence),
         )
         for finding in catalogue.findings
     )
+
+
+def kept_findings(catalogue: Catalogue) -> tuple[KeptRow, ...]:
+    """The findings that the laboratory has decided against, each with its reason."""
+    solvents = catalogue.handbook.dataset.solvents
+    links = Links(ROOT)
+    rows = []
+    for finding, reason in catalogue.decided:
+        problem = finding.problem
+        rows.append(
+            KeptRow(
+                Link(solvents[finding.slug].name, links.solvent(finding.slug)),
+                prose(problem.found),
+                prose(problem.evidence),
+                prose(reason),
+                problem.place,
+            )
+        )
+    return tuple(rows)
+
+
+def limits(catalogue: Catalogue) -> tuple[LimitRow, ...]:
+    """For each cross-check how far apart its two sides usually lie, and how far they may lie."""
+    grouped: dict[str, list[Threshold]] = defaultdict(list)
+    for threshold in catalogue.limits:
+        grouped[threshold.title].append(threshold)
+    return tuple(
+        LimitRow(
+            title[:1].upper() + title[1:],
+            _span(found[0], [t.spread for t in found]),
+            _span(found[0], [t.limit for t in found]),
+            str(max(t.count for t in found)) if any(t.count for t in found) else "",
+        )
+        for title, found in sorted(grouped.items())
+    )
+
+
+def _span(threshold: Threshold, values: Sequence[float]) -> str:
+    """The least and the greatest of some spreads or limits, with their unit."""
+    shares = threshold.relative
+    ends = [100 * math.expm1(v) if shares else v for v in (min(values), max(values))]
+    low, high = (f"{end:.2g}" if end < 100 else f"{end:.0f}" for end in ends)
+    unit = "%" if shares else unit_label("K" if threshold.unit == "degC" else threshold.unit)
+    return prose(f"{low if low == high else f'{low} to {high}'} {unit}".strip())
 
 
 def sources(catalogue: Catalogue) -> tuple[SourceEntry, ...]:

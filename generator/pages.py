@@ -166,7 +166,7 @@ def _whole(
     yield "tables/isomers.md", "isomers", titles["isomers"], lambda: {**_isomers(book), **shared}
     yield "changes.md", "changes", "What changed", lambda: {"t": timeline(book), **shared}
     yield "compare.md", "compare", "Side by side", lambda: shared
-    yield "review.md", "review", "Review list", lambda: {"rows": overviews.review(book), **shared}
+    yield "review.md", "review", "Review list", lambda: {**_review(book), **shared}
     yield "methods.md", "methods", "Methods", lambda: {**_methods(book, figures), **shared}
     yield "sources.md", "sources", "Sources", lambda: {"sources": overviews.sources(book), **shared}
     yield (
@@ -181,6 +181,14 @@ def _whole(
         "Downloads",
         lambda: {"files": overviews.downloads(package), **shared},
     )
+
+
+def _review(book: Catalogue) -> dict[str, Any]:
+    return {
+        "rows": overviews.review(book),
+        "kept": overviews.kept_findings(book),
+        "limits": overviews.limits(book),
+    }
 
 
 def _isomers(book: Catalogue) -> dict[str, Any]:

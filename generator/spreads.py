@@ -20,7 +20,7 @@ from pathlib import Path
 import numpy as np
 
 from generator.facts import RARE, Array
-from generator.outcome import CHECKS, Outcome
+from generator.outcome import CHECKS, YES_OR_NO, Outcome
 
 _TABLE = Path(__file__).parent / "reference" / "spreads.csv"
 # A residual counts as a clash beyond this many spreads; alone it names a cell from about four on.
@@ -218,7 +218,8 @@ def _joined(mine: Spread, base: Spread) -> Spread:
 
 
 def thresholds(spreads: Spreads) -> tuple[Threshold, ...]:
-    """Every limit in force, in order of check and group."""
+    """Every limit in force, in order of check and group; bounds, which are not learnt, as well."""
+    bounds = [(check.name, ALL) for check in CHECKS.values() if not check.learnt]
     return tuple(
         Threshold(
             check,
@@ -231,6 +232,7 @@ def thresholds(spreads: Spreads) -> tuple[Threshold, ...]:
             LIMIT * usual.spread,
             usual.count,
         )
-        for check, group in spreads.table
+        for check, group in sorted([*spreads.table, *bounds])
+        if CHECKS[check].unit != YES_OR_NO
         for usual in [spreads.of(check, group)]
     )
