@@ -218,7 +218,8 @@ def limits(catalogue: Catalogue) -> tuple[LimitRow, ...]:
         grouped[threshold.title].append(threshold)
     return tuple(
         LimitRow(
-            title[:1].upper() + title[1:],
+            # A symbol in front keeps its letter.
+            title[:1].upper() + title[1:] if title[:2].isascii() else title,
             _span(found[0], [t.spread for t in found]),
             _span(found[0], [t.limit for t in found]),
             str(max(t.count for t in found)) if any(t.count for t in found) else "",
