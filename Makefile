@@ -31,7 +31,7 @@ check: $(VENV)/.site-stamp
 	$(BIN)/datasheets check
 
 serve: $(VENV)/.site-stamp
-	$(BIN)/mkdocs serve
+	$(BIN)/datasheets serve
 
 test: lint unit slow
 

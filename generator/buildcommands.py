@@ -54,6 +54,23 @@ def build(config: Path, site: Path) -> None:
         click.echo(f"{site}: nothing has changed; {whole}; {suspects}; {seconds}")
 
 
+@click.command()
+@CONFIG
+@click.option("--port", default=8000, show_default=True, help="Port on this machine.")
+def serve(config: Path, port: int) -> None:
+    """Preview the handbook while the tables are edited; nothing is published.
+
+    Saving a table, a page or a template updates the page that is open in a browser. While the
+    tables are broken, it shows what is wrong with them.
+    """
+    from generator import preview
+
+    try:
+        preview.serve(config, port, lambda text: click.echo(text, err=True))
+    except OSError as error:
+        raise click.ClickException(f"port {port}: {error.strerror}; try another --port") from error
+
+
 def _give_up(reason: str, site: Path) -> None:
     click.echo(f"{reason}\nNothing was published; {site} is as it was.", err=True)
     sys.exit(1)

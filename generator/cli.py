@@ -12,7 +12,7 @@ from pathlib import Path
 
 import click
 
-from generator.buildcommands import build
+from generator.buildcommands import build, serve
 from generator.errors import DatasetError, Problem
 from generator.numbercommands import explain, table
 from generator.tablecommands import CONFIG, DATA, changes_, report, sheet
@@ -24,6 +24,7 @@ def main() -> None:
 
 
 main.add_command(build)
+main.add_command(serve)
 main.add_command(sheet)
 main.add_command(changes_)
 main.add_command(explain)

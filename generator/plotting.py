@@ -41,6 +41,12 @@ def house_style() -> Iterator[None]:
         yield
 
 
+def preload() -> None:
+    """Load what a figure needs, so that the first one is not the slowest."""
+    import matplotlib.backends.backend_svg
+    import matplotlib.figure  # noqa: F401
+
+
 def canvas(width: float, height: float, box: Box) -> tuple[Figure, Axes]:
     """Empty axes in the house style; sizes in inches, ``box`` as shares of the figure."""
     from matplotlib.backends.backend_svg import FigureCanvasSVG
