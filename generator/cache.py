@@ -20,7 +20,7 @@ _KEY_BYTES = 40
 _LENGTH_BYTES = 8
 _HEAD = _KEY_BYTES + _LENGTH_BYTES + _HASH_BYTES
 # A pack is written anew when less than this share of it was asked for.
-_WORTH = 0.6
+_WORTH = 0.8
 _DAY = 86_400.0
 # A result that no build has asked for in this long is cleared away [s].
 _FORGOTTEN = 30 * _DAY

@@ -41,7 +41,7 @@ POLAR_ABOVE = 0.10
 UNPOLAR_BELOW = 0.03
 # Without a refractive index the permittivity alone decides only where it leaves no doubt.
 SURELY_POLAR = 5.0
-_CHUNK = 100
+_CHUNK = 50
 _EPS, _N, _RHO, _MU, _KAPPA, _ALPHA, _M = INPUTS
 DEPENDS: Mapping[str, tuple[str, ...]] = {
     "kirkwood_function": (_EPS,),
