@@ -25,6 +25,7 @@ SAME = 5.0
 # A row that was measured this close to the table's temperature is the table's row [K].
 _SAME_PRINT = 0.6
 _CURVES = {PRESSURE: "pressure-curves", VISCOSITY: "viscosity-curves"}
+_SOURCES = {EPS: "permittivities", RHO: "densities", N: "indices"}
 _TEMPERATURES = {TM: "melting-points", TB: "boiling-points", TF: "flash-points"}
 # A calculated moment is of one conformer and one method [D].
 _CALCULATED = 0.3
@@ -75,12 +76,18 @@ def _curves(view: View) -> Iterator[Outcome]:
 def _points(view: View) -> Iterator[Outcome]:
     for key in (EPS, RHO, N):
         for one, other in combinations(view.points(key), 2):
-            if abs(one.temperature - other.temperature) <= SAME:
-                own = float(np.hypot(relative_spread(one), relative_spread(other)))
-                yield Outcome(
-                    "sources", key, (*cells(one), *cells(other)), view.value(one),
-                    view.value(other), own, one.label, other.label,
-                )  # fmt: skip
+            if not abs(one.temperature - other.temperature) <= SAME:
+                continue
+            there = view.value(other)
+            if key == RHO:
+                there = view.density(other, view.temperature(one))
+            elif key == N:
+                there = view.index(other, view.temperature(one))
+            own = float(np.hypot(relative_spread(one), relative_spread(other)))
+            yield Outcome(
+                _SOURCES[key], key, (*cells(one), *cells(other)), view.value(one), there, own,
+                one.label, other.label,
+            )  # fmt: skip
 
 
 def _moments(view: View) -> Iterator[Outcome]:

@@ -50,7 +50,7 @@ _LEAST_LEAD, _PLAIN = 0.7, 1.8
 _OF_ONE_MIND = 1.0
 SOURCE_CHECKS = frozenset(
     {"melting-points", "boiling-points", "flash-points", "pressure-curves", "viscosity-curves",
-     "curves", "moments", "sources"}
+     "curves", "moments", "permittivities", "densities", "indices"}
 )  # fmt: skip
 
 

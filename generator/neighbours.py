@@ -13,6 +13,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from statistics import median
 
+import numpy as np
+
 from generator import polarity
 from generator.agreement import EPS, KAPPA, ROOM, TB
 from generator.facts import Facts, View
@@ -102,7 +104,8 @@ def series_of(sketches: Sequence[Sketch]) -> Mapping[str, Mapping[str, tuple[flo
                 if len(values) < _FEWEST:
                     continue
                 middle = median(values)
-                apart = 1.4826 * median(abs(value - middle) for value in values)
+                half, most = np.quantile(np.abs(np.array(values) - middle), [0.5, 0.8])
+                apart = float(max(1.4826 * half, most / 1.2816))
                 if apart < _USEFUL[model]:
                     error = max(apart, _LEAST) * 1.25 / math.sqrt(len(values))
                     shifts[own.slug][model] = middle, error

@@ -83,6 +83,10 @@ def _respelled(printed: str, temperature: bool) -> Iterator[tuple[str, str, floa
         for mark in marks:
             shorter = sign + digits[:mark] + digits[mark + 1 :]
             yield shorter, f"one digit too many: {shorter} would fit", 0.7
+        for digit in "123456789":
+            # The first digit lost: 46.5 for 146.5.
+            longer = sign + digit + digits
+            yield longer, f"a digit is missing: {longer} would fit", 1.0
         point = digits.find(".")
         for mark in marks:
             if point >= 0 and mark > point:

@@ -111,7 +111,7 @@ class Spreads:
         groups = (group, RARE, ALL)
         found = next((s for g in groups if (s := self.table.get((check, g))) is not None), None)
         if found is None:
-            return Spread(0.0, math.inf, 0)
+            return Spread(0.0, CHECKS[check].resolution, 0)
         return Spread(found.median, max(found.spread, CHECKS[check].resolution), found.count)
 
     def scale(self, outcome: Outcome) -> float:
@@ -219,7 +219,8 @@ def _joined(mine: Spread, base: Spread) -> Spread:
 
 def thresholds(spreads: Spreads) -> tuple[Threshold, ...]:
     """Every limit in force, in order of check and group; bounds, which are not learnt, as well."""
-    bounds = [(check.name, ALL) for check in CHECKS.values() if not check.learnt]
+    known = {check for check, _ in spreads.table}
+    bounds = [(name, ALL) for name in CHECKS if name not in known]
     return tuple(
         Threshold(
             check,
