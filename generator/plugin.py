@@ -153,6 +153,9 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
     def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
         """Add the generated pages and files."""
         assert self._site is not None
+        map_of_site = files.get_file_from_path("sitemap.xml")
+        if map_of_site is not None and not config.site_url:
+            files.remove(map_of_site)  # no template any more, and no file to be copied
         for page in self._site.pages:
             self.places[page.path] = ready.add_page(page, config, files)
         for path, content in self._site.files.items():
