@@ -28,9 +28,8 @@ from generator.facts import TEMPERATURE, View
 from generator.identity import SMILES
 from generator.outcome import Outcome
 from generator.quantities import QUANTITIES
-from generator.units import AVOGADRO, BOLTZMANN, ZERO_CELSIUS
+from generator.units import ZERO_CELSIUS
 
-_GAS_CONSTANT = AVOGADRO * BOLTZMANN  # J/(mol K)
 # Liquids that are liquid at room temperature are measured between these [K].
 USUAL = (15.0 + ZERO_CELSIUS, 30.0 + ZERO_CELSIUS)
 # Pressure takes a liquid this far beyond its boiling point before anybody wonders [K].
@@ -58,19 +57,19 @@ def _boiling(view: View) -> Iterator[Outcome]:
 def _pressure(view: View) -> Iterator[Outcome]:
     """Vapour pressure at room temperature from the boiling point alone.
 
-    Entropy of evaporation after Kistiakowsky (Z. phys. Chem. 107, 65, 1923), 36.6 + R ln T_b
-    [J/(mol K)], rising a little towards lower temperatures: Fishtine's power of 0.19 in T_b/T.
+    ln(p/atm) = −(4.4 + ln T_b) (1.8 (T_b/T − 1) − 0.8 ln(T_b/T)), the entropy of evaporation after
+    Kistiakowsky: Mackay, Bobra, Chan, Shiu, Environ. Sci. Technol. 16, 645 (1982).
     """
     boils = view.middle(TB) + ZERO_CELSIUS
     if not boils > ROOM + 20.0:
         return
-    entropy = (36.6 + _GAS_CONSTANT * np.log(boils)) / _GAS_CONSTANT
     for curve in view.curves(PRESSURE):
         at = inside(curve)
         ratio = boils / at
         if ratio <= 1.05:
             continue
-        expected = ONE_ATMOSPHERE * np.exp(-entropy * ratio**0.19 * (ratio - 1))
+        steep = 1.8 * (ratio - 1) - 0.8 * np.log(ratio)
+        expected = ONE_ATMOSPHERE * np.exp(-(4.4 + np.log(boils)) * steep)
         yield Outcome(
             "pressure", view.known.molecule.family, (curve.name,), view.curve(curve, at),
             np.asarray(expected), 0.0, f"p at {at - ZERO_CELSIUS:.0f} °C ({curve.label})",
