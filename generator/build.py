@@ -17,12 +17,13 @@ from generator import (
     sidebyside,
 )
 from generator.cache import Cache
-from generator.catalogue import catalogue
+from generator.catalogue import catalogue, without_findings
 from generator.cells import ERROR, NOTE
 from generator.dataset import dataset_from
 from generator.errors import DatasetError, Problem
 from generator.kept import code, kept
 from generator.metrics import Handbook, Settings, compute
+from generator.parallel import Begun
 from generator.schema import read_package
 from generator.tables import read_tables
 
@@ -54,18 +55,30 @@ def inspect(
     some of it is an error.
     """
     cache = cache or Cache(None)
-    say("Reading and checking the tables")
-    tables = read_tables(data)
-    structural = checks.check_tables(tables, cache)
-    if any(problem.severity == ERROR for problem in structural):
-        raise DatasetError(structural)
-    dataset = dataset_from(tables)
-    say(f"Working out the numbers of {len(dataset.solvents)} substances")
-    common = code(), settings, sorted(dataset.usual.items())
-    handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
+    handbook, structural = _numbers(data, settings, cache, say)
     say("Cross-checking them")
     judged = evidence.review(handbook, cache)
     return handbook, (*structural, *judged.problems), judged
+
+
+def _numbers(
+    data: Path, settings: Settings, cache: Cache, say: Callable[[str], None]
+) -> tuple[Handbook, tuple[Problem, ...]]:
+    """The numbers, and what there is to say about the tables before they are looked at."""
+    say("Reading and checking the tables")
+    tables = read_tables(data)
+    begun = Begun(lambda: tuple(checks.check_tables(tables, cache)))
+    try:
+        dataset = dataset_from(tables)
+        say(f"Working out the numbers of {len(dataset.solvents)} substances")
+        common = code(), settings, sorted(dataset.usual.items())
+        handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
+    finally:
+        # Whatever went wrong with tables that are not fit to be used: this says what it was.
+        structural = begun.result()
+        if any(problem.severity == ERROR for problem in structural):
+            raise DatasetError(structural)
+    return handbook, structural
 
 
 def review(
@@ -97,15 +110,20 @@ def build_site(
     be used.
     """
     cache = Cache(cache_folder)
-    handbook, findings, judged = inspect(data, settings, cache, say)
-    findings = _published(findings)
-    say("Writing pages and files")
-    book = catalogue(handbook, findings, judged)
-    models = modelfigures.draw(accuracy.comparisons(handbook), cache)
-    drawn = figures.figures_of(handbook, cache, models)
+    handbook, structural = _numbers(data, settings, cache, say)
     package = read_package(data)
     pages.keep_templates(cache)
-    made = pages.render_all(book, settings, drawn, package, known, drawn.prepare)
+    drawn = figures.figures_of(
+        handbook, cache, lambda: modelfigures.draw(accuracy.comparisons(handbook), cache)
+    )
+    plain = without_findings(handbook)
+    early = pages.begin(plain, settings, drawn, package, drawn.prepare_anew)
+    say("Cross-checking them")
+    judged = evidence.review(handbook, cache)
+    findings = _published((*structural, *judged.problems))
+    say("Writing pages and files")
+    book = catalogue(handbook, findings, judged)
+    made = pages.render_all(book, settings, drawn, package, known, drawn.prepare, early)
     files = {**exports.exports(book, data), sidebyside.PATH: sidebyside.data_script(book)}
     handbook.kept.save(forget=True)
     cache.sweep()

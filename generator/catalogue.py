@@ -5,9 +5,9 @@ from __future__ import annotations
 import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from heapq import nsmallest
-from typing import Protocol, TypeVar
+from typing import Any, Protocol, TypeVar
 
 from markupsafe import Markup
 
@@ -208,6 +208,22 @@ def catalogue(
         _names={slug: solvents[slug].name.casefold() for slug in in_order},
         _sets={slug: members for members in isomer_sets for slug in members},
     )
+
+
+class _Unknown(dict[Any, Any]):
+    """Findings that are still being looked for: whoever asks for them is refused."""
+
+    def _refuse(self, *_: object) -> Any:
+        raise LookupError("the findings are not known yet")
+
+    __getitem__ = __iter__ = __len__ = get = _refuse
+
+
+def without_findings(handbook: Handbook) -> Catalogue:
+    """The look-ups while the findings are still being looked for; they must not be asked for."""
+    nothing: Any = _Unknown()
+    known = catalogue(handbook, ())
+    return replace(known, findings=nothing, decided=nothing, limits=nothing, _by_slug=nothing)
 
 
 def _kirkwood(handbook: Handbook, slug: str) -> float | None:

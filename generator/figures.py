@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import statistics
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from functools import lru_cache
+from functools import cached_property, lru_cache
 from importlib.metadata import version
 from itertools import chain
 from pathlib import Path
@@ -35,15 +35,14 @@ __all__ = ["FigureInput", "Figures", "alt_text", "figure_input", "figures_of"]
 
 # Missing figures that are worth the start of another process.
 _ALONE = 8
-NONE: Mapping[str, str] = {}
 
 
 class Figures(Mapping[str, str]):
     """SVG text of every figure, by ``slug``, ``slug:scale``, ``slug:ribbon``, ``slug:structure``.
 
     What cannot be shown, because nothing is known of it, is left out. Curves and structures are
-    there once they have been asked for by ``prepare``. ``whole`` are figures about the handbook as
-    a whole, by names of their own.
+    there once they have been asked for by ``prepare``. ``anew`` are the substances that were not
+    known before; ``whole`` draws figures about all of them, by names of their own.
     """
 
     def __init__(
@@ -51,10 +50,13 @@ class Figures(Mapping[str, str]):
         inputs: Mapping[str, FigureInput],
         cache: Cache,
         kept: Kept = NOTHING,
-        whole: Mapping[str, str] = NONE,
+        anew: Sequence[str] = (),
+        whole: Callable[[], Mapping[str, str]] = dict,
     ) -> None:
+        self._anew = anew
         self._inputs, self._cache, self._slugs = inputs, cache, tuple(inputs)
-        self._drawn = dict(whole)
+        self._drawn: dict[str, str] = {}
+        self._draw_whole = whole
         known = kept.each(self._slugs, "kirkwood", lambda some: [inputs[s].kirkwood for s in some])
         self.quartiles = _quartiles([pair[0] for pair in known.values() if pair is not None])
         self._small: Mapping[str, Mapping[str, str | None]] = {
@@ -67,16 +69,28 @@ class Figures(Mapping[str, str]):
         wanted = [self._inputs[slug] for slug in slugs]
         self._drawn |= _kept_or_drawn(wanted, self._cache, curves=curves)
 
+    def prepare_anew(self) -> None:
+        """Draw for the substances that were not known before, if they are few."""
+        if len(self._anew) <= _ALONE:
+            self.prepare(self._anew)
+
+    @cached_property
+    def _whole(self) -> Mapping[str, str]:
+        return self._draw_whole()
+
     def __getitem__(self, name: str) -> str:
         slug, _, kind = name.partition(":")
-        found = self._small[kind].get(slug) if kind in self._small else self._drawn.get(name)
+        small = self._small.get(kind)
+        found = self._drawn.get(name) if small is None else small.get(slug)
+        if found is None and small is None and slug not in self._inputs:
+            found = self._whole.get(name)
         if found is None:
             raise KeyError(name)
         return found
 
     def __iter__(self) -> Iterator[str]:
         small = (f"{s}:{k}" for s in self._slugs for k in self._small if self._small[k][s])
-        return chain(small, self._drawn)
+        return chain(small, self._drawn, self._whole)
 
     def __len__(self) -> int:
         return sum(1 for _ in self)
@@ -88,14 +102,16 @@ class Figures(Mapping[str, str]):
         return [_ribbon(self._inputs[slug]) for slug in slugs]
 
 
-def figures_of(handbook: Handbook, cache: Cache, whole: Mapping[str, str] = NONE) -> Figures:
-    """The figures of a handbook; ``whole`` are those about it as a whole."""
+def figures_of(
+    handbook: Handbook, cache: Cache, whole: Callable[[], Mapping[str, str]] = dict
+) -> Figures:
+    """The figures of a handbook; ``whole`` draws those about it as a whole."""
     inputs = handbook.kept.each(
         tuple(handbook.dataset.solvents),
         "figure",
         lambda slugs: [figure_input(handbook, slug) for slug in slugs],
     )
-    return Figures(inputs, cache, handbook.kept, whole)
+    return Figures(inputs, cache, handbook.kept, inputs.anew, whole)
 
 
 def _quartiles(numbers: Sequence[float]) -> tuple[float, ...]:

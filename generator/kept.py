@@ -14,7 +14,7 @@ from pathlib import Path
 from typing import Any, Generic, TypeVar
 
 from generator.cache import Cache, Pack, digest, tree
-from generator.parallel import shared_out
+from generator.parallel import Begun, shared_out
 
 _Made = TypeVar("_Made")
 Asked = Mapping[str, "bytes | None"]
@@ -49,7 +49,7 @@ class Kept:
         *more: object,
         beside: Mapping[str, object] | None = None,
         stands: Callable[[_Made], bool] | None = None,
-    ) -> Mapping[str, _Made]:
+    ) -> Results[_Made]:
         """One result of several substances, loaded as it is asked for.
 
         ``make`` is given those that are missing, in shares that helpers may work at; it returns
@@ -70,7 +70,26 @@ class Kept:
             made[slug] = result
             if slug in self._keys:
                 self._pack.put(keys[slug], pickle.dumps(result, pickle.HIGHEST_PROTOCOL))
-        return _Loaded(keys, stored, made)
+        return Results(keys, stored, made, missing)
+
+    def begin(self, job: Callable[[], _Made]) -> Callable[[], _Made]:
+        """Have a job done by a helper if there is one; what is returned waits for its result.
+
+        What the helper kept is kept here too.
+        """
+
+        def work() -> tuple[_Made, Asked]:
+            before = len(self._pack.asked())
+            return job(), self._pack.asked(before)
+
+        begun = Begun(work)
+
+        def wait() -> _Made:
+            result, asked = begun.result()
+            self._pack.adopt(asked)
+            return result
+
+        return wait
 
     def share_out(self, jobs: Sequence[Callable[[], _Made]], least: int) -> list[_Made]:
         """The results of jobs that helpers may do, in shares of at least ``least``.
@@ -98,13 +117,20 @@ NOTHING = Kept({})
 """Nothing is kept: everything is made each time."""
 
 
-class _Loaded(Mapping[str, _Made], Generic[_Made]):
-    """Results by substance, in the order asked for; a stored one is read when it is wanted."""
+class Results(Mapping[str, _Made], Generic[_Made]):
+    """Results by substance, in the order asked for; a stored one is read when it is wanted.
+
+    ``anew`` are the substances whose result was made just now.
+    """
 
     def __init__(
-        self, order: Mapping[str, Any], stored: Mapping[str, Any], made: dict[str, _Made]
+        self,
+        order: Mapping[str, Any],
+        stored: Mapping[str, Any],
+        made: dict[str, _Made],
+        anew: Sequence[str],
     ) -> None:
-        self._order, self._stored, self._made = order, stored, made
+        self._order, self._stored, self._made, self.anew = order, stored, made, tuple(anew)
 
     def __getitem__(self, slug: str) -> _Made:
         if slug not in self._made:

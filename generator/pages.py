@@ -52,15 +52,19 @@ class Page:
 
 
 NO_PAGES: Mapping[str, Page] = {}
+NOTHING: Mapping[str, Any] = {}
+# The pages that show findings, datasheets apart.
+JUDGED = ("index.md", "review.md")
 
 
 def render_all(
     book: Catalogue,
     settings: Settings,
     figures: Mapping[str, str],
-    package: Mapping[str, Any] | None = None,
+    package: Mapping[str, Any] = NOTHING,
     known: Mapping[str, Page] = NO_PAGES,
     prepare: Callable[[Sequence[str]], None] = lambda slugs: None,
+    early: Callable[[], Sequence[Page]] | None = None,
 ) -> tuple[Page, ...]:
     """Every generated page of the handbook.
 
@@ -69,8 +73,8 @@ def render_all(
     a drawing to take instead of the plain one, ``accuracy:KEY`` a model against measured numbers.
     ``package`` is the parsed ``datapackage.json``; without it the data dictionary lists no tables.
     ``known`` are the pages of the published site by path; those that would come out the same are
-    given back.
-    ``prepare`` is told which substances need their figures before they are asked for.
+    given back. ``prepare`` is told which substances need their figures before they are asked for.
+    ``early`` waits for the pages that were begun beforehand.
     """
     keys = {_path(slug): (slug, key) for slug, key in _sheet_keys(book, settings, figures)}
     stale = {
@@ -78,15 +82,37 @@ def render_all(
         for path, (slug, key) in keys.items()
         if path not in known or not key or known[path].key != key
     }
-    whole = [partial(_page, *page) for page in _whole(book, settings, figures, package or {})]
+    plans = {plan[0]: partial(_page, *plan) for plan in _whole(book, settings, figures, package)}
+    now = {path: job for path, job in plans.items() if path in JUDGED or early is None} | stale
     # The pages about the whole handbook are the longer, the more substances there are.
     least = max(1, min(LEAST, 2500 // max(1, len(keys))))
-    made = book.handbook.kept.share_out([*whole, *stale.values()], least)
-    sheets = dict(zip(stale, made[len(whole) :], strict=True))
+    made = dict(zip(now, book.handbook.kept.share_out([*now.values()], least), strict=True))
+    made |= {page.path: page for page in (() if early is None else early())}
     return (
-        *(_or_known(page, known) for page in made[: len(whole)]),
-        *(sheets[path] if path in sheets else known[path] for path in keys),
+        *(_or_known(made[path], known) for path in plans),
+        *(made[path] if path in made else known[path] for path in keys),
     )
+
+
+def begin(
+    plain: Catalogue,
+    settings: Settings,
+    figures: Mapping[str, str],
+    package: Mapping[str, Any],
+    prepare: Callable[[], None],
+) -> Callable[[], list[Page]]:
+    """Begin with the pages that show no findings, while these are still being looked for.
+
+    What is returned waits for them; ``render_all`` takes it as ``early``. ``prepare`` draws what
+    will be needed next.
+    """
+
+    def work() -> list[Page]:
+        prepare()
+        plans = _whole(plain, settings, figures, package)
+        return [_page(*plan) for plan in plans if plan[0] not in JUDGED]
+
+    return plain.handbook.kept.begin(work)
 
 
 def _sheet(
