@@ -7,6 +7,7 @@ time and is never taken for another.
 
 from __future__ import annotations
 
+import contextlib
 import hashlib
 import json
 import os
@@ -31,8 +32,8 @@ class Manifest:
     ``config`` is the hash of the file of settings and ``settings`` what it sets; ``watched`` are
     the files and folders the site was made from, ``inputs`` is a hash of all of them and ``frame``
     of those that every page depends on; ``files`` holds the hash of each file of the site by its
-    path, ``pages`` what the build itself wants to know again of each page, by the same, and
-    ``summary`` what there is to tell of the whole.
+    path and ``stamps`` its time and size, ``pages`` what the build itself wants to know again of
+    each page, by the same, and ``summary`` what there is to tell of the whole.
     """
 
     config: str = ""
@@ -41,6 +42,7 @@ class Manifest:
     inputs: str = ""
     frame: str = ""
     files: Mapping[str, str] = field(default_factory=dict)
+    stamps: Mapping[str, Sequence[int]] = field(default_factory=dict)
     pages: Mapping[str, Any] = field(default_factory=dict)
     summary: Mapping[str, Any] = field(default_factory=dict)
 
@@ -68,12 +70,34 @@ def fingerprint(watched: Iterable[str | Path]) -> str:
     return digest(day, code(), templates(), [(str(path), tree(Path(path))) for path in watched])
 
 
-def contents(site: Path) -> dict[str, str]:
-    """Path and hash of every file of a site, those under a dot left out."""
+def contents(site: Path, known: Manifest | None = None) -> dict[str, str]:
+    """Path and hash of every file of a site, those under a dot left out.
+
+    A file that has the time and size on record is taken to have the content on record.
+    """
     paths = {path.relative_to(site).as_posix(): path for path in files_in(site)}
+    found = {}
+    if known is not None:
+        found = {
+            path: known.files[path]
+            for path, stamp in stamps(site, paths).items()
+            if stamp == known.stamps.get(path)
+        }
+    rest = {name: path for name, path in paths.items() if name not in found}
     # Hashing lets go of the interpreter: threads are enough.
     with ThreadPoolExecutor(processors()) as pool:
-        return dict(sorted(zip(paths, pool.map(hash_of, paths.values()), strict=True)))
+        found |= zip(rest, pool.map(hash_of, rest.values()), strict=True)
+    return dict(sorted(found.items()))
+
+
+def stamps(site: Path, paths: Iterable[str]) -> dict[str, list[int]]:
+    """Time [ns] and size of files of a site."""
+    found = {}
+    for path in paths:
+        with contextlib.suppress(OSError):
+            status = (site / path).stat()
+            found[path] = [status.st_mtime_ns, status.st_size]
+    return found
 
 
 def same(content: bytes, recorded: str | None) -> bool:

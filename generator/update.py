@@ -10,6 +10,7 @@ import shutil
 from collections import Counter
 from collections.abc import Callable, Mapping
 from dataclasses import asdict, dataclass, field, fields, replace
+from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -53,7 +54,7 @@ def update(config_file: Path, site: Path, say: Callable[[str], None]) -> Report:
     def make(fresh: Path) -> bool:
         last = manifest.read(cache, site)
         same = last.inputs and manifest.fingerprint(last.watched) == last.inputs
-        if same and manifest.contents(site) == last.files:
+        if same and manifest.contents(site, last) == last.files:
             made.append(last)
             return False
         made.append(_made(config_file, site, fresh, last, say))
@@ -121,13 +122,15 @@ def _drafted(
     plan: _Plan,
     say: Callable[[str], None],
 ) -> Manifest:
-    from generator.plugin import Wrapping
-
+    # Loaded before the other process is split off, so that it is loaded only once.
+    import_module("generator.build")
     frame = _frame(config_file, plan)
     if not frame or frame != last.frame:
         last = replace(last, pages={})
     begun = Begun(lambda: _outcome(plan, _cache(config_file), last, say))
-    there = manifest.contents(site) if last.files else {}
+    there = manifest.contents(site, last) if last.files else {}
+    from generator.plugin import Wrapping  # with MkDocs, while the other process is at work
+
     wrapping = Wrapping(config_file, fresh)
     outcome = begun.result()
     intact = {path: content for path, content in last.files.items() if there.get(path) == content}
@@ -151,6 +154,7 @@ def _drafted(
         "",
         frame,
         dict(sorted(files.items())),
+        manifest.stamps(fresh, files),
         {places[page.path]: _record(page) for page in made.pages},
         {
             "substances": made.substances,
