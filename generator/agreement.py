@@ -191,7 +191,7 @@ def _identity(view: View) -> Iterator[Outcome]:
         )  # fmt: skip
 
 
-def _transcripts(view: View) -> Iterator[Outcome]:
+def _copies(view: View) -> Iterator[Outcome]:
     """Rows that name an open table as their source, against that table.
 
     A row that has neither the temperature nor the value of the table is another entry of it.
@@ -211,13 +211,13 @@ def _transcripts(view: View) -> Iterator[Outcome]:
             at = float(there.temperature_c) + ZERO_CELSIUS if timed else np.nan
             if not timed or abs(point.temperature - at) < _SAME_PRINT:
                 yield Outcome(
-                    "transcript", "all", (point.name, CAS), view.value(point) + zero,
+                    "copied", "all", (point.name, CAS), view.value(point) + zero,
                     np.asarray(expected + zero), slack / max(abs(expected + zero), 1e-12),
                     "typed", f"printed in {point.label}", unit="K" if zero else unit,
                 )  # fmt: skip
             if timed and abs(point.value - expected) <= 2 * slack:
                 yield Outcome(
-                    "transcript-temperature", "all", (point.name + TEMPERATURE, CAS),
+                    "copied-temperature", "all", (point.name + TEMPERATURE, CAS),
                     view.temperature(point), np.asarray(at), 0.0,
                     "typed", f"printed in {point.label}", unit="K",
                 )  # fmt: skip
@@ -227,7 +227,7 @@ def _transcripts(view: View) -> Iterator[Outcome]:
             if there is not None:
                 right = tuple(map(float, there.value.split())) == tuple(curve.row.coefficients)
                 yield Outcome(
-                    "transcript", "all", (curve.name, CAS), np.asarray(1.0 if right else 2.0),
+                    "copied", "all", (curve.name, CAS), np.asarray(1.0 if right else 2.0),
                     np.asarray(1.0), 0.0, "coefficients typed", f"printed in {curve.label}",
                 )  # fmt: skip
 
@@ -240,5 +240,5 @@ AGREEMENT: tuple[tuple[Callable[[View], Iterator[Outcome]], frozenset[str]], ...
     (_temperatures, frozenset({TM, TB, TF})),
     (_vapour, frozenset({TB, PRESSURE})),
     (_identity, frozenset({SMILES, CAS})),
-    (_transcripts, frozenset({*QUANTITIES, CAS})),
+    (_copies, frozenset({*QUANTITIES, CAS})),
 )
