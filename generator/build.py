@@ -25,6 +25,7 @@ from generator.kept import code, kept
 from generator.metrics import Handbook, Settings, compute
 from generator.parallel import Begun
 from generator.schema import read_package
+from generator.structures import molecules
 from generator.tables import read_tables
 
 
@@ -42,23 +43,19 @@ class Site:
     substances: int
 
 
-def inspect(
-    data: Path,
-    settings: Settings,
-    cache: Cache | None = None,
-    say: Callable[[str], None] = lambda stage: None,
-) -> tuple[Handbook, tuple[Problem, ...], evidence.Review]:
-    """The numbers and all there is to say about the tables, notes on how they were read included.
+def findings_of(data: Path, cache: Cache) -> tuple[Problem, ...]:
+    """All there is to say about the tables, notes on how they were read included.
 
-    The cross-checks come with what they left alone and the limits they judged by. ``say`` is told
-    each stage before it starts. Raises ``DatasetError``, which tells all there is to say, when
-    some of it is an error.
+    Raises ``DatasetError``, which tells all there is to say, when some of it is an error.
     """
-    cache = cache or Cache(None)
-    handbook, structural = _numbers(data, settings, cache, say)
-    say("Cross-checking them")
-    judged = evidence.review(handbook, cache)
-    return handbook, (*structural, *judged.problems), judged
+    tables = read_tables(data)
+    structural = tuple(checks.check_tables(tables, cache))
+    if any(problem.severity == ERROR for problem in structural):
+        raise DatasetError(structural)
+    dataset = dataset_from(tables)
+    known = molecules([solvent.smiles for solvent in dataset.solvents.values()], cache)
+    structures = {slug: known[solvent.smiles] for slug, solvent in dataset.solvents.items()}
+    return *structural, *evidence.review(dataset, structures, cache).problems
 
 
 def _numbers(
@@ -72,7 +69,9 @@ def _numbers(
         dataset = dataset_from(tables)
         say(f"Working out the numbers of {len(dataset.solvents)} substances")
         common = code(), settings, sorted(dataset.usual.items())
-        handbook = compute(dataset, settings, cache, kept(cache, dataset.revisions, *common))
+        handbook = compute(
+            dataset, settings, cache, kept(cache, "numbers", dataset.revisions, *common)
+        )
     finally:
         # Whatever went wrong with tables that are not fit to be used: this says what it was.
         structural = begun.result()
@@ -82,14 +81,13 @@ def _numbers(
 
 
 def review(
-    data: Path,
-    settings: Settings,
-    cache: Cache | None = None,
-    say: Callable[[str], None] = lambda stage: None,
+    data: Path, settings: Settings, cache: Cache | None = None
 ) -> tuple[Handbook, tuple[Problem, ...]]:
-    """The numbers and every finding that is published. Raises ``DatasetError`` as ``inspect``."""
-    handbook, findings, _ = inspect(data, settings, cache, say)
-    return handbook, _published(findings)
+    """The numbers and every finding that is published; raises as ``findings_of``."""
+    cache = cache or Cache(None)
+    handbook, structural = _numbers(data, settings, cache, lambda stage: None)
+    judged = evidence.review(handbook.dataset, handbook.molecules, cache)
+    return handbook, _published((*structural, *judged.problems))
 
 
 def _published(findings: Sequence[Problem]) -> tuple[Problem, ...]:
@@ -119,7 +117,7 @@ def build_site(
     plain = without_findings(handbook)
     early = pages.begin(plain, settings, drawn, package, drawn.prepare_anew)
     say("Cross-checking them")
-    judged = evidence.review(handbook, cache)
+    judged = evidence.review(handbook.dataset, handbook.molecules, cache)
     findings = _published((*structural, *judged.problems))
     say("Writing pages and files")
     book = catalogue(handbook, findings, judged)

@@ -39,13 +39,12 @@ def check(data: Path, as_json: bool) -> None:
 
     Exit status: 0 without errors, 1 with errors, 2 when the command was misused.
     """
-    from generator.build import inspect
+    from generator.build import findings_of
     from generator.cache import Cache
-    from generator.metrics import Settings
 
     findings: tuple[Problem, ...]
     try:
-        findings = inspect(data, Settings(), Cache(data.parent / ".cache"))[1]
+        findings = findings_of(data, Cache(data.parent / ".cache"))
     except DatasetError as error:
         findings = error.problems
     errors, suspects, notes = (

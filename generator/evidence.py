@@ -18,7 +18,7 @@ from generator.errors import Problem
 from generator.expectations import outcomes
 from generator.facts import Facts, View, facts_of, structure_of
 from generator.identity import CAS, SMILES, identify, printed
-from generator.metrics import Handbook
+from generator.kept import code, kept
 from generator.neighbours import placed, sketch, surroundings
 from generator.parallel import shared_out
 from generator.quantities import MEASURED
@@ -44,26 +44,23 @@ NOT_JUDGED = Review((), (), ())
 """What a handbook that nobody cross-checked has to show."""
 
 
-def check_handbook(handbook: Handbook, cache: Cache | None = None) -> tuple[Problem, ...]:
-    """Every suspect of a handbook, strongest first."""
-    return review(handbook, cache).problems
-
-
-def review(handbook: Handbook, cache: Cache | None = None) -> Review:
+def review(
+    dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache | None = None
+) -> Review:
     """Suspects, those a correction of action ``keep`` silences with its reason, and limits.
 
-    ``cache`` keeps what is estimated from structures. Whatever follows from a substance, its
-    neighbours and the limits it is judged by is kept with the handbook.
+    ``cache`` keeps whatever follows from a structure, from a substance, or from a substance, its
+    neighbours and the limits it is judged by.
     """
-    dataset, kept = handbook.dataset, handbook.kept
+    cache = cache or Cache(None)
+    results = kept(cache, "findings", dataset.revisions, code())
     slugs = tuple(dataset.solvents)
 
     def backgrounds(some: Sequence[str]) -> list[Facts]:
-        molecules = {slug: handbook.molecules[slug] for slug in some}
-        return _backgrounds(dataset, molecules, cache or Cache(None))
+        return _backgrounds(dataset, {slug: molecules[slug] for slug in some}, cache)
 
-    known = kept.each(slugs, "background", backgrounds)
-    sketches = kept.each(
+    known = results.each(slugs, "background", backgrounds)
+    sketches = results.each(
         slugs, "sketch", lambda some: [sketch(_facts(dataset, known[slug])) for slug in some]
     )
     around = surroundings(list(sketches.values()))
@@ -71,14 +68,14 @@ def review(handbook: Handbook, cache: Cache | None = None) -> Review:
     def facts(slug: str) -> Facts:
         return placed(_facts(dataset, known[slug]), around[slug])
 
-    found = kept.each(
+    found = results.each(
         slugs,
         "comparisons",
         lambda some: [compared(outcomes(View(facts(slug)))) for slug in some],
         beside=around,
     )
     spreads = spreads_for(found.values())
-    judged = kept.each(
+    judged = results.each(
         suspected(found, spreads),
         "judgement",
         lambda some: [_judged(dataset, facts(slug), spreads) for slug in some],
@@ -94,6 +91,7 @@ def review(handbook: Handbook, cache: Cache | None = None) -> Review:
                 problems.append(there)
             else:
                 silenced.append((there, decision))
+    results.save(forget=True)
     ordered = sorted(problems, key=lambda p: (-p.strength, p))
     return Review(tuple(ordered), tuple(silenced), thresholds(spreads))
 

@@ -165,8 +165,8 @@ def templates() -> str:
     return digest(tree(_PACKAGE / "templates"))
 
 
-def kept(cache: Cache, revisions: Mapping[str, str], *common: object) -> Kept:
-    """The kept results of the substances. ``common``: what all of them depend on."""
+def kept(cache: Cache, kind: str, revisions: Mapping[str, str], *common: object) -> Kept:
+    """The kept results of the substances, of one kind. ``common``: what all of them depend on."""
     shared = digest(*common)
     keys = {slug: digest(slug, revision, shared) for slug, revision in revisions.items()}
-    return Kept(keys, cache.pack("substances"))
+    return Kept(keys, cache.pack(kind))

@@ -145,7 +145,7 @@ def _a_hand_on_the_site(desk: Desk) -> None:
 
 
 def _a_lost_cache(desk: Desk) -> None:
-    name = desk.random.choice(["substances.pack", "site", "template"])
+    name = desk.random.choice(["numbers.pack", "findings.pack", "site", "template"])
     path = desk.folder / ".cache" / name
     shutil.rmtree(path) if path.is_dir() else path.unlink(missing_ok=True)
 

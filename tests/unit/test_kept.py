@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -12,8 +12,13 @@ from generator.dataset import load_dataset
 from generator.kept import NOTHING, Kept, kept
 from generator.metrics import Settings, compute
 from generator.quantities import QUANTITIES
+from generator.structures import molecule
 
 REVISIONS = {"water": "1", "ethanol": "2"}
+
+
+def _kept(folder: Path, revisions: Mapping[str, str], *common: object) -> Kept:
+    return kept(Cache(folder), "numbers", revisions, *common)
 
 
 def _lengths(store: Kept, *more: object) -> tuple[list[str], dict[str, int]]:
@@ -28,28 +33,43 @@ def _lengths(store: Kept, *more: object) -> tuple[list[str], dict[str, int]]:
 
 
 def test_made_once_then_found(tmp_path: Path) -> None:
-    first = kept(Cache(tmp_path), REVISIONS, "code")
+    first = _kept(tmp_path, REVISIONS, "code")
     assert _lengths(first) == (["water", "ethanol"], {"water": 5, "ethanol": 7})
     assert _lengths(first)[0] == []
     first.save(forget=True)
-    assert _lengths(kept(Cache(tmp_path), REVISIONS, "code")) == ([], {"water": 5, "ethanol": 7})
+    assert _lengths(_kept(tmp_path, REVISIONS, "code")) == (
+        [],
+        {"water": 5, "ethanol": 7},
+    )
 
 
 def test_made_again_where_something_changed(tmp_path: Path) -> None:
-    first = kept(Cache(tmp_path), REVISIONS, "code")
+    first = _kept(tmp_path, REVISIONS, "code")
     _lengths(first, "a")
     first.save(forget=True)
     cases = {
-        "edited": (kept(Cache(tmp_path), {**REVISIONS, "water": "3"}, "code"), "a", ["water"]),
-        "other code": (kept(Cache(tmp_path), REVISIONS, "else"), "a", ["water", "ethanol"]),
-        "other input": (kept(Cache(tmp_path), REVISIONS, "code"), "b", ["water", "ethanol"]),
+        "edited": (
+            _kept(tmp_path, {**REVISIONS, "water": "3"}, "code"),
+            "a",
+            ["water"],
+        ),
+        "other code": (
+            _kept(tmp_path, REVISIONS, "else"),
+            "a",
+            ["water", "ethanol"],
+        ),
+        "other input": (
+            _kept(tmp_path, REVISIONS, "code"),
+            "b",
+            ["water", "ethanol"],
+        ),
     }
     for store, more, again in cases.values():
         assert _lengths(store, more)[0] == again
 
 
 def test_one_result(tmp_path: Path) -> None:
-    store = kept(Cache(tmp_path), REVISIONS)
+    store = _kept(tmp_path, REVISIONS)
     assert store.of("water", "name", lambda: "Water") == "Water"
     assert store.of("water", "name", lambda: "not made") == "Water"
     assert store.of("ethanol", "name", lambda: "Ethanol") == "Ethanol"
@@ -73,10 +93,10 @@ def test_kept_numbers_are_the_numbers(few_tables: Path, tmp_path: Path) -> None:
         ])  # fmt: skip
 
     plain = everything(NOTHING)
-    store = kept(cache, dataset.revisions)
+    store = kept(cache, "numbers", dataset.revisions)
     assert everything(store) == plain
     store.save(forget=True)
-    again = kept(cache, dataset.revisions)
+    again = kept(cache, "numbers", dataset.revisions)
     assert everything(again) == plain
     assert again.each(list(dataset.solvents), "row", lambda missing: [1 / 0 for _ in missing])
 
@@ -101,33 +121,31 @@ def _with_wrong_cells(folder: Path) -> None:
     table.write_text("\n".join(lines) + "\n", encoding="utf-8")
 
 
-def _reviewed(folder: Path, cache: Cache, *, store: bool) -> evidence.Review:
+def _reviewed(folder: Path, cache: Cache) -> evidence.Review:
     dataset = load_dataset(folder)
-    results = kept(cache, dataset.revisions) if store else NOTHING
-    made = evidence.review(compute(dataset, Settings(), cache, results), cache)
-    results.save(forget=False)
-    return made
+    structures = {slug: molecule(s.smiles) for slug, s in dataset.solvents.items()}
+    return evidence.review(dataset, structures, cache)
 
 
 def test_kept_findings_are_the_findings(few_tables: Path, tmp_path: Path) -> None:
     cache = Cache(tmp_path / "cache")
-    before = _reviewed(few_tables, cache, store=True)
+    before = _reviewed(few_tables, cache)
     _with_wrong_cells(few_tables)
-    found = _reviewed(few_tables, cache, store=True)
+    found = _reviewed(few_tables, cache)
     assert len(found.problems) > len(before.problems)
-    assert found == _reviewed(few_tables, Cache(None), store=False)
-    assert found == _reviewed(few_tables, cache, store=True)
+    assert found == _reviewed(few_tables, Cache(None))
+    assert found == _reviewed(few_tables, cache)
 
 
 def test_kept_findings_follow_their_rows(few_tables: Path, tmp_path: Path) -> None:
     cache = Cache(tmp_path / "cache")
     _with_wrong_cells(few_tables)
-    before = _reviewed(few_tables, cache, store=True)
+    before = _reviewed(few_tables, cache)
     table = few_tables / "measurements.csv"
     header, *rows = table.read_text(encoding="utf-8").splitlines()
     water = [row for row in rows if row.startswith("water,")]
     rest = [row for row in rows if not row.startswith("water,")]
     table.write_text("\n".join([header, *rest, *water]) + "\n", encoding="utf-8")
-    after = _reviewed(few_tables, cache, store=True)
+    after = _reviewed(few_tables, cache)
     assert {p.line for p in after.problems} != {p.line for p in before.problems}
-    assert after == _reviewed(few_tables, Cache(None), store=False)
+    assert after == _reviewed(few_tables, Cache(None))
