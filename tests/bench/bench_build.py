@@ -67,7 +67,9 @@ def _run(*command: object) -> Run:
         if status:
             log.seek(0)
             sys.exit(f"{' '.join(words)} failed:\n{log.read()[-3000:]}")
-    return Run(wall, used.ru_utime + used.ru_stime, used.ru_maxrss / 1024)
+    run = Run(wall, used.ru_utime + used.ru_stime, used.ru_maxrss / 1024)
+    print(f"{run.wall:8.2f} s {run.cpu:8.2f} CPU s  {' '.join(words)}", file=sys.stderr, flush=True)
+    return run
 
 
 def _typical(runs: Sequence[Run]) -> Run:
