@@ -104,7 +104,8 @@ def estimate_dipole(smiles: str) -> DipoleEstimate:
     """Estimated gas-phase dipole moment of a molecule.
 
     Raises `ValueError` for structures outside the model: several parts, an overall charge,
-    unpaired electrons, elements without fitted bonds, more than `LARGEST` atoms.
+    unpaired electrons, elements or bonds between elements that were not fitted, more than
+    `LARGEST` atoms.
     """
     found = moments(smiles)
     sizes = np.linalg.norm(found.vectors, axis=1)
@@ -135,6 +136,9 @@ def moments(smiles: str) -> Moments:
     refuse_outside(found.mol)
     model = _increments()
     keys = bond_keys(found.mol)
+    strange = {key[2:] for _, _, key, _ in keys if key[0] == "1" and key not in model}
+    if strange:
+        raise ValueError(f"no bond like {', '.join(sorted(strange))} was fitted")
     charges = np.zeros(found.mol.GetNumAtoms())
     for begin, end, key, factor in keys:
         if key in model:

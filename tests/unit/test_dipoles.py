@@ -18,6 +18,7 @@ from generator.dipoles import (
     calibration_table,
     estimate_dipole,
     moment_vectors,
+    support,
 )
 
 USED = [row for row in calibration_table() if row["status"] == "used"]
@@ -168,3 +169,19 @@ def test_the_shipped_increments_follow_from_the_lists() -> None:
         left_out = fit.moments(fit.solve(increments, use, calibrate.HUBER))[0][index]
         if not fit.cases[index].by_symmetry:
             assert left_out == pytest.approx(float(USED[index]["left_out"]), abs=0.03)
+
+
+@pytest.mark.parametrize("smiles", ["COP(=O)(OC)OC", "CN(C)P(=O)(N(C)C)N(C)C"])
+def test_bonds_that_nobody_fitted_are_refused(smiles: str) -> None:
+    """Without P=O in the fit a phosphate would be off by 2 D, whatever the uncertainty says."""
+    assert support(smiles) == 0
+    with pytest.raises(ValueError, match="was fitted"):
+        estimate_dipole(smiles)
+
+
+def test_support_is_that_of_the_estimate() -> None:
+    for smiles in ("CC(C)=O", "CS(C)(=O)=O", "ClCCCl"):
+        assert support(smiles) == estimate_dipole(smiles).support
+    assert support("[Na+].[Cl-]") == 0
+    with pytest.raises(ValueError, match="larger"):
+        estimate_dipole("O" + "C" * 30)
