@@ -246,9 +246,14 @@ def _worst(case: _Case) -> Blame | None:
 
 
 def _cost(outcome: Outcome, spreads: Spreads) -> Array:
-    """Uncapped cost of one comparison; nothing where there is nothing to compare."""
+    """Uncapped cost of one comparison.
+
+    As typed, there may be nothing to compare, which costs nothing; a value that is tried and
+    leaves an equation's domain explains nothing.
+    """
     z = np.minimum(np.abs(spreads.deviation(outcome)), _FARTHEST)
-    cost: Array = 0.5 * (_TAIL + 1) * np.log1p(np.where(np.isnan(z), 0.0, z) ** 2 / _TAIL)
+    z = np.where(np.isnan(z), _FARTHEST if z.ndim else 0.0, z)
+    cost: Array = 0.5 * (_TAIL + 1) * np.log1p(z**2 / _TAIL)
     return cost
 
 

@@ -128,7 +128,8 @@ class Outcome:
         """ln(found/expected), or found − expected where the check goes by difference."""
         with np.errstate(all="ignore"):
             if CHECKS[self.check].relative:
-                return np.asarray(np.log(self.found / self.expected), dtype=np.float64)
+                ratio = np.where(self.found == self.expected, 1.0, self.found / self.expected)
+                return np.asarray(np.log(ratio), dtype=np.float64)
             return np.asarray(self.found - self.expected, dtype=np.float64)
 
 

@@ -91,12 +91,22 @@ def undamaged(folder: Path, cache: Cache) -> Handbook:
 
 
 def suspects(dataset: Dataset, facts: Sequence[Facts], spreads: Spreads) -> list[Problem]:
-    """What the cross-checks say about some substances."""
-    return [
+    """What the cross-checks say about some substances, and no decision silences."""
+    found = [
         problem_of(dataset.solvents[f.slug], f, blame, spreads)
         for f in facts
         for blame in blamed(f, spreads)
     ]
+    kept = {
+        (file, row.line)
+        for file, rows in (
+            ("measurements.csv", dataset.measurements),
+            ("correlations.csv", dataset.correlations),
+        )
+        for row in rows
+        if (decision := dataset.decision_on(row)) is not None and decision.action == "keep"
+    }
+    return [problem for problem in found if (problem.file, problem.line) not in kept]
 
 
 # --- slips ---------------------------------------------------------------------------------------
