@@ -35,7 +35,9 @@ RELIED_ON: dict[Callable[..., Any], str] = {
 }
 
 
-@pytest.mark.parametrize(("function", "known"), RELIED_ON.items(), ids=lambda v: str(v)[:60])
+@pytest.mark.parametrize(
+    ("function", "known"), RELIED_ON.items(), ids=[f.__qualname__ for f in RELIED_ON]
+)
 def test_what_is_relied_on_is_as_it_was(function: Callable[..., Any], known: str) -> None:
     source = inspect.getsource(function)
     now = hashlib.sha256(source.encode()).hexdigest()[:16]
