@@ -1,7 +1,7 @@
 """Bring the published site up to date: what did not change is taken over, the rest is made.
 
 The site that comes out is the site of a build from nothing, byte for byte. While the pages are
-made in one process, another finds out what the published site holds and makes MkDocs ready.
+made in one process, another makes MkDocs ready.
 """
 
 from __future__ import annotations
@@ -125,20 +125,16 @@ def _drafted(
     # Loaded before the other process is split off, so that it is loaded only once.
     import_module("generator.build")
     frame = _frame(config_file, plan)
-    if not frame or frame != last.frame:
-        last = replace(last, pages={})
-    begun = Begun(lambda: _outcome(plan, _cache(config_file), last, say))
     there = manifest.contents(site, last) if last.files else {}
+    intact = {path: content for path, content in last.files.items() if there.get(path) == content}
+    still = intact if frame and frame == last.frame else {}
+    pages = {place: page for place, page in last.pages.items() if place in still}
+    last = replace(last, files=intact, pages=pages)
+    begun = Begun(lambda: _outcome(plan, _cache(config_file), last, say))
     from generator.plugin import Wrapping  # with MkDocs, while the other process is at work
 
     wrapping = Wrapping(config_file, fresh)
     outcome = begun.result()
-    intact = {path: content for path, content in last.files.items() if there.get(path) == content}
-    if isinstance(outcome, _Outcome) and not outcome.standing <= intact.keys():
-        # Somebody was at the published site: take over only what is still as it was made.
-        pages = {place: page for place, page in last.pages.items() if place in intact}
-        last = replace(last, files=intact, pages=pages)
-        outcome = _outcome(plan, _cache(config_file), last, say)
     if not isinstance(outcome, _Outcome):
         raise DatasetError(outcome)
     say("Putting the pages into their frame")
