@@ -142,11 +142,14 @@ def booklet(repeats: int) -> Run:
 
 
 def _show(title: str, medians: Mapping[str, Run]) -> None:
+    """Times and memory; and, as others at work weigh less on it, the ratio of processor times."""
     print(title)
+    bare = medians.get("bare")
     for kind, run in medians.items():
-        ratio = f"  {run.wall / medians['bare'].wall:6.3f} × bare" if "bare" in medians else ""
         figures = f"{run.wall:8.2f} s {run.cpu:8.2f} CPU s {run.memory:6.0f} MB"
-        print(f"  {KINDS[kind]:30}{figures}{ratio}", flush=True)
+        if bare:
+            figures += f"  {run.wall / bare.wall:6.3f} × bare, CPU {run.cpu / bare.cpu:6.3f} ×"
+        print(f"  {KINDS[kind]:30}{figures}", flush=True)
 
 
 def _exponents(results: Mapping[int, Mapping[str, Run]]) -> None:
@@ -154,10 +157,12 @@ def _exponents(results: Mapping[int, Mapping[str, Run]]) -> None:
     low, high = (min(results, key=lambda size: abs(math.log(size / end))) for end in GROWTH)
     if low == high:
         return
-    print(f"growth exponent from {low} to {high} substances")
-    for kind in results[low]:
-        growth = math.log(results[high][kind].wall / results[low][kind].wall)
-        print(f"  {KINDS[kind]:30}{growth / math.log(high / low):8.2f}")
+    print(f"growth exponent from {low} to {high} substances: wall, CPU")
+    for kind, small in results[low].items():
+        large = results[high][kind]
+        ratios = (large.wall / small.wall, large.cpu / small.cpu)
+        wall, cpu = (math.log(ratio) / math.log(high / low) for ratio in ratios)
+        print(f"  {KINDS[kind]:30}{wall:8.2f} {cpu:8.2f}")
 
 
 def draw(results: Mapping[int, Mapping[str, Run]], path: Path) -> None:
