@@ -212,7 +212,7 @@ def _copies(view: View) -> Iterator[Outcome]:
             if not timed or abs(point.temperature - at) < _SAME_PRINT:
                 # What rounds to the printed digits is the printed value.
                 value = view.value(point)
-                value = np.where(np.abs(value - expected) <= 2 * slack, expected, value)
+                value = np.where(np.abs(value - expected) <= 1.02 * slack, expected, value)
                 yield Outcome(
                     "copied", "all", (point.name, CAS), value + zero,
                     np.asarray(expected + zero), 0.0, "typed",
