@@ -115,14 +115,16 @@ def build_site(
         handbook, cache, lambda: modelfigures.draw(accuracy.comparisons(handbook), cache)
     )
     plain = without_findings(handbook)
+    say("Cross-checking them, writing pages and files")
+    # Three processes: the findings, the pages that do without them, and this one with the files.
+    judging = Begun(lambda: evidence.review(handbook.dataset, handbook.molecules, cache))
     early = pages.begin(plain, settings, drawn, package, drawn.prepare_anew)
-    say("Cross-checking them")
-    judged = evidence.review(handbook.dataset, handbook.molecules, cache)
+    files = {**exports.numbers(plain, data), sidebyside.PATH: sidebyside.data_script(plain)}
+    judged = judging.result()
     findings = _published((*structural, *judged.problems))
-    say("Writing pages and files")
     book = catalogue(handbook, findings, judged)
     made = pages.render_all(book, settings, drawn, package, known, drawn.prepare, early)
-    files = {**exports.exports(book, data), sidebyside.PATH: sidebyside.data_script(book)}
+    files |= exports.findings(book)
     handbook.kept.save(forget=True)
     cache.sweep()
     dataset = handbook.dataset

@@ -36,6 +36,16 @@ FINDING_COLUMNS = (
 
 def exports(book: Catalogue, data_folder: Path) -> dict[str, bytes]:
     """Every file a reader may take away, by its path in the site; equal input, equal bytes."""
+    return {**numbers(book, data_folder), **findings(book)}
+
+
+def findings(book: Catalogue) -> dict[str, bytes]:
+    """The table of findings, by its path in the site."""
+    return {f"{FOLDER}/findings.csv": _table([FINDING_COLUMNS, *_finding_rows(book)])}
+
+
+def numbers(book: Catalogue, data_folder: Path) -> dict[str, bytes]:
+    """Every file but that of the findings, by its path in the site."""
     handbook = book.handbook
     slugs = tuple(handbook.dataset.solvents)
     shares = handbook.kept.each(slugs, "export", lambda some: [_share(handbook, s) for s in some])
@@ -43,7 +53,6 @@ def exports(book: Catalogue, data_folder: Path) -> dict[str, bytes]:
     head = _table([VALUE_COLUMNS])
     files = {
         "values.csv": head + b"".join(rows.values()),
-        "findings.csv": _table([FINDING_COLUMNS, *_finding_rows(book)]),
         "handbook.json": _json(handbook, {slug: share[1] for slug, share in shares.items()}),
         "changes.atom": feed(
             handbook.dataset.history,

@@ -6,9 +6,11 @@ made in one process, another makes MkDocs ready.
 
 from __future__ import annotations
 
+import gc
 import shutil
 from collections import Counter
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import asdict, dataclass, field, fields, replace
 from importlib import import_module
 from pathlib import Path
@@ -60,11 +62,24 @@ def update(config_file: Path, site: Path, say: Callable[[str], None]) -> Report:
         made.append(_made(config_file, site, fresh, last, say))
         return True
 
-    changed = publish(site, make)
+    with _no_collection():
+        changed = publish(site, make)
     if changed:
         manifest.write(cache, site, made[0])
     summary = made[0].summary
     return Report(changed, **(summary if changed else {**summary, "anew": 0}))
+
+
+@contextmanager
+def _no_collection() -> Iterator[None]:
+    """Leave the collector of cycles out: a build makes millions of objects and hardly a cycle."""
+    was = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was:
+            gc.enable()
 
 
 def _cache(config_file: Path) -> Path:
