@@ -118,12 +118,12 @@ def build_site(
     say("Cross-checking them, writing pages and files")
     # Three processes: the findings, the pages that do without them, and this one with the files.
     judging = Begun(lambda: evidence.review(handbook.dataset, handbook.molecules, cache))
-    early = pages.begin(plain, settings, drawn, package, drawn.prepare_anew)
+    begun = pages.Begun(plain, settings, drawn, package, drawn.prepare_anew)
     files = {**exports.numbers(plain, data), sidebyside.PATH: sidebyside.data_script(plain)}
     judged = judging.result()
     findings = _published((*structural, *judged.problems))
     book = catalogue(handbook, findings, judged)
-    made = pages.render_all(book, settings, drawn, package, known, drawn.prepare, early)
+    made = pages.render_all(book, settings, drawn, package, known, drawn.prepare, begun)
     files |= exports.findings(book)
     handbook.kept.save(forget=True)
     cache.sweep()

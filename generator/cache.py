@@ -42,7 +42,7 @@ def tree(top: Path) -> list[tuple[str, str]]:
     return [(path.relative_to(top).as_posix(), hash_of(path)) for path in sorted(files_in(top))]
 
 
-def files_in(top: Path) -> Iterator[Path]:
+def files_in(top: str | Path) -> Iterator[Path]:
     """Every file below a folder, those passed over that belong to other programs."""
     for folder, inner, names in os.walk(top):
         inner[:] = [name for name in inner if not name.startswith((".", "__pycache__"))]

@@ -12,7 +12,7 @@ from dataclasses import dataclass, replace
 
 from generator import dipoles, estimates
 from generator.blame import Blame, blamed, curve_of, point_of
-from generator.cache import Cache
+from generator.cache import Cache, digest
 from generator.dataset import Correction, Dataset
 from generator.errors import Problem
 from generator.expectations import outcomes
@@ -53,11 +53,19 @@ def review(
     neighbours and the limits it is judged by.
     """
     cache = cache or Cache(None)
-    results = kept(cache, "findings", dataset.revisions, code())
+    version = code()
+    results = kept(cache, "findings", dataset.revisions, version)
     slugs = tuple(dataset.solvents)
 
+    # Who a substance is does not change with its values.
+    named = {slug: digest(replace(s, line=0), version) for slug, s in dataset.solvents.items()}
+    by_name = results.under(named)
+
     def backgrounds(some: Sequence[str]) -> list[Facts]:
-        return _backgrounds(dataset, {slug: molecules[slug] for slug in some}, cache)
+        origins = by_name.each(
+            some, "origin", lambda few: [_origin(dataset, slug, molecules[slug]) for slug in few]
+        )
+        return _backgrounds(dataset, origins, cache)
 
     known = results.each(slugs, "background", backgrounds)
     sketches = results.each(
@@ -145,7 +153,8 @@ def prepared(
 
 def everything(dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache) -> list[Facts]:
     """The cells of some substances with what their structures and CAS numbers foretell."""
-    return [_facts(dataset, known) for known in _backgrounds(dataset, molecules, cache)]
+    origins = {slug: _origin(dataset, slug, known) for slug, known in molecules.items()}
+    return [_facts(dataset, known) for known in _backgrounds(dataset, origins, cache)]
 
 
 def _facts(dataset: Dataset, background: Facts) -> Facts:
@@ -154,31 +163,34 @@ def _facts(dataset: Dataset, background: Facts) -> Facts:
     return replace(background, points=own.points, curves=own.curves)
 
 
-def _backgrounds(dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache) -> list[Facts]:
-    """What structures, names and CAS numbers foretell of some substances, without their cells."""
-    moments = _moments(dataset, molecules, cache)
+_Origin = tuple[Facts, bool]
+
+
+def _origin(dataset: Dataset, slug: str, known: Molecule) -> _Origin:
+    """What structure, name and CAS number foretell; and whether a moment can be estimated."""
+    solvent = dataset.solvents[slug]
+    who = identify(solvent)
+    facts = Facts(slug, structure_of(known), {}, {}, identity=who, prints=printed(solvent.cas))
+    # An estimate that no like molecule supports judges nothing.
+    return facts, known.dipole_limit is None and dipoles.support(known.smiles) > 0
+
+
+def _backgrounds(dataset: Dataset, origins: Mapping[str, _Origin], cache: Cache) -> list[Facts]:
+    """What is foretold of some substances, their rows taken into account, without their cells."""
+    moments = _moments(dataset, origins, cache)
     found = []
-    for slug, structure in molecules.items():
-        solvent = dataset.solvents[slug]
-        rows = [row for key in MEASURED for row in dataset.measurements_of(slug, key)]
-        who = identify(solvent, rows)
-        found.append(
-            Facts(
-                slug,
-                structure_of(structure),
-                {},
-                {},
-                estimate=moments.get(slug),
-                identity=who,
-                prints=printed(solvent.cas),
-                listed=structure_of(molecule(who.listed)) if who.clashes else None,
-            )
-        )
+    for slug, (facts, _) in origins.items():
+        who = facts.identity
+        if who.relation != "same":  # then the rows have a say
+            rows = [row for key in MEASURED for row in dataset.measurements_of(slug, key)]
+            who = identify(dataset.solvents[slug], rows)
+        listed = structure_of(molecule(who.listed)) if who.clashes else None
+        found.append(replace(facts, estimate=moments.get(slug), identity=who, listed=listed))
     return found
 
 
 def _moments(
-    dataset: Dataset, molecules: Mapping[str, Molecule], cache: Cache
+    dataset: Dataset, origins: Mapping[str, _Origin], cache: Cache
 ) -> Mapping[str, tuple[float, float]]:
     """Estimated dipole moments [D] with their uncertainty, where a measured value waits for them.
 
@@ -186,15 +198,13 @@ def _moments(
     """
     wanted = [
         slug
-        for slug, structure in molecules.items()
-        if structure.dipole_limit is None
-        and any(dataset.measurements_of(slug, key) for key in _WAITING)
-        # An estimate that no like molecule supports judges nothing.
-        and dipoles.support(structure.smiles) > 0
+        for slug, (_, supported) in origins.items()
+        if supported and any(dataset.measurements_of(slug, key) for key in _WAITING)
     ]
 
     def estimated(share: Sequence[str]) -> list[tuple[float, float] | None]:
-        return [estimates.dipole_moment(molecules[slug], cache) for slug in share]
+        known = [origins[slug][0].structure.molecule for slug in share]
+        return [estimates.dipole_moment(structure, cache) for structure in known]
 
     found = zip(wanted, shared_out(estimated, wanted, _LEAST), strict=True)
     return {slug: moment for slug, moment in found if moment is not None}

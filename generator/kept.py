@@ -72,6 +72,10 @@ class Kept:
                 self._pack.put(keys[slug], pickle.dumps(result, pickle.HIGHEST_PROTOCOL))
         return Results(keys, stored, made, missing)
 
+    def under(self, keys: Mapping[str, str]) -> Kept:
+        """The same store for results that depend on something else: other hashes."""
+        return Kept(keys, self._pack)
+
     def begin(self, job: Callable[[], _Made]) -> Callable[[], _Made]:
         """Have a job done by a helper if there is one; what is returned waits for its result.
 

@@ -8,7 +8,6 @@ time and is never taken for another.
 from __future__ import annotations
 
 import contextlib
-import hashlib
 import json
 import os
 import shutil
@@ -98,11 +97,6 @@ def stamps(site: Path, paths: Iterable[str]) -> dict[str, list[int]]:
             status = (site / path).stat()
             found[path] = [status.st_mtime_ns, status.st_size]
     return found
-
-
-def same(content: bytes, recorded: str | None) -> bool:
-    """Whether a file with this content has the hash on record."""
-    return hashlib.sha256(content).hexdigest() == recorded
 
 
 def take_over(site: Path, fresh: Path, paths: Iterable[str]) -> None:

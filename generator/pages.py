@@ -55,6 +55,7 @@ NO_PAGES: Mapping[str, Page] = {}
 NOTHING: Mapping[str, Any] = {}
 # The pages that show findings, datasheets apart.
 JUDGED = ("index.md", "review.md")
+DRAWN = "methods.md"
 
 
 def render_all(
@@ -64,7 +65,7 @@ def render_all(
     package: Mapping[str, Any] = NOTHING,
     known: Mapping[str, Page] = NO_PAGES,
     prepare: Callable[[Sequence[str]], None] = lambda slugs: None,
-    early: Callable[[], Sequence[Page]] | None = None,
+    begun: Begun | None = None,
 ) -> tuple[Page, ...]:
     """Every generated page of the handbook.
 
@@ -74,45 +75,60 @@ def render_all(
     ``package`` is the parsed ``datapackage.json``; without it the data dictionary lists no tables.
     ``known`` are the pages of the published site by path; those that would come out the same are
     given back. ``prepare`` is told which substances need their figures before they are asked for.
-    ``early`` waits for the pages that were begun beforehand.
+    ``begun`` has the pages that were begun beforehand.
     """
-    keys = {_path(slug): (slug, key) for slug, key in _sheet_keys(book, settings, figures)}
+    plain = begun.keys if begun else dict(_plain_keys(book, settings, figures))
+    keys = {
+        _path(slug): (slug, key and digest(key, book.findings_of(slug)))
+        for slug, key in plain.items()
+    }
     stale = {
         path: partial(_sheet, book, settings, figures, prepare, slug, key)
         for path, (slug, key) in keys.items()
         if path not in known or not key or known[path].key != key
     }
     plans = {plan[0]: partial(_page, *plan) for plan in _whole(book, settings, figures, package)}
-    now = {path: job for path, job in plans.items() if path in JUDGED or early is None} | stale
+    now = {path: job for path, job in plans.items() if path in JUDGED or not begun} | stale
     # The pages about the whole handbook are the longer, the more substances there are.
     least = max(1, min(LEAST, 2500 // max(1, len(keys))))
     made = dict(zip(now, book.handbook.kept.share_out([*now.values()], least), strict=True))
-    made |= {page.path: page for page in (() if early is None else early())}
+    made |= {page.path: page for page in (begun.pages() if begun else ())}
     return (
         *(_or_known(made[path], known) for path in plans),
         *(made[path] if path in made else known[path] for path in keys),
     )
 
 
-def begin(
-    plain: Catalogue,
-    settings: Settings,
-    figures: Mapping[str, str],
-    package: Mapping[str, Any],
-    prepare: Callable[[], None],
-) -> Callable[[], list[Page]]:
-    """Begin with the pages that show no findings, while these are still being looked for.
+class Begun:
+    """The pages that show no findings, begun while these are still being looked for.
 
-    What is returned waits for them; ``render_all`` takes it as ``early``. ``prepare`` draws what
-    will be needed next.
+    A helper draws what will be needed next (``prepare``) and makes the page with most figures,
+    while this process makes the others and looks which datasheets have changed.
     """
 
-    def work() -> list[Page]:
-        prepare()
-        plans = _whole(plain, settings, figures, package)
-        return [_page(*plan) for plan in plans if plan[0] not in JUDGED]
+    def __init__(
+        self,
+        plain: Catalogue,
+        settings: Settings,
+        figures: Mapping[str, str],
+        package: Mapping[str, Any],
+        prepare: Callable[[], None],
+    ) -> None:
+        plans = {plan[0]: plan for plan in _whole(plain, settings, figures, package)}
 
-    return plain.handbook.kept.begin(work)
+        def drawing() -> Page:
+            prepare()
+            return _page(*plans[DRAWN])
+
+        self._drawn = plain.handbook.kept.begin(drawing)
+        self.keys = dict(_plain_keys(plain, settings, figures))
+        """Of each substance, what ``_plain_keys`` says."""
+        others = [plan for path, plan in plans.items() if path not in (*JUDGED, DRAWN)]
+        self._others = [_page(*plan) for plan in others]
+
+    def pages(self) -> list[Page]:
+        """The pages; waits for the helper."""
+        return [*self._others, self._drawn()]
 
 
 def _sheet(
@@ -141,10 +157,13 @@ def _foot(book: Catalogue, settings: Settings, slug: str = "") -> Foot:
     return Foot(settings.laboratory, revision or dataset.revision)
 
 
-def _sheet_keys(
+def _plain_keys(
     book: Catalogue, settings: Settings, figures: Mapping[str, str]
 ) -> Iterator[tuple[str, str]]:
-    """For each substance a hash of all that its datasheet shows, its own rows and the others'."""
+    """For each substance a hash of all that its datasheet shows but findings.
+
+    That is, what follows from its own rows and from those of others.
+    """
     faces = {slug: digest(related(book, slug, figures)) for slug in book.in_order}
     for slug in book.in_order:
         own = book.handbook.kept.key(slug)
@@ -156,7 +175,6 @@ def _sheet_keys(
                 own,
                 _foot(book, settings, slug),
                 book.rows[slug].places,
-                book.findings_of(slug),
                 book.set_of(slug)[:1],
                 len(book.families[book.handbook.molecules[slug].family]),
                 [faces[other] for other in (slug, *isomers, *swaps)],

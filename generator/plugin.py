@@ -15,6 +15,7 @@ from mkdocs.exceptions import PluginError
 from mkdocs.livereload import LiveReloadServer
 from mkdocs.plugins import BasePlugin, CombinedEvent, event_priority
 from mkdocs.structure.files import Files
+from mkdocs.structure.pages import Page
 
 from generator import ready
 from generator.build import Site, build_site
@@ -96,7 +97,7 @@ class Wrapping:
     def wrap(self, site: Site, standing: Collection[str]) -> dict[str, str]:
         """Wrap and write what does not stand; where in the site each page is, by its path."""
         self._plugin.hand_over(site, standing)
-        ready.run(self._config)
+        ready.run(self._config, Cache(_cache(self._config)))
         return self._plugin.places
 
 
@@ -131,7 +132,7 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         return _home(config) / self.config.data_
 
     def hand_over(self, site: Site, standing: Collection[str]) -> None:
-        """Take pages and files made beforehand; those files that stand are not written."""
+        """Take pages and files made beforehand; those files that stand somewhere already."""
         self._site, self._standing = site, standing
 
     def on_config(self, config: MkDocsConfig) -> MkDocsConfig:
@@ -166,6 +167,11 @@ class DatasheetsPlugin(BasePlugin[DatasheetsConfig]):
         """Keep the theme's compiled templates."""
         env.bytecode_cache = Compiled(Cache(_cache(config)))
         return env
+
+    @event_priority(100)
+    def on_post_page(self, output: str, *, page: Page, config: MkDocsConfig) -> str:
+        """Put the body of a generated page in its place."""
+        return page.filled(output) if isinstance(page, ready.ReadyPage) else output
 
     @event_priority(100)
     def _add_search_entries(self, *, config: MkDocsConfig) -> None:

@@ -2,7 +2,9 @@
 
 A page that is already HTML passes through MkDocs without Markdown, and its search entry is
 written directly instead of being parsed out of the page again. Pages and files that stand
-unchanged in the published site are known to MkDocs, and are neither rendered nor written.
+unchanged in the published site are known to MkDocs, and are neither rendered nor written. The
+body is put into the frame when the theme and the search have done with the page: they would look
+through every one of it.
 """
 
 from __future__ import annotations
@@ -13,10 +15,14 @@ from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from jinja2 import FileSystemLoader
 from mkdocs.exceptions import MkDocsException, PluginError
 from mkdocs.structure.files import File, InclusionLevel
 from mkdocs.structure.pages import Page
 from mkdocs.structure.toc import AnchorLink, TableOfContents
+
+from generator.cache import Cache, files_in
+from generator.compiled import Compiled
 
 # What `load` and `run` raise when MkDocs refuses.
 Refused = MkDocsException
@@ -27,6 +33,10 @@ if TYPE_CHECKING:
     from mkdocs.structure.files import Files
 
     from generator.pages import Page as FinishedPage
+
+
+# Where the body goes. The theme looks whether it has a heading, and ours whether it has a foot.
+_PLACE = "<h1>page-foot: the body goes here</h1>"
 
 
 class ReadyFile(File):
@@ -58,9 +68,13 @@ class ReadyPage(Page):
         self.meta |= {"hide": ["navigation"]} if self._finished.kind == "datasheet" else {}
 
     def render(self, config: MkDocsConfig, files: Files) -> None:
-        """Hand over the finished body; no Markdown is run."""
-        self.content = self._finished.html
+        """Nothing is to be rendered; the place of the body is marked."""
+        self.content = _PLACE
         self.toc = TableOfContents(_nested(self._finished.toc))
+
+    def filled(self, output: str) -> str:
+        """The page in its frame with its body in place."""
+        return output.replace(_PLACE, self._finished.html, 1)
 
 
 def _nested(entries: Iterable[tuple[int, str, str]]) -> list[AnchorLink]:
@@ -165,12 +179,27 @@ def sources(config: MkDocsConfig) -> tuple[str, ...]:
     return tuple(str(Path(file.parent, place).resolve()) for place in folders if place)
 
 
-def run(config: MkDocsConfig) -> None:
-    """Let MkDocs build what differs from the published site into an empty folder.
+class _Theme(FileSystemLoader):
+    """The theme's files without its thousands of icons, which MkDocs would list and leave out."""
 
-    Raises ``Refused`` when MkDocs refuses.
+    def list_templates(self) -> list[str]:
+        """The name of every file that is not under a dot."""
+        return sorted(
+            {path.relative_to(top).as_posix() for top in self.searchpath for path in files_in(top)}
+        )
+
+
+def run(config: MkDocsConfig, cache: Cache) -> None:
+    """Let MkDocs build what differs from the published site.
+
+    ``cache`` keeps compiled templates. Raises ``Refused`` when MkDocs refuses.
     """
     from mkdocs.commands import build
+
+    # One set of templates for all who ask for the theme's.
+    env = config.theme.get_env()
+    env.loader, env.bytecode_cache = _Theme(config.theme.dirs), Compiled(cache)
+    setattr(config.theme, "get_env", lambda: env)  # noqa: B010, a method for this build alone
 
     config.plugins.on_startup(command="build", dirty=False)
     build.log.addFilter(_is_no_warning_of_dirt)

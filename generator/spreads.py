@@ -63,12 +63,21 @@ class Threshold:
 
 def robust(residuals: Iterable[float]) -> Spread:
     """Median, and the spread that half and four fifths of all ask for [as residuals]."""
-    values = np.array([r for r in residuals if math.isfinite(r)])
+    values = np.sort([r for r in residuals if math.isfinite(r)])
     if not values.size:
         return Spread(0.0, 0.0, 0)
-    middle = float(np.median(values))
-    half, most = np.quantile(np.abs(values - middle), [0.5, 0.8])
-    return Spread(middle, float(max(_HALF * half, _FOUR_FIFTHS * most)), values.size)
+    middle = _share(values, 0.5)
+    away = np.sort(np.abs(values - middle))
+    spread = max(_HALF * _share(away, 0.5), _FOUR_FIFTHS * _share(away, 0.8))
+    return Spread(middle, spread, values.size)
+
+
+def _share(ordered: Array, share: float) -> float:
+    """Quantile of ordered values, between two of them by proportion."""
+    place = share * (len(ordered) - 1)
+    below = int(place)
+    low, high = float(ordered[below]), float(ordered[min(below + 1, len(ordered) - 1)])
+    return low + (place - below) * (high - low)
 
 
 @lru_cache(maxsize=1)

@@ -12,6 +12,7 @@ from collections import Counter
 from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import asdict, dataclass, field, fields, replace
+from hashlib import sha256
 from importlib import import_module
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -102,10 +103,14 @@ class _Plan:
 
 @dataclass(frozen=True, slots=True)
 class _Outcome:
-    """The pages and files that were made, and what of the published site still stands."""
+    """The pages that were made, what of the published site still stands, and the files that do not.
+
+    ``written`` are those files, pages apart, with the hash of each: they are in place already.
+    """
 
     site: Site
     standing: frozenset[str]
+    written: Mapping[str, str]
 
 
 def _made(
@@ -145,7 +150,7 @@ def _drafted(
     still = intact if frame and frame == last.frame else {}
     pages = {place: page for place, page in last.pages.items() if place in still}
     last = replace(last, files=intact, pages=pages)
-    begun = Begun(lambda: _outcome(plan, _cache(config_file), last, say))
+    begun = Begun(lambda: _outcome(plan, _cache(config_file), last, fresh, say))
     from generator.plugin import Wrapping  # with MkDocs, while the other process is at work
 
     wrapping = Wrapping(config_file, fresh)
@@ -153,8 +158,8 @@ def _drafted(
     if not isinstance(outcome, _Outcome):
         raise DatasetError(outcome)
     say("Putting the pages into their frame")
-    places = wrapping.wrap(outcome.site, outcome.standing)
-    files = manifest.contents(fresh)
+    places = wrapping.wrap(outcome.site, outcome.standing | outcome.written.keys())
+    files = manifest.contents(fresh, _known_by(fresh, outcome.written))
     manifest.take_over(site, fresh, outcome.standing)
     files |= {path: last.files[path] for path in outcome.standing}
     made = outcome.site
@@ -205,9 +210,12 @@ def _frame(config_file: Path, plan: _Plan) -> str:
 
 
 def _outcome(
-    plan: _Plan, cache: Path, last: Manifest, say: Callable[[str], None]
+    plan: _Plan, cache: Path, last: Manifest, fresh: Path, say: Callable[[str], None]
 ) -> _Outcome | tuple[Problem, ...]:
-    """Make the site but for what stands in the last one; or tell what is wrong with the tables."""
+    """Make the site but for what stands in the last one; or tell what is wrong with the tables.
+
+    Files that are no pages go to the folder ``fresh`` at once.
+    """
     from generator.build import build_site
     from generator.pages import Page
 
@@ -221,10 +229,18 @@ def _outcome(
     except DatasetError as error:
         return error.problems
     pages = {places[page.path] for page in made.pages if not page.body}
-    files = {path for path, data in made.files.items() if manifest.same(data, last.files.get(path))}
-    # What stands need not be handed over.
-    rest = {path: b"" if path in files else data for path, data in made.files.items()}
-    return _Outcome(replace(made, files=rest), frozenset(pages | files))
+    hashes = {path: sha256(content).hexdigest() for path, content in made.files.items()}
+    files = {path for path, content in hashes.items() if content == last.files.get(path)}
+    written = {path: content for path, content in hashes.items() if path not in files}
+    for path in written:
+        (fresh / path).parent.mkdir(parents=True, exist_ok=True)
+        (fresh / path).write_bytes(made.files[path])
+    names = dict.fromkeys(made.files, b"")
+    return _Outcome(replace(made, files=names), frozenset(pages | files), written)
+
+
+def _known_by(folder: Path, written: Mapping[str, str]) -> Manifest:
+    return Manifest(files=written, stamps=manifest.stamps(folder, written))
 
 
 def _record(page: Page) -> dict[str, Any]:
