@@ -7,7 +7,7 @@ and print. rdkit is imported inside the functions.
 from __future__ import annotations
 
 import re
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -33,8 +33,33 @@ LIKELY_CONFORMER = 0.1
 """Only conformers with at least this Boltzmann weight may stand for the drawn shape."""
 
 
+class Likely(NamedTuple):
+    """The conformers that may stand for the drawn shape.
+
+    `positions` [Å] of shape (conformers, atoms, 3), `moments` [D] of shape (conformers, 3).
+    """
+
+    positions: Array
+    moments: Array
+
+
+def likely(smiles: str) -> Likely | None:
+    """The conformers that may stand for the drawn shape; None outside the model of dipoles."""
+    try:
+        found = moments(smiles)
+    except ValueError:
+        return None
+    kept = found.weights >= min(LIKELY_CONFORMER, float(found.weights.max()))
+    return Likely(found.shapes.positions[kept], found.vectors[kept])
+
+
 def drawing(
-    smiles: str, width: int = 220, height: int = 160, dark: bool = False, dipole: bool = False
+    smiles: str,
+    width: int = 220,
+    height: int = 160,
+    dark: bool = False,
+    dipole: bool = False,
+    shapes: Likely | None = None,
 ) -> str:
     """Structure drawing as an SVG element of `width` × `height` [px].
 
@@ -47,7 +72,8 @@ def drawing(
     chemistry: the crossed tail at the positive end, the head toward the negative end. The
     conformer is the likely one whose shape comes closest to the drawing, turned into the plane of
     the paper. No arrow is drawn where its moment in that plane is below 0.2 D, or where the model
-    says nothing about the molecule. Raises `ValueError` for an unreadable structure.
+    says nothing about the molecule. `shapes` are the likely conformers where they are at hand.
+    Raises `ValueError` for an unreadable structure.
     """
     from rdkit import Chem
     from rdkit.Chem import rdDepictor
@@ -59,7 +85,7 @@ def drawing(
     rdDepictor.SetPreferCoordGen(False)
     rdDepictor.Compute2DCoords(mol, canonOrient=True)
     rdDepictor.StraightenDepiction(mol)
-    direction = _direction(smiles, mol) if dipole else None
+    direction = _direction(shapes or likely(smiles), mol) if dipole else None
     canvas = rdMolDraw2D.MolDraw2DSVG(width, height)
     options: Any = canvas.drawOptions()
     options.clearBackground = False
@@ -81,11 +107,9 @@ def drawing(
     return _clean_svg(canvas.GetDrawingText(), arrow, width, height)
 
 
-def _direction(smiles: str, mol: Mol) -> Array | None:
+def _direction(shapes: Likely | None, mol: Mol) -> Array | None:
     """Unit vector on the paper from the positive to the negative end, None for no arrow."""
-    try:
-        found = moments(smiles)
-    except ValueError:
+    if shapes is None:
         return None
     count = mol.GetNumAtoms()
     # adding hydrogen atoms keeps the numbers of the others, so atoms match one to one
@@ -93,11 +117,7 @@ def _direction(smiles: str, mol: Mol) -> Array | None:
     flat[:, :2] = mol.GetConformer().GetPositions()[:, :2]
     flat -= flat.mean(axis=0)
     best: tuple[float, Array] | None = None
-    for points, weight, vector in zip(
-        found.shapes.positions, found.weights, found.vectors, strict=True
-    ):
-        if weight < min(LIKELY_CONFORMER, float(found.weights.max())):
-            continue
+    for points, vector in zip(*shapes, strict=True):
         for mirrored in (1.0, -1.0):  # a mirror image has the same moment, mirrored
             shape = (points[:count] - points[:count].mean(axis=0)) * [1.0, 1.0, mirrored]
             moment = vector * [1.0, 1.0, mirrored]

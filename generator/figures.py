@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import statistics
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from functools import cached_property, lru_cache
+from functools import cached_property, lru_cache, partial
 from importlib.metadata import version
 from itertools import chain
 from pathlib import Path
@@ -23,7 +23,7 @@ from generator.parallel import shared_out
 from generator.pictures import COLOURS, polarity_scale, ribbon
 from generator.plotting import canvas, house_style, svg
 from generator.quantities import QUANTITIES
-from generator.structures import drawing
+from generator.structures import drawing, likely_shapes
 from generator.units import ZERO_CELSIUS
 from generator.wording import celsius, celsius_label, range_label, split_value
 
@@ -176,7 +176,8 @@ def _kept_or_drawn(
         else:
             drawn[name] = found.decode()
     jobs = [wanted[name][:2] for name in missing]
-    for name, text in zip(missing, _drawn(jobs), strict=True):
+    texts = shared_out(partial(_draw_batch, cache), jobs, _ALONE)
+    for name, text in zip(missing, texts, strict=True):
         kind, _, key = wanted[name]
         cache.put(kind, key, text.encode())
         drawn[name] = text
@@ -186,16 +187,13 @@ def _kept_or_drawn(
 _Job = tuple[str, FigureInput]
 
 
-def _drawn(jobs: Sequence[_Job]) -> list[str]:
-    return shared_out(_draw_batch, jobs, _ALONE)
+def _draw_batch(cache: Cache, jobs: Sequence[_Job]) -> list[str]:
+    return [_curve(item) if kind == "curve" else _structure(item, cache) for kind, item in jobs]
 
 
-def _draw_batch(jobs: Sequence[_Job]) -> list[str]:
-    return [_DRAWERS[kind](item) for kind, item in jobs]
-
-
-def _structure(shown: FigureInput) -> str:
-    return drawing(shown.smiles, 190, 130, dipole=True)
+def _structure(shown: FigureInput, cache: Cache) -> str:
+    shapes = likely_shapes(shown.smiles, cache)
+    return drawing(shown.smiles, 190, 130, dipole=shapes is not None, shapes=shapes)
 
 
 @lru_cache(maxsize=2)
@@ -314,6 +312,3 @@ def _plot(axes: Axes, shown: FigureInput) -> None:
             markerfacecolor="none", color=COLOURS["ink"], elinewidth=1.0, capsize=0,
             label=f"handbook's value, {celsius_label(shown.chosen.temperature)}",
         )  # fmt: skip
-
-
-_DRAWERS: Mapping[str, Callable[[FigureInput], str]] = {"curve": _curve, "structure": _structure}

@@ -5,6 +5,7 @@ rdkit is imported inside the functions, so that importing this module costs noth
 
 from __future__ import annotations
 
+import pickle
 from dataclasses import dataclass
 from functools import lru_cache
 from importlib.metadata import version
@@ -13,8 +14,8 @@ from typing import TYPE_CHECKING
 
 from generator.cache import Cache, digest
 from generator.conformers import dipole_vanishes, parse
-from generator.dipoles import DipoleEstimate, estimate_dipole
-from generator.drawings import drawing
+from generator.dipoles import DipoleEstimate, estimate_dipole, fingerprint
+from generator.drawings import Likely, drawing, likely
 from generator.kept import Kept
 
 if TYPE_CHECKING:
@@ -32,6 +33,7 @@ __all__ = [
     "estimate_dipole",
     "inchikey",
     "isomer_groups",
+    "likely_shapes",
     "molecule",
     "molecules",
     "same_structure",
@@ -211,6 +213,18 @@ def molecules(smiles: Sequence[str], cache: Cache) -> Mapping[str, Molecule]:
     kept = Kept({text: digest(text, _version()) for text in smiles}, pack)
     found = kept.each(list(dict.fromkeys(smiles)), "molecule", lambda some: [*map(molecule, some)])
     pack.save(forget=False)
+    return found
+
+
+def likely_shapes(smiles: str, cache: Cache) -> Likely | None:
+    """The conformers that may stand for the drawn shape, kept; None outside the dipole model."""
+    key = digest(smiles, fingerprint())
+    stored = cache.get("conformers", key)
+    if stored is not None:
+        kept: Likely | None = pickle.loads(stored)
+        return kept
+    found = likely(smiles)
+    cache.put("conformers", key, pickle.dumps(found))
     return found
 
 
